@@ -1,0 +1,56 @@
+"""Exponential and logarithm of a vector, as polynomials (relative error below 1e-14)."""
+
+from sweep.kernel.vector import compiled, exponent, mantissa, scaled, where
+
+_SHIFT = 6755399441055744.0  # 1.5 * 2**52: adding it rounds to a whole number, kept in the low bits
+_LOG2_E = 1.4426950408889634
+_LN2_HIGH = 6.93147180369123816490e-01  # Cody and Waite's split: the high part times a whole number is exact
+_LN2_LOW = 1.90821492927058770002e-10
+
+
+@compiled
+def exp(x):  # type: ignore[no-untyped-def]
+    """Return e**x, lane by lane; x is held between -700 and 700, NaN passes through. Taylor series after reduction by ln 2."""
+    x = where(x < -700.0, -700.0, x)
+    x = where(x > 700.0, 700.0, x)
+    shifted = x * _LOG2_E + _SHIFT
+    n = shifted - _SHIFT
+    r = (x - n * _LN2_HIGH) - n * _LN2_LOW
+    p = r * (1.0 / 6227020800.0) + 1.0 / 479001600.0
+    p = p * r + 1.0 / 39916800.0
+    p = p * r + 1.0 / 3628800.0
+    p = p * r + 1.0 / 362880.0
+    p = p * r + 1.0 / 40320.0
+    p = p * r + 1.0 / 5040.0
+    p = p * r + 1.0 / 720.0
+    p = p * r + 1.0 / 120.0
+    p = p * r + 1.0 / 24.0
+    p = p * r + 1.0 / 6.0
+    p = p * r + 0.5
+    p = p * r + 1.0
+    p = p * r + 1.0
+    return scaled(p, shifted)
+
+
+@compiled
+def log(x):  # type: ignore[no-untyped-def]
+    """Return ln x, lane by lane, for positive normal x: 2 artanh((m - 1)/(m + 1)) of the mantissa near 1."""
+    e = exponent(x)
+    m = mantissa(x)
+    high = m > 1.4142135623730951
+    m = where(high, m * 0.5, m)
+    e = where(high, e + 1.0, e)
+    s = (m - 1.0) / (m + 1.0)
+    q = s * s
+    p = q * (1.0 / 23.0) + 1.0 / 21.0
+    p = p * q + 1.0 / 19.0
+    p = p * q + 1.0 / 17.0
+    p = p * q + 1.0 / 15.0
+    p = p * q + 1.0 / 13.0
+    p = p * q + 1.0 / 11.0
+    p = p * q + 1.0 / 9.0
+    p = p * q + 1.0 / 7.0
+    p = p * q + 1.0 / 5.0
+    p = p * q + 1.0 / 3.0
+    p = p * q + 1.0
+    return e * _LN2_HIGH + (2.0 * s * p + e * _LN2_LOW)
