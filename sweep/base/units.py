@@ -1,0 +1,100 @@
+"""Units, read once at the door: text with a unit to SI and back. The only importer of pint, and only when it is needed."""
+
+import math
+import re
+from functools import lru_cache
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    import pint
+
+_QUANTITY = re.compile(r"^\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3})?)\s*(\S.*?)?\s*$")
+_UNIT = re.compile(r"^[A-Za-z0-9µ°%·/*^().\s-]{1,60}$")
+_REFUSED = {
+    "C": "degC (C is coulomb)", "R": "degR (R is the gas constant)", "k": "a full unit (k is not one)", "pct": "%",
+    "barg": "bar, absolute", "psig": "psi, absolute",
+}  # fmt: skip
+_SI = {
+    "temperature": "K", "temperature difference": "K", "time": "s", "volume": "m^3", "amount": "mol", "mass": "kg",
+    "concentration": "mol/m^3", "energy per amount": "J/mol", "molar mass": "kg/mol", "density": "kg/m^3",
+    "heat capacity": "J/K", "molar heat capacity": "J/mol/K", "specific heat capacity": "J/kg/K", "power": "W",
+    "heat transfer coefficient": "W/m^2/K", "heat loss": "W/K", "area": "m^2", "volume flow": "m^3/s",
+    "inverse temperature": "1/K", "dimensionless": "", "productivity": "kg/m^3/s", "pressure": "Pa",
+}  # fmt: skip
+
+
+class UnitFault(ValueError):
+    """A text that is no quantity of the dimension asked for: `expected` and `because` say what would be right."""
+
+    def __init__(self, expected: str, because: str) -> None:
+        super().__init__(f"expected {expected}: {because}")
+        self.expected, self.because = expected, because
+
+
+@lru_cache(maxsize=1)
+def _registry() -> "pint.UnitRegistry":
+    import pint
+
+    registry = pint.UnitRegistry()
+    registry.define("m3 = m**3")
+    registry.define("m2 = m**2")
+    return registry
+
+
+def si_unit(dimension: str) -> str:
+    """Return the SI unit of a named dimension, or of one given as a unit itself."""
+    return _SI.get(dimension, dimension)
+
+
+def _split(text: str, dimension: str) -> tuple[float, str]:
+    wanted = f"a {dimension}, such as \"1 {si_unit(dimension)}\"".replace("^", "")
+    if re.match(r"^\s*[+-]?\d+,\d", text):
+        raise UnitFault(wanted, "the decimal sign is a point; a comma is not read")
+    found = _QUANTITY.match(text)
+    if not found:
+        raise UnitFault(wanted, "a quantity is a number and its unit")
+    number, unit = float(found[1]), found[2] or ""
+    if not math.isfinite(number):
+        raise UnitFault(wanted, "the number is not finite")
+    if unit in _REFUSED:
+        raise UnitFault(_REFUSED[unit], f"the unit {unit!r} is not what it seems")
+    if unit and not _UNIT.match(unit):
+        raise UnitFault(wanted, f"the unit {unit!r} holds signs that no unit has")
+    return number, unit
+
+
+def to_si(text: str, dimension: str) -> float:
+    """Return a quantity in SI; UnitFault where the text is none of that dimension (a name of `_SI`, or an SI unit)."""
+    import pint
+
+    number, unit = _split(text, dimension)
+    target = si_unit(dimension)
+    registry = _registry()
+    if not unit and target:
+        raise UnitFault(f"a unit of {dimension}", "every quantity stands with its unit")
+    if dimension == "temperature difference" and "deg" in unit and "delta" not in unit:
+        raise UnitFault("a difference in K", "degC counts from a zero; a difference does not")
+    try:
+        value = float(registry.Quantity(number, unit).to(target).magnitude)
+    except pint.UndefinedUnitError as error:
+        raise UnitFault(f"a unit of {dimension}, such as {target}", f"unknown unit {error.unit_names!s}") from None
+    except pint.DimensionalityError:
+        raise UnitFault(f"a {dimension}, in {target} or the like", f"{unit or 'a bare number'} measures something else") from None
+    except Exception:
+        raise UnitFault(f"a unit of {dimension}, such as {target}", f"{unit!r} cannot be read as a unit") from None
+    if not math.isfinite(value):
+        raise UnitFault(f"a {dimension}", "the number is not finite")
+    if dimension == "temperature" and value < 0.0:
+        raise UnitFault("a temperature above absolute zero", f"{text!r} is below it")
+    return value
+
+
+def unit_of(text: str) -> str:
+    """Return the unit as written in a quantity."""
+    found = _QUANTITY.match(text)
+    return (found[2] or "") if found else ""
+
+
+def from_si(value: float, unit: str, dimension: str) -> float:
+    """Return an SI value in another unit."""
+    return float(_registry().Quantity(value, si_unit(dimension)).to(unit).magnitude)

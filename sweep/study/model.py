@@ -1,0 +1,183 @@
+"""A study as frozen records, validated and in SI. All quantities stand in one flat mapping from dotted path to number."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+
+from sweep.base.errors import Fault, SweepError
+
+
+@dataclass(frozen=True)
+class Species:
+    """heat_capacity: a, b, c, d of a + bT + cT^2 + dT^3 (J/mol/K), None where not given."""
+
+    name: str
+    role: str | None
+    heat_capacity: tuple[float, float, float, float] | None
+
+
+@dataclass(frozen=True)
+class Reaction:
+    """left, right: coefficients as written; orders: forward order in each species; valid: range of temperature (K)."""
+
+    name: str
+    equation: str
+    purpose: str
+    reversible: bool
+    left: Mapping[str, float]
+    right: Mapping[str, float]
+    orders: Mapping[str, float]
+    source: str | None = None
+    valid: tuple[float, float] | None = None
+
+    @property
+    def stoichiometry(self) -> dict[str, float]:
+        """Moles made of each species per mole of reaction as written."""
+        return {s: self.right.get(s, 0.0) - self.left.get(s, 0.0) for s in {**self.left, **self.right}}
+
+
+@dataclass(frozen=True)
+class Charge:
+    """Which species are charged by concentration, which by amount, and which fills the rest of the volume."""
+
+    concentrations: tuple[str, ...]
+    amounts: tuple[str, ...]
+    balance: str | None
+
+
+@dataclass(frozen=True)
+class Feed:
+    """species fed; equivalents: species -> the species it is counted against."""
+
+    name: str
+    species: tuple[str, ...]
+    equivalents: Mapping[str, str]
+
+
+@dataclass(frozen=True)
+class Event:
+    """At a time (s) quantities, or the kind of cooling, change."""
+
+    time: float
+    sets: Mapping[str, float | str]
+
+
+@dataclass(frozen=True)
+class Target:
+    """The species to convert, and the product to make."""
+
+    species: str
+    product: str | None
+
+
+@dataclass(frozen=True)
+class Limit:
+    """A bound on a response; sense: "at_most" or "at_least"."""
+
+    name: str
+    response: str
+    sense: str
+
+
+@dataclass(frozen=True)
+class Variable:
+    """What the engineer may choose: a range (SI) for one or more paths."""
+
+    name: str
+    sets: tuple[str, ...]
+    low: float
+    high: float
+    levels: int | None
+    unit: str
+
+
+@dataclass(frozen=True)
+class Plan:
+    """How the space is covered."""
+
+    kind: str
+    points: int | None
+    file: Path | None
+
+
+@dataclass(frozen=True)
+class WindowSettings:
+    """The two axes of the window, and where the slice lies in the other variables (SI; default: the set-point)."""
+
+    axes: tuple[str, str]
+    at: Mapping[str, float] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class BatchTimeSettings:
+    """longest: the march's end (s), None: the recipe's batch time."""
+
+    longest: float | None
+
+
+@dataclass(frozen=True)
+class FailureSettings:
+    """Cooling failure: horizon (s), whether the wall counts, what feeds do ("stop", "run on"), temperatures from testing (K)."""
+
+    horizon: float
+    wall: bool
+    td24: float | None
+    mtt: float | None
+    feeds: str = "stop"
+    feeds_stop_after: float = 0.0
+
+
+@dataclass(frozen=True)
+class Study:
+    """A study file, understood. values: path -> SI; units: path -> unit as written; warnings: legal but doubtful."""
+
+    name: str
+    file: str
+    folder: Path
+    text: str
+    digest: str
+    title: str
+    seed: int
+    species: tuple[Species, ...]
+    reactions: tuple[Reaction, ...]
+    cooling_kind: str | None
+    charge: Charge
+    feeds: tuple[Feed, ...]
+    events: tuple[Event, ...]
+    batch_to_target: bool
+    target: Target | None
+    limits: tuple[Limit, ...]
+    variables: tuple[Variable, ...]
+    plan: Plan | None
+    window: WindowSettings | None
+    batch_time: BatchTimeSettings | None
+    failure: FailureSettings | None
+    values: Mapping[str, float]
+    units: Mapping[str, str]
+    dimensions: Mapping[str, str]
+    asks_failure: bool = False
+    warnings: tuple[Fault, ...] = ()
+
+    def quantity(self, name: str, text: str) -> float:
+        """Return a quantity of a variable or path in SI; SweepError where the text is none of its dimension."""
+        from sweep.study.reader import UnitFault, converted
+
+        path = self.paths_of(name)[0]
+        try:
+            return converted(path, text, self.dimensions[path], self.values)
+        except UnitFault as error:
+            raise SweepError(f"{name}: found {text!r}, expected {error.expected}, because {error.because}") from None
+
+    def paths_of(self, name: str) -> tuple[str, ...]:
+        """Return the paths that a variable sets, or the path itself; SweepError with the nearest name for neither."""
+        for variable in self.variables:
+            if variable.name == name:
+                return variable.sets
+        if name in self.values:
+            return (name,)
+        import difflib
+
+        known = [*(v.name for v in self.variables), *self.values]
+        near = difflib.get_close_matches(name, known, 1)
+        hint = f"; did you mean {near[0]}?" if near else ""
+        raise SweepError(f"{name} is neither a variable nor a quantity of this study{hint}")
