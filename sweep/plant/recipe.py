@@ -1,0 +1,187 @@
+"""The recipe as segments: between two changes (feeds, events, the batch's end) every quantity stands still. One block each."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from sweep.kernel import layout as at
+from sweep.kernel.program import Program, compile_tables
+from sweep.plant import chemistry
+from sweep.plant.charge import Brought, brought_in
+from sweep.plant.values import Floats, Values
+from sweep.study.model import Study
+
+TOO_HOT = 1500.0  # K; above it a point is a runaway
+HOLD_TIME = 1.0  # s; how fast the ideal hold of a set-point closes what is left of the gap
+KINDS = ("adiabatic", "isothermal", "duty", "coolant", "jacket")
+
+
+@dataclass(frozen=True)
+class Charged:
+    """Everything the kernel needs for N points: tables, blocks (N, S, block), starts (N, rows), constants (N, 8)."""
+
+    study: Study
+    values: Values
+    program: Program
+    brought: Brought
+    blocks: Floats
+    starts: Floats
+    constants: Floats
+    cp: Floats
+    heats: Floats
+    extents: bool
+    boundaries: Floats  # (N, S) s: the segments' ends
+
+
+def final_time(study: Study, values: Values, last_feed: Floats) -> tuple[Floats, Floats]:
+    """Return when the batch ends (NaN: at the target) and when the march ends (s), each (N,)."""
+    end = np.full(values.count, np.nan) if study.batch_to_target else np.maximum(values.need("recipe.batch_time"), last_feed)
+    longest = study.batch_time.longest if study.batch_time is not None else None
+    if longest is None:
+        final = end if not study.batch_to_target else np.maximum(values.get("batch_time.longest", 7 * 86400.0), last_feed)
+    else:
+        final = np.fmax(np.maximum(values.get("batch_time.longest", longest), last_feed), end)
+    return end, final
+
+
+def _boundaries(study: Study, values: Values, brought: Brought, end: Floats, final: Floats) -> Floats:
+    """Return the ends of the segments, ascending, (N, S); what does not fall inside the march is pushed to its end."""
+    events = [values.get(f"events.{k}.time", event.time) for k, event in enumerate(study.events)]
+    columns = [*brought.start.T, *brought.end.T, *events, np.where(np.isnan(end), final, end), final]
+    times = np.stack(columns, axis=1)
+    times = np.where((times > 0.0) & (times < final[:, None]), times, final[:, None])
+    return np.sort(times, axis=1)
+
+
+def _at(study: Study, values: Values, time: Floats) -> tuple[Values, NDKind]:
+    """Return the quantities and the kind of cooling that hold from a time (N,) on."""
+    sets: dict[str, float | Floats] = {}
+    kind = np.full(values.count, KINDS.index(study.cooling_kind or "isothermal"))
+    for k, event in enumerate(study.events):
+        on = values.get(f"events.{k}.time", event.time) <= time * (1.0 + 1e-12)
+        for path, value in event.sets.items():
+            if isinstance(value, str):
+                kind = np.where(on, KINDS.index(value), kind)
+            else:
+                before = np.asarray(sets.get(path, values.get(path, np.nan)))
+                sets[path] = np.where(on, values.get(f"events.{k}.set.{path}", value), before)
+    return values.overlaid(sets), kind
+
+
+NDKind = np.ndarray
+
+
+def _cooling(block: Floats, values: Values, kind: NDKind, first: bool, was: NDKind, charge_T: Floats) -> None:
+    """Fill in the cooling of one segment."""
+    jacket, coolant, duty = kind == 4, kind == 3, kind == 2
+    through = jacket | coolant
+    bottom = values.get("vessel.area.bottom")
+    slope = (values.get("vessel.area.full") - bottom) / values.get("vessel.area.at_volume", 1.0)
+    plain = values.has("vessel.area")
+    area_constant = values.get("vessel.area") if plain else bottom
+    area_slope = np.zeros_like(slope) if plain else slope
+    U = values.get("vessel.U")
+    block[:, at.UA_CONSTANT] = np.where(through, U * area_constant, 0.0)
+    block[:, at.UA_PER_VOLUME] = np.where(through, U * area_slope, 0.0)
+    block[:, at.FREE] = kind != 1
+    block[:, at.DUTY_ON], block[:, at.DUTY] = duty, values.get("cooling.duty")
+    block[:, at.SET_POINT] = values.get("cooling.set_point", charge_T)
+    block[:, at.HOLD_RATE] = 1.0 / HOLD_TIME
+    hold_up = values.get("cooling.hold_up", 1.0)
+    capacity = values.get("cooling.coolant.density", 998.0) * hold_up * values.get("cooling.coolant.heat_capacity", 4180.0)
+    block[:, at.JACKET_CAPACITY_INVERSE] = np.where(jacket, 1.0 / capacity, 0.0)
+    block[:, at.JACKET_RENEWAL] = np.where(jacket, values.get("cooling.flow") / hold_up, 0.0)
+    block[:, at.INLET] = values.get("cooling.inlet", 298.15)
+    controlled = values.has("cooling.gain") and values.has("cooling.set_point")
+    block[:, at.GAIN] = np.where(jacket, values.get("cooling.gain"), 0.0) if controlled else 0.0
+    reset = values.get("cooling.reset_time", np.inf)
+    block[:, at.RESET_INVERSE] = np.where(jacket & controlled, 1.0 / reset, 0.0)
+    block[:, at.OPENING] = 0.0 if controlled else 1.0
+    starts = jacket & (first | (was != 4))
+    block[:, at.JACKET_SET] = starts | coolant
+    start = values.get("cooling.start", charge_T)
+    block[:, at.JACKET_START] = np.where(coolant, values.get("cooling.temperature", charge_T), start)
+
+
+def _feeds(block: Floats, brought: Brought, cp: Floats, rate: Floats) -> None:
+    """Fill in what the feeds bring in one segment; rate (N, F): shares of a whole feed per second."""
+    flow = np.einsum("nf,nfi,nik->nfk", rate, brought.fed, cp)
+    block[:, at.FEED_CP : at.FEED_CP + 4] = flow.sum(axis=1)
+    powers = np.arange(1, 5)
+    heat = flow * brought.temperature[:, :, None] ** powers / powers
+    block[:, at.FEED_HEAT] = heat.sum(axis=(1, 2))
+
+
+def charge_plant(study: Study, values: Values) -> Charged:
+    """Return the arrays with which the kernel marches these points."""
+    structure = chemistry.structure_of(study)
+    program = compile_tables(structure)
+    head = program.integers
+    brought = brought_in(study, values)
+    end, final = final_time(study, values, brought.last_feed())
+    bounds = _boundaries(study, values, brought, end, final)
+    n, segments = bounds.shape
+    blocks = np.zeros((n, segments, program.block))
+    extents = chemistry.carries_extents(chemistry.stoichiometry(study)) or not study.reactions
+    charge_T = values.get("recipe.charge.temperature", 298.15)
+    was = np.full(n, -1)
+    cp = heats = np.zeros(0)
+    begin = np.zeros(n)
+    for k in range(segments):
+        block, stop = blocks[:, k, :], bounds[:, k]
+        here, kind = _at(study, values, begin)
+        cp = chemistry.heat_capacities(study, here)
+        heats = chemistry.heats(study, here, cp)
+        share, middle = brought.share(begin), 0.5 * (begin + stop)
+        on = (brought.start <= middle[:, None]) & (middle[:, None] < brought.end)
+        rate = np.where(on, 1.0 / (brought.end - brought.start), 0.0)
+        block[:, at.T_START], block[:, at.T_END] = begin, stop
+        block[:, at.VOLUME] = brought.volume + (brought.feed_volume * share).sum(axis=1)
+        block[:, at.VOLUME_RATE] = (brought.feed_volume * rate).sum(axis=1)
+        _cooling(block, here, kind, k == 0, was, charge_T)
+        block[:, at.WALL] = here.get("vessel.heat_capacity")
+        block[:, at.STIRRER] = here.get("vessel.stirrer_power")
+        block[:, at.LOSS], block[:, at.AMBIENT] = here.get("vessel.heat_loss.UA"), here.get("vessel.heat_loss.ambient", 293.15)
+        _feeds(block, brought, cp, rate)
+        block[:, head[at.BLOCK_FEED] : head[at.BLOCK_BASE]] = np.einsum("nf,nfi->ni", rate, brought.fed)
+        fed = np.einsum("nf,nfi->ni", share, brought.fed)
+        block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (brought.charged if extents else 0.0)
+        terms = chemistry.rate_terms(study, here, heats, structure.rate_terms)
+        block[:, head[at.BLOCK_RATE] : head[at.BLOCK_HEAT]] = terms.reshape(n, -1)
+        block[:, head[at.BLOCK_HEAT] : head[at.BLOCK_CP]] = heats[:, :, : structure.heat_terms].reshape(n, -1)
+        block[:, head[at.BLOCK_CP] : head[at.BLOCK_LENGTH]] = cp[:, :, : structure.cp_terms].reshape(n, -1)
+        if not has_heat_capacities(study, values):
+            block[:, at.WALL] = np.where(block[:, at.WALL] > 0.0, block[:, at.WALL], 1.0)
+        was, begin = kind, stop
+    starts = np.zeros((n, structure.rows))
+    nz = structure.sources.shape[0]
+    if not extents:
+        starts[:, :nz] = brought.charged
+    starts[:, nz] = charge_T
+    starts[:, nz + 1] = charge_T
+    constants = _constants(study, values, brought, end, final, starts, structure.target)
+    return Charged(study, values, program, brought, blocks, starts, constants, cp, heats, extents, bounds)
+
+
+def has_heat_capacities(study: Study, values: Values) -> bool:
+    """Tell whether every species has a heat capacity."""
+    return all(s.heat_capacity is not None or values.has(f"species.{s.name}.heat_capacity") for s in study.species)
+
+
+def _constants(study: Study, values: Values, brought: Brought, end: Floats, final: Floats, starts: Floats, weights: Floats) -> Floats:
+    """Return what the kernel must know of each point beside its segments, (N, 8)."""
+    result = np.zeros((values.count, at.N_CONSTANTS))
+    total = brought.total()
+    result[:, at.END_FIXED], result[:, at.END_EARLIEST], result[:, at.T_FINAL] = end, brought.last_feed(), final
+    result[:, at.TARGET_AMOUNT] = np.inf
+    if study.target is not None and values.has("target.conversion"):
+        whole = total[:, chemistry.names(study).index(study.target.species)]
+        reacted = starts[:, : weights.size] @ weights
+        result[:, at.TARGET_AMOUNT] = values.get("target.conversion") * whole + reacted
+    reactive = [k for k, s in enumerate(study.species) if s.role != "solvent"]
+    moles = total[:, reactive].sum(axis=1) if reactive else total.sum(axis=1)
+    result[:, at.TURNAROUND] = values.get("recipe.turnaround")
+    result[:, at.ATOL_AMOUNT] = 1e-3 * np.where(moles > 0.0, moles, 1.0)
+    result[:, at.TOO_HOT] = TOO_HOT
+    result[:, at.DELTA] = 1e-3 * values.get("accuracy.relative", 1e-6) * np.where(moles > 0.0, moles, 1.0) / brought.volume
+    return result
