@@ -13,6 +13,7 @@ from sweep.study.model import Study
 
 TOO_HOT = 1500.0  # K; above it a point is a runaway
 HOLD_TIME = 1.0  # s; how fast the ideal hold of a set-point closes what is left of the gap
+NDKind = np.ndarray
 KINDS = ("adiabatic", "isothermal", "duty", "coolant", "jacket")
 
 
@@ -68,7 +69,7 @@ def _at(study: Study, values: Values, time: Floats) -> tuple[Values, NDKind]:
     return values.overlaid(sets), kind
 
 
-NDKind = np.ndarray
+
 
 
 def _cooling(block: Floats, values: Values, kind: NDKind, first: bool, was: NDKind, charge_T: Floats) -> None:
