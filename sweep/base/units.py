@@ -1,5 +1,6 @@
 """Units, read once at the door: text with a unit to SI and back. The only importer of pint, and only when it is needed."""
 
+import difflib
 import math
 import re
 from functools import lru_cache
@@ -31,11 +32,20 @@ class UnitFault(ValueError):
         self.expected, self.because = expected, because
 
 
+def _names(error: "pint.UndefinedUnitError") -> str:
+    names = error.unit_names
+    return repr(names) if isinstance(names, str) else ", ".join(map(repr, sorted(names)))
+
+
 @lru_cache(maxsize=1)
 def _registry() -> "pint.UnitRegistry":
+    """Return the one registry, its definitions from the user's cache where that can be written."""
     import pint
 
-    registry = pint.UnitRegistry()
+    try:
+        registry = pint.UnitRegistry(cache_folder=":auto:")
+    except OSError:
+        registry = pint.UnitRegistry()
     registry.define("m3 = m**3")
     registry.define("m2 = m**2")
     return registry
@@ -77,7 +87,8 @@ def to_si(text: str, dimension: str) -> float:
     try:
         value = float(registry.Quantity(number, unit).to(target).magnitude)
     except pint.UndefinedUnitError as error:
-        raise UnitFault(f"a unit of {dimension}, such as {target}", f"unknown unit {error.unit_names!s}") from None
+        near = _nearest(unit) or target
+        raise UnitFault(f"a unit of {dimension}, such as {near}", f"unknown unit {_names(error)} in {unit!r}") from None
     except pint.DimensionalityError:
         raise UnitFault(f"a {dimension}, in {target} or the like", f"{unit or 'a bare number'} measures something else") from None
     except Exception:
@@ -95,6 +106,24 @@ def unit_of(text: str) -> str:
     return (found[2] or "") if found else ""
 
 
-def from_si(value: float, unit: str, dimension: str) -> float:
-    """Return an SI value in another unit."""
-    return float(_registry().Quantity(value, si_unit(dimension)).to(unit).magnitude)
+def from_si(value: float, unit: str, dimension: str | None = None) -> float:
+    """Return an SI value in another unit; SI is the dimension's own unit, or the base units of `unit`."""
+    registry = _registry()
+    base = si_unit(dimension) if dimension is not None else registry.Quantity(1.0, unit).to_base_units().units
+    return float(registry.Quantity(value, base).to(unit).magnitude)
+
+
+def show(value: float, unit: str, digits: int = 4) -> str:
+    """Return an SI value as text in a unit, such as "45 degC"; a dimensionless one has none."""
+    if not unit:
+        return f"{value:.{digits}g}"
+    return f"{from_si(value, unit):.{digits}g} {unit}"
+
+
+def _nearest(unit: str) -> str:
+    known = ("degC", "degF", "K", "s", "min", "h", "d", "mol", "kmol", "mmol", "g", "kg", "t", "L", "mL", "m3", "mol/L", "kmol/m3",
+             "kJ/mol", "J/mol", "kcal/mol", "g/mol", "kg/mol", "kg/L", "kg/m3", "g/mL", "J/mol/K", "J/g/K", "kJ/kg/K", "W", "kW",
+             "MW", "W/m2/K", "W/K", "kW/K", "J/K", "kJ/K", "MJ/K", "m2", "m3/h", "L/min", "L/h", "1/K", "1/s", "1/min", "1/h",
+             "L/mol/s", "L/mol/min", "m3/mol/s", "bar", "Pa", "%")  # fmt: skip
+    near = difflib.get_close_matches(unit, known, 1)
+    return near[0] if near else ""

@@ -1,111 +1,130 @@
-"""A study file to a Study: sections in the order in which they need each other, then all faults at once."""
+"""Reading a study: text to a validated Study, or all its faults at once."""
 
-import hashlib
-import json
 import re
 import tomllib
 from pathlib import Path
 from typing import Any
 
-from sweep.base.errors import Fault, StudyError, SweepError
-from sweep.study import equipment, questions, substances
+from sweep.base.errors import Fault, StudyError
+from sweep.base.records import digest
+from sweep.study import batch, checks, equipment, question, substances
 from sweep.study.lines import lines_of
 from sweep.study.model import Study
-from sweep.study.reader import LATER, Reader
+from sweep.study.reader import Reader
 
-_SECTIONS = (
-    "study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables", "accuracy", "plan",
-    "window", "batch_time", "failure",
-)  # fmt: skip
+_SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
+             "accuracy", "plan", "window", "batch_time", "failure")  # fmt: skip
+_LARGEST_FILE = 4_000_000  # characters
 
 
 def read_study(path: str | Path) -> Study:
-    """Return the study in a file; StudyError with every fault, SweepError where the file cannot be read."""
-    path = Path(path)
+    """Return the study in a file; StudyError with every fault in it, or where it cannot be read."""
+    file = Path(path)
     try:
-        text = path.read_text(encoding="utf-8")
-    except (OSError, UnicodeDecodeError) as error:
-        raise SweepError(f"{path} cannot be read as a study: {error}") from error
-    return read_text(text, str(path), path.parent)
+        text = file.read_bytes().decode("utf-8")
+    except UnicodeDecodeError as error:
+        raise _single(str(path), 1, "file", f"a byte {error.object[error.start]:#x}", "text in UTF-8", "a study is a text file") from None
+    except (OSError, ValueError) as error:
+        reason = getattr(error, "strerror", None) or str(error)
+        raise _single(str(path), 1, "file", reason, "a study file that can be read", "there is nothing to compute") from None
+    return read_text(text, str(path), file.parent)
 
 
 def read_text(text: str, name: str = "study.toml", folder: Path | None = None) -> Study:
-    """Return the study in a text."""
-    try:
-        data = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        line = re.search(r"line (\d+)", str(error))
-        fault = Fault(name, int(line[1]) if line else 1, "(file)", str(error), "TOML", "the file cannot be taken apart")
-        raise StudyError((fault,)) from None
-    reader = Reader(name, lines_of(text))
-    for key in data:
-        if key in LATER:
-            reader.fault(key, f"[{key}]", "a study without it", "not available yet")
-    reader.only({k: v for k, v in data.items() if k not in LATER}, "", _SECTIONS)
-    study = _assemble(reader, data, text, name, folder or Path())
-    if reader.faults or study is None:
-        raise StudyError(tuple(reader.faults))
+    """Return the study in a text; `name` stands in messages, a list plan is looked for in `folder`."""
+    document = _document(text.replace("\r\n", "\n"), name)
+    reader = Reader(name, lines_of(text.replace("\r\n", "\n")))
+    study = _read(reader, document, text, Path(name).stem, folder or Path())
+    if reader.faults:
+        raise StudyError(tuple(sorted(dict.fromkeys(reader.faults), key=lambda f: f.line)))
+    assert study is not None
     return study
 
 
-def _assemble(reader: Reader, data: dict[str, Any], text: str, name: str, folder: Path) -> Study | None:
-    head = reader.table(data, "study", "study")
-    reader.only(head, "study", ("title", "seed"))
-    species = substances.read_species(reader, reader.table(data, "species", "species"))
+def _single(file: str, line: int, key: str, found: str, expected: str, because: str) -> StudyError:
+    return StudyError((Fault(file, line, key, found, expected, because),))
+
+
+def _document(text: str, name: str) -> dict[str, Any]:
+    if len(text) > _LARGEST_FILE:
+        raise _single(name, 1, "file", f"{len(text)} characters", f"at most {_LARGEST_FILE}", "a study is written by hand")
+    try:
+        return tomllib.loads(text)
+    except tomllib.TOMLDecodeError as error:
+        place = re.search(r"at line (\d+)", str(error))
+        line = int(place[1]) if place else text.count("\n") + 1
+        lines = text.split("\n")
+        found = lines[line - 1].strip() if line <= len(lines) else ""
+        raise _single(name, line, "syntax", repr(found), "TOML, such as key = \"value\"", str(error)) from None
+    except (RecursionError, ValueError):
+        raise _single(name, 1, "syntax", "nested too deep, or a number too long", "a plain TOML file", "it cannot be read") from None
+
+
+def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder: Path) -> Study | None:
+    reader.only(document, "", _SECTIONS)
+    part = {key: reader.table(document, key, key) for key in _SECTIONS if key != "events"}
+
+    def given(key: str) -> dict[str, Any] | None:
+        return part[key] if key in document else None
+
+    title, seed = _head(reader, part["study"], name)
+    species = substances.read_species(reader, part["species"])
     names = {s.name for s in species}
-    reactions = substances.read_reactions(reader, reader.table(data, "reactions", "reactions"), species)
-    equipment.read_vessel(reader, reader.table(data, "vessel", "vessel"))
-    kind = equipment.read_cooling(reader, reader.table(data, "cooling", "cooling"))
-    recipe = reader.table(data, "recipe", "recipe")
-    reader.only(recipe, "recipe", ("batch_time", "turnaround", "charge", "feeds", "phases"))
-    if "phases" in recipe:
-        reader.fault("recipe.phases", "phases", "a recipe without them", "not available yet")
-    charge = equipment.read_charge(reader, reader.table(recipe, "charge", "recipe.charge"), names)
-    feeds = equipment.read_feeds(reader, reader.table(recipe, "feeds", "recipe.feeds"), names)
-    to_target = recipe.get("batch_time") == "to target"
-    if not to_target:
-        reader.quantity("recipe.batch_time", recipe.get("batch_time"), "time")
-        reader.at_least("recipe.batch_time", 0.0, True, "a batch takes some time")
-    reader.quantity("recipe.turnaround", recipe.get("turnaround", "0 s"), "time")
-    reader.at_least("recipe.turnaround", 0.0, False, "time does not run backwards")
-    accuracy = reader.table(data, "accuracy", "accuracy")
-    reader.only(accuracy, "accuracy", ("relative",))
-    relative = reader.quantity("accuracy.relative", accuracy.get("relative", 1e-6), "dimensionless")
-    if relative is not None and not 1e-12 <= relative <= 1e-2:
-        reader.fault("accuracy.relative", f"{relative:g}", "from 1e-12 to 1e-2", "the march is neither exact nor blind")
-    events = equipment.read_events(reader, data.get("events", []) if isinstance(data.get("events", []), list) else [])
-    target = questions.read_target(reader, data.get("target"), names)
-    decomposes = any(r.purpose == "decomposition" for r in reactions)
-    limits = questions.read_limits(reader, reader.table(data, "limits", "limits"), names, target, decomposes)
-    batch_time = questions.read_batch_time(reader, data.get("batch_time"))
-    failure = questions.read_failure(reader, data.get("failure"), limits)
-    variables = questions.read_variables(reader, reader.table(data, "variables", "variables"))
-    plan = questions.read_plan(reader, data.get("plan"), folder)
-    window = questions.read_window(reader, data.get("window"), {v.name for v in variables})
-    _consistent(reader, kind, species, reactions, names, target, to_target, charge, feeds)
+    reactions = substances.read_reactions(reader, part["reactions"], species)
+    equipment.read_vessel(reader, part["vessel"])
+    heats = any(f"reactions.{r.name}.heat.value" in reader.values for r in reactions)
+    kinds = batch.kinds_set(document.get("events", []))
+    kind = equipment.read_cooling(reader, given("cooling"), kinds, heats)
+    charge, feeds, to_target = batch.read_recipe(reader, part["recipe"], names)
+    events = batch.read_events(reader, document.get("events", []))
+    brought = {*charge.amounts, *charge.concentrations, charge.balance, *(s for f in feeds for s in f.species)}
+    target = question.read_target(reader, given("target"), names, {s for s in brought if s})
+    if to_target and target is None:
+        reader.needed("target.conversion", 'a batch "to target" has a target')
+    _accuracy(reader, part["accuracy"])
+    failure = question.read_failure(reader, given("failure"))
+    batch_time = question.read_batch_time(reader, given("batch_time"))
+    limits = question.read_limits(reader, part["limits"], names, target)
+    variables = question.read_variables(reader, part["variables"])
+    reader.swept = {path for v in variables for path in v.sets}
+    plan = question.read_plan(reader, given("plan"), variables, folder)
+    window = question.read_window(reader, given("window"), variables)
+    asks_failure = failure is not None or any(limit.name in question.FAILURE for limit in limits)
+    isothermal = {kind, *kinds} == {"isothermal"} and not asks_failure
+    why = "cooling failure needs an energy balance" if asks_failure else f"a cooling of kind {kind} needs an energy balance"
+    checks.check_thermal(reader, species, reactions, isothermal, why)
+    checks.check_equilibria(reader, reactions)
+    checks.check_limits(reader, limits, reactions, target)
+    checks.check_fill(reader, charge, feeds, variables)
     if reader.faults:
         return None
-    digest = hashlib.sha256(json.dumps(data, sort_keys=True, default=str).encode()).hexdigest()
+    checks.warn_ranges(reader, reactions, variables)
+    checks.warn_jacket(reader, kind, reactions, charge, feeds)
     return Study(
-        Path(name).stem, name, folder, text, digest, str(head.get("title", Path(name).stem)), int(head.get("seed", 0)), species, reactions,
-        kind, charge, feeds, events, to_target, target, limits, variables, plan, window, batch_time, failure,
-        reader.values, reader.units, reader.dimensions, tuple(reader.warnings),
+        name=name, file=reader.file, folder=folder, text=text, digest=digest(document), title=title, seed=seed, species=species,
+        reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=events, batch_to_target=to_target,
+        target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
+        values=reader.values, units=reader.units, dimensions=reader.dimensions, asks_failure=asks_failure,
+        warnings=tuple(reader.warnings),
     )  # fmt: skip
 
 
-def _consistent(reader: Reader, kind: Any, species: Any, reactions: Any, names: Any, target: Any, to_target: bool, charge: Any, feeds: Any) -> None:
-    """Check what no section can see alone."""
-    del names
-    if kind not in (None, "isothermal"):
-        for s in species:
-            reader.needed_if(s.heat_capacity is None, f"species.{s.name}.heat_capacity", f"temperature moves under cooling of kind {kind!r}")
-        for r in reactions:
-            reader.needed(f"reactions.{r.name}.heat.value", f"temperature moves under cooling of kind {kind!r}")
-    if to_target and (target is None or "target.conversion" not in reader.values):
-        reader.fault("recipe.batch_time", '"to target"', "a [target] with its conversion", "there is no target to run to")
-    brought = {*charge.concentrations, *charge.amounts, charge.balance, *(s for f in feeds for s in f.species)}
-    if target is not None and target.species not in brought:
-        reader.fault("target.species", target.species, "a species that is charged or fed", "the target is never brought in")
-    volume, full = reader.values.get("recipe.charge.volume"), reader.values.get("vessel.volume")
-    if volume is not None and full is not None and volume > full:
-        reader.fault("recipe.charge.volume", f"{volume:g} m3", f"at most {full:g} m3", "the charge does not fit into the vessel")
+def _head(reader: Reader, table: dict[str, Any], name: str) -> tuple[str, int]:
+    reader.only(table, "study", ("title", "seed"))
+    title, seed = table.get("title", name), table.get("seed", 0)
+    if not isinstance(title, str):
+        reader.fault("study.title", repr(title), "a text", "it heads the report")
+    if not isinstance(seed, int) or isinstance(seed, bool) or not 0 <= seed < 2**63:
+        reader.fault("study.seed", repr(seed), "a whole number, zero or above", "it starts the random numbers")
+    return title, seed
+
+
+def _accuracy(reader: Reader, table: dict[str, Any]) -> None:
+    reader.only(table, "accuracy", ("relative",))
+    if "relative" in table:
+        reader.quantity("accuracy.relative", table["relative"], "dimensionless")
+    else:
+        reader.keep("accuracy.relative", 1e-6, "", "dimensionless")
+    value = reader.values.get("accuracy.relative")
+    if value is not None and not 1e-12 <= value <= 1e-2:
+        reader.fault("accuracy.relative", value, "between 1e-12 and 1e-2", "a march is neither exact nor a guess")

@@ -54,6 +54,7 @@ class Reader:
         self.dimensions: dict[str, str] = {}
         self.bounds: dict[str, tuple[float, bool, str]] = {}
         self.molar_masses: dict[str, float] = {}
+        self.swept: set[str] = set()
         self.faults: list[Fault] = []
         self.warnings: list[Fault] = []
 

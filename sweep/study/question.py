@@ -1,0 +1,223 @@
+"""What is asked: sections [target] [limits] [variables] [accuracy] [plan] [window] [batch_time] [failure]."""
+
+import difflib
+from pathlib import Path
+from typing import Any
+
+from sweep.base.units import UnitFault, unit_of
+from sweep.study.model import BatchTimeSettings, FailureSettings, Limit, Plan, Target, Variable, WindowSettings
+from sweep.study.reader import Reader, converted
+
+_PLAIN = {
+    "conversion": ("", "dimensionless"), "accumulation": ("", "dimensionless"), "criticality_class": ("", "dimensionless"),
+    "max_temperature": ("_K", "temperature"), "mtsr": ("_K", "temperature"), "td24": ("_K", "temperature"),
+    "mtt": ("_K", "temperature"), "tmr_ad": ("_s", "time"), "time_to_target": ("_s", "time"), "cycle_time": ("_s", "time"),
+    "cooling_duty": ("_W", "power"), "heat_release": ("_W", "power"), "productivity": ("", "productivity"),
+}  # fmt: skip
+FAILURE = frozenset(("mtsr", "tmr_ad", "td24", "mtt", "criticality_class"))
+
+
+def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], brought: set[str]) -> Target | None:
+    """Return the target; its species has to be brought in."""
+    if table is None:
+        return None
+    reader.only(table, "target", ("species", "conversion", "product"))
+    for key in ("species", "product"):
+        value = table.get(key)
+        if (value is not None or key == "species") and (not isinstance(value, str) or value not in names):
+            near = difflib.get_close_matches(str(value), sorted(names), 1)
+            reader.fault(f"target.{key}", repr(value), near[0] if near else "a species of this study", "no such species is written")
+            return None
+    if table["species"] not in brought:
+        reader.fault("target.species", table["species"], "a species that is charged or fed", "what is never brought in cannot be converted")
+    if "conversion" in table:
+        reader.quantity("target.conversion", table["conversion"], "dimensionless")
+    reader.needed("target.conversion", "a target is a conversion to reach")
+    value = reader.values.get("target.conversion")
+    if value is not None and not 0.0 < value < 1.0:
+        reader.fault("target.conversion", value, "a number between 0 and 1", "a conversion is a share, and complete conversion takes for ever")
+    return Target(table["species"], table.get("product"))
+
+
+def _response(reader: Reader, name: str, names: set[str], target: Target | None) -> tuple[str, str] | None:
+    if name == "productivity":
+        mass = target is not None and f"species.{target.product}.molar_mass" in reader.values
+        unit = "kg/m^3/s" if mass else "mol/m^3/s"
+        return f"productivity_{'kg' if mass else 'mol'}_per_m3_s", unit
+    if name in _PLAIN:
+        ending, dimension = _PLAIN[name]
+        return name + ending, dimension
+    for prefix in ("yield_", "per_product_", "fraction_"):
+        if name.startswith(prefix) and name.removeprefix(prefix) in names:
+            return name, "dimensionless"
+    return None
+
+
+def read_limits(reader: Reader, table: dict[str, Any], names: set[str], target: Target | None) -> tuple[Limit, ...]:
+    """Return the limits, one record a bound."""
+    result = []
+    for name, bounds in table.items():
+        path = f"limits.{name}"
+        found = _response(reader, name, names, target)
+        if found is None:
+            if name == "max_pressure":
+                reader.fault(path, name, "a study without it", "not available yet")
+                continue
+            known = [*_PLAIN, *(p + s for p in ("yield_", "per_product_", "fraction_") for s in sorted(names))]
+            near = difflib.get_close_matches(name, known, 1)
+            reader.fault(path, name, near[0] if near else "one of " + ", ".join(_PLAIN), "no response has this name")
+            continue
+        if not isinstance(bounds, dict):
+            reader.fault(path, repr(bounds), "{ at_most = ... } or { at_least = ... }", "a limit says on which side it stands")
+            continue
+        reader.only(bounds, path, ("at_most", "at_least"))
+        if not bounds:
+            reader.fault(path, "nothing", "{ at_most = ... } or { at_least = ... }", "a limit has a bound")
+        for sense in ("at_least", "at_most"):
+            if sense in bounds:
+                reader.quantity(f"{path}.{sense}", bounds[sense], found[1])
+                result.append(Limit(name, found[0], sense))
+        low, high = (reader.values.get(f"{path}.{sense}") for sense in ("at_least", "at_most"))
+        if low is not None and high is not None and low > high:
+            reader.fault(path, f"{low:g} to {high:g} (SI)", "the lower bound first", "the range is upside down")
+    return tuple(result)
+
+
+def read_variables(reader: Reader, table: dict[str, Any]) -> tuple[Variable, ...]:
+    """Return the variables; each sets what is written, and no two set the same."""
+    owners: dict[str, str] = {}
+    result = []
+    for name, entry in reader.names(table, "variables").items():
+        path = f"variables.{name}"
+        reader.only(entry, path, ("sets", "from", "to", "levels"))
+        sets = entry.get("sets")
+        sets = [sets] if isinstance(sets, str) else sets
+        if not isinstance(sets, list) or not sets or not all(isinstance(s, str) for s in sets):
+            reader.fault(f"{path}.sets", repr(entry.get("sets")), "a path of this study, or a list", "a variable sets something")
+            continue
+        good = [s for s in sets if _settable(reader, f"{path}.sets", s, name, owners)]
+        variable = _variable(reader, path, name, good, entry) if len(good) == len(sets) else None
+        if variable is not None:
+            result.append(variable)
+    return tuple(result)
+
+
+def _settable(reader: Reader, place: str, path: str, name: str, owners: dict[str, str]) -> bool:
+    if path not in reader.values:
+        near = difflib.get_close_matches(path, list(reader.values), 1)
+        reader.fault(place, path, near[0] if near else "a quantity that is written", "the variable sets nothing")
+        return False
+    if path in owners:
+        reader.fault(place, path, "one variable for it", f"{owners[path]} sets it already")
+        return False
+    owners[path] = name
+    return True
+
+
+def _variable(reader: Reader, path: str, name: str, sets: list[str], entry: dict[str, Any]) -> Variable | None:
+    dimension = reader.dimensions[sets[0]]
+    for other in sets[1:]:
+        if reader.dimensions[other] != dimension:
+            reader.fault(f"{path}.sets", other, f"a {dimension}", f"{sets[0]} is a {dimension}")
+            return None
+    ends = []
+    for key in ("from", "to"):
+        text = str(entry[key]) if isinstance(entry.get(key), (int, float)) and not isinstance(entry[key], bool) else entry.get(key)
+        if not isinstance(text, str):
+            reader.fault(f"{path}.{key}", repr(text), f"a {dimension}", "a variable has a range")
+            continue
+        try:
+            value = converted(sets[0], text, dimension, reader.values)
+        except UnitFault as error:
+            reader.fault(f"{path}.{key}", repr(text), error.expected, f"{sets[0]} is a {dimension}; {error.because}")
+            continue
+        for one in sets:
+            reader.within(f"{path}.{key}", one, value)
+        ends.append(value)
+    levels = entry.get("levels")
+    if levels is not None and (not isinstance(levels, int) or isinstance(levels, bool) or not 2 <= levels <= 100_000):
+        reader.fault(f"{path}.levels", repr(levels), "a whole number from 2", "a range has two ends")
+        return None
+    if len(ends) < 2:
+        return None
+    if ends[0] >= ends[1]:
+        reader.fault(f"{path}.to", repr(entry["to"]), f"more than {entry['from']!r}", "the range is upside down")
+        return None
+    for one in sets:
+        if not ends[0] - 1e-9 * abs(ends[0]) <= reader.values[one] <= ends[1] + 1e-9 * abs(ends[1]):
+            reader.warn(one, f"{reader.values[one]:g} (SI)", f"{entry['from']} to {entry['to']}", f"the set-point lies outside the range of {name}")
+    return Variable(name, tuple(sets), ends[0], ends[1], levels, unit_of(str(entry["from"])))
+
+
+def read_plan(reader: Reader, table: dict[str, Any] | None, variables: tuple[Variable, ...], folder: Path) -> Plan | None:
+    """Return the plan."""
+    if table is None:
+        return None
+    reader.only(table, "plan", ("kind", "points", "file"))
+    kind = reader.choice(table, "plan", "kind", ("factorial", "latin-hypercube", "sobol", "list"), "factorial")
+    points, file = table.get("points"), table.get("file")
+    if kind in ("latin-hypercube", "sobol") and (not isinstance(points, int) or isinstance(points, bool) or not 1 <= points <= 100_000_000):
+        reader.fault("plan.points", repr(points), "a whole number of points", f"a plan of kind {kind} has a size")
+        points = None
+    if kind == "list" and not isinstance(file, str):
+        reader.fault("plan.file", repr(file), '"points.csv"', "a list stands in a file beside the study")
+    if kind == "factorial":
+        for variable in variables:
+            if variable.levels is None:
+                reader.fault(f"variables.{variable.name}.levels", "nothing", "a whole number from 2", "a factorial plan counts levels")
+    return Plan(kind, points, folder / file if kind == "list" and isinstance(file, str) else None)
+
+
+def read_window(reader: Reader, table: dict[str, Any] | None, variables: tuple[Variable, ...]) -> WindowSettings | None:
+    """Return the window's two axes and its slice."""
+    if table is None:
+        return None
+    reader.only(table, "window", ("axes", "at"))
+    names = [v.name for v in variables]
+    axes = table.get("axes")
+    if not isinstance(axes, list) or len(axes) != 2 or axes[0] == axes[1] or not all(isinstance(a, str) and a in names for a in axes):
+        reader.fault("window.axes", repr(axes), "two of " + (", ".join(names) or "[variables]"), "a window has two axes")
+        return None
+    at: dict[str, float] = {}
+    for name, text in reader.table(table, "at", "window.at").items():
+        found = next((v for v in variables if v.name == name and name not in axes), None)
+        if found is None:
+            reader.fault(f"window.at.{name}", name, "a variable that is no axis", "a slice holds the other variables")
+            continue
+        value = reader.quantity(f"window.at.{name}", text, reader.dimensions[found.sets[0]])
+        if value is not None:
+            at[name] = value
+    return WindowSettings((axes[0], axes[1]), at)
+
+
+def read_batch_time(reader: Reader, table: dict[str, Any] | None) -> BatchTimeSettings | None:
+    """Return how far batch times are sought."""
+    if table is None:
+        return None
+    reader.only(table, "batch_time", ("longest",))
+    if "longest" in table:
+        reader.quantity("batch_time.longest", table["longest"], "time")
+        reader.at_least("batch_time.longest", 0.0, True, "a batch takes time")
+    return BatchTimeSettings(reader.values.get("batch_time.longest"))
+
+
+def read_failure(reader: Reader, table: dict[str, Any] | None) -> FailureSettings | None:
+    """Return how a failure of cooling is judged. The horizon is kept where it is not written too."""
+    asked = table is not None
+    table = table or {}
+    reader.only(table, "failure", ("horizon", "wall", "td24", "mtt", "feeds", "feeds_stop_after"))
+    reader.keep("failure.horizon", 2_592_000.0, "d", "time")
+    for key, dimension in (("horizon", "time"), ("td24", "temperature"), ("mtt", "temperature"), ("feeds_stop_after", "time")):
+        if key in table:
+            reader.quantity(f"failure.{key}", table[key], dimension)
+    reader.at_least("failure.horizon", 0.0, True, "a horizon lies ahead")
+    reader.at_least("failure.feeds_stop_after", 0.0, False, "feeds stop with the cooling or later")
+    wall = table.get("wall", False)
+    if not isinstance(wall, bool):
+        reader.fault("failure.wall", repr(wall), "true or false", "the wall counts or it does not")
+    feeds = reader.choice(table, "failure", "feeds", ("stop", "run on"), "stop")
+    values = reader.values
+    if not asked:
+        return None
+    return FailureSettings(values["failure.horizon"], wall is True, values.get("failure.td24"), values.get("failure.mtt"), feeds,
+                           values.get("failure.feeds_stop_after", 0.0))  # fmt: skip
