@@ -202,7 +202,7 @@ def heat_by_time(s, w):  # type: ignore[no-untyped-def]
 def jacobian(s, f, w, y, slope_now, volume, capacity):  # type: ignore[no-untyped-def]
     """Write the Jacobian into its slots and df/dt beside it; note how heat release and duty change (W/s)."""
     block, lane, slope = row(s, w, W_BLOCK), row(s, w, W_LANE), row(s, w, W_SLOPE)
-    n, nz = integer(s + 8 * N_ROWS), integer(s + 8 * N_STATES)
+    nz = integer(s + 8 * N_STATES)
     T, jacket, integral = load(y + nz * STRIDE), load(y + (nz + 1) * STRIDE), load(y + (nz + 2) * STRIDE)
     for k in range(integer(s + 8 * N_SLOTS)):
         store(row(s, w, W_SLOTS) + k * STRIDE, spread(0.0))

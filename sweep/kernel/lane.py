@@ -6,10 +6,10 @@ highest temperature and the most productive time; heat and duty peaks come from 
 
 import math
 
-from sweep.base.status import DONE, RUNAWAY, STEP_TOO_SMALL, TOO_MANY_STEPS
+from sweep.base.status import RUNAWAY, STEP_TOO_SMALL, TOO_MANY_STEPS
 from sweep.kernel import layout as at
 from sweep.kernel.balance import row
-from sweep.kernel.peaks import cubic_peak, crossing, hermite_peak
+from sweep.kernel.peaks import crossing, cubic_peak, hermite_peak
 from sweep.kernel.step import lane_cubic, on_cubic
 from sweep.kernel.vector import STRIDE, compiled, integer, number, put, put_integer
 

@@ -52,7 +52,7 @@ def stages(s, f, w, time, h):  # type: ignore[no-untyped-def]
 def error_of_step(s, f, w, tolerance, atol):  # type: ignore[no-untyped-def]
     """Return the largest error over its allowance: amounts (relative and absolute), temperatures, the controller's opening."""
     n, nz, p = integer(s + 8 * N_ROWS), integer(s + 8 * N_STATES), integer(s + 8 * AT_AMOUNTS)
-    block, y, new = row(s, w, W_BLOCK), row(s, w, W_Y), row(s, w, W_NEW)
+    block = row(s, w, W_BLOCK)
     error = row(s, w, W_K) + 5 * n * STRIDE
     worst = spread(0.0)
     for i in range(integer(s + 8 * N_SPECIES)):
