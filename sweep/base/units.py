@@ -4,7 +4,7 @@ import difflib
 import math
 import re
 from functools import lru_cache
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     import pint
@@ -38,12 +38,12 @@ def _names(error: "pint.UndefinedUnitError") -> str:
 
 
 @lru_cache(maxsize=1)
-def _registry() -> "pint.UnitRegistry":
+def _registry() -> "pint.UnitRegistry[Any]":
     """Return the one registry, its definitions from the user's cache where that can be written."""
     import pint
 
     try:
-        registry = pint.UnitRegistry(cache_folder=":auto:")
+        registry: pint.UnitRegistry[Any] = pint.UnitRegistry(cache_folder=":auto:")
     except OSError:
         registry = pint.UnitRegistry()
     registry.define("m3 = m**3")
@@ -57,7 +57,7 @@ def si_unit(dimension: str) -> str:
 
 
 def _split(text: str, dimension: str) -> tuple[float, str]:
-    wanted = f"a {dimension}, such as \"1 {si_unit(dimension)}\"".replace("^", "")
+    wanted = f'a {dimension}, such as "1 {si_unit(dimension)}"'.replace("^", "")
     if re.match(r"^\s*[+-]?\d+,\d", text):
         raise UnitFault(wanted, "the decimal sign is a point; a comma is not read")
     found = _QUANTITY.match(text)

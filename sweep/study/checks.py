@@ -55,7 +55,12 @@ def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Rea
                 reader.needed(f"reactions.{reaction.name}.heat.value", f"the limit {name} needs the heats")
     bound, horizon = reader.values.get("limits.tmr_ad.at_least"), reader.values["failure.horizon"]
     if bound is not None and bound > horizon:
-        reader.fault("limits.tmr_ad.at_least", f"{bound:g} s", f"at most failure.horizon, {horizon:g} s", "what lies beyond the horizon is not seen")
+        reader.fault(
+            "limits.tmr_ad.at_least",
+            f"{bound:g} s",
+            f"at most failure.horizon, {horizon:g} s",
+            "what lies beyond the horizon is not seen",
+        )
 
 
 def _brought(values: Mapping[str, float], charge: Charge, feeds: tuple[Feed, ...]) -> tuple[float, float, float]:
@@ -98,10 +103,20 @@ def check_fill(reader: Reader, charge: Charge, feeds: tuple[Feed, ...], variable
             return
         room = values.get("vessel.volume")
         if parts > volume * (1.0 + 1e-9):
-            reader.fault("recipe.charge.balance", f"{parts:.6g} m3 of other species at {where}", f"at most {volume:.6g} m3", "nothing is left for the balance")
+            reader.fault(
+                "recipe.charge.balance",
+                f"{parts:.6g} m3 of other species at {where}",
+                f"at most {volume:.6g} m3",
+                "nothing is left for the balance",
+            )
             return
         if room is not None and fill > room * (1.0 + 1e-9):
-            reader.fault("vessel.volume", f"{fill:.6g} m3 of liquid at {where}", f"at most {room:.6g} m3", "the fill is above the vessel's volume")
+            reader.fault(
+                "vessel.volume",
+                f"{fill:.6g} m3 of liquid at {where}",
+                f"at most {room:.6g} m3",
+                "the fill is above the vessel's volume",
+            )
             return
 
 
@@ -117,9 +132,19 @@ def warn_ranges(reader: Reader, reactions: tuple[Reaction, ...], variables: tupl
         path = f"reactions.{reaction.name}"
         at = reader.values.get(f"{path}.rate_constant.at")
         if at is not None and reaction.purpose == "synthesis" and not low - 60.0 <= at <= high + 60.0:
-            reader.warn(f"{path}.rate_constant.at", f"{at:.2f} K", f"a temperature near {low:.2f} to {high:.2f} K", "its reference temperature lies more than 60 K from what is swept")
+            reader.warn(
+                f"{path}.rate_constant.at",
+                f"{at:.2f} K",
+                f"a temperature near {low:.2f} to {high:.2f} K",
+                "its reference temperature lies more than 60 K from what is swept",
+            )
         if reaction.valid is not None and reaction.purpose == "synthesis" and not (reaction.valid[0] <= low and high <= reaction.valid[1]):
-            reader.warn(f"{path}.valid", f"{reaction.valid[0]:.2f} to {reaction.valid[1]:.2f} K", f"{low:.2f} to {high:.2f} K", "temperatures outside its range of validity are swept")
+            reader.warn(
+                f"{path}.valid",
+                f"{reaction.valid[0]:.2f} to {reaction.valid[1]:.2f} K",
+                f"{low:.2f} to {high:.2f} K",
+                "temperatures outside its range of validity are swept",
+            )
 
 
 def warn_jacket(reader: Reader, kind: str, reactions: tuple[Reaction, ...], charge: Charge, feeds: tuple[Feed, ...]) -> None:
@@ -140,10 +165,21 @@ def warn_jacket(reader: Reader, kind: str, reactions: tuple[Reaction, ...], char
         for feed in feeds:
             for s in feed.species:
                 path = f"recipe.feeds.{feed.name}"
-                n = values[f"{path}.amount.{s}.equivalents"] * plain.get(feed.equivalents[s], 0.0) if s in feed.equivalents else values[f"{path}.amount.{s}"]
-                heats = [-values.get(f"reactions.{r.name}.heat.value", 0.0) / r.left[s] for r in reactions if s in r.left and r.purpose == "synthesis"]
+                n = (
+                    values[f"{path}.amount.{s}.equivalents"] * plain.get(feed.equivalents[s], 0.0)
+                    if s in feed.equivalents
+                    else values[f"{path}.amount.{s}"]
+                )
+                heats = [
+                    -values.get(f"reactions.{r.name}.heat.value", 0.0) / r.left[s] for r in reactions if s in r.left and r.purpose == "synthesis"
+                ]
                 dosed = n / values[f"{path}.duration"] * max(heats, default=0.0)
                 if dosed > carried:
-                    reader.warn(f"{path}.duration", f"{dosed / 1e3:.4g} kW while {s} is dosed", f"at most {carried / 1e3:.4g} kW, U A (set-point - inlet)", "the jacket cannot carry the dosing heat")
+                    reader.warn(
+                        f"{path}.duration",
+                        f"{dosed / 1e3:.4g} kW while {s} is dosed",
+                        f"at most {carried / 1e3:.4g} kW, U A (set-point - inlet)",
+                        "the jacket cannot carry the dosing heat",
+                    )
     except (KeyError, ZeroDivisionError):
         return

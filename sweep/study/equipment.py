@@ -30,7 +30,12 @@ _STRICT = ("cooling.hold_up", "cooling.reset_time")
 def read_vessel(reader: Reader, table: dict[str, Any]) -> None:
     """Read the vessel: all of it may be left out where the question does not need it."""
     reader.only(table, "vessel", ("volume", "heat_capacity", "U", "area", "heat_loss", "stirrer_power"))
-    single = {"volume": "volume", "heat_capacity": "heat capacity", "U": "heat transfer coefficient", "stirrer_power": "power"}
+    single = {
+        "volume": "volume",
+        "heat_capacity": "heat capacity",
+        "U": "heat transfer coefficient",
+        "stirrer_power": "power",
+    }
     for key, dimension in single.items():
         if key in table:
             reader.quantity(f"vessel.{key}", table[key], dimension)
@@ -61,7 +66,12 @@ def read_cooling(reader: Reader, table: dict[str, Any] | None, later_kinds: set[
     """Return the kind of cooling. Left out: isothermal where no heats are given; a fault where they are."""
     if table is None:
         if heats:
-            reader.fault("cooling", "nothing", '[cooling] with kind = "adiabatic" or another', "heats are given, so it matters how they go")
+            reader.fault(
+                "cooling",
+                "nothing",
+                '[cooling] with kind = "adiabatic" or another',
+                "heats are given, so it matters how they go",
+            )
         return "isothermal"
     if "kind" not in table:
         reader.fault("cooling.kind", "nothing", " or ".join(f'"{k}"' for k in KINDS), "a cooling has a kind")
@@ -90,7 +100,12 @@ def read_cooling(reader: Reader, table: dict[str, Any] | None, later_kinds: set[
     if "gain" in table:
         reader.needed("cooling.set_point", "a controller with a gain holds a set-point")
     elif "jacket" in kinds and "duty" not in kinds and "set_point" in table:
-        reader.warn("cooling.set_point", table["set_point"], "a gain beside it", "without a gain the flow is what is written, whatever the set-point")
+        reader.warn(
+            "cooling.set_point",
+            table["set_point"],
+            "a gain beside it",
+            "without a gain the flow is what is written, whatever the set-point",
+        )
     return kind
 
 

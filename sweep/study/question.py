@@ -26,16 +26,31 @@ def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], b
         value = table.get(key)
         if (value is not None or key == "species") and (not isinstance(value, str) or value not in names):
             near = difflib.get_close_matches(str(value), sorted(names), 1)
-            reader.fault(f"target.{key}", repr(value), near[0] if near else "a species of this study", "no such species is written")
+            reader.fault(
+                f"target.{key}",
+                repr(value),
+                near[0] if near else "a species of this study",
+                "no such species is written",
+            )
             return None
     if table["species"] not in brought:
-        reader.fault("target.species", table["species"], "a species that is charged or fed", "what is never brought in cannot be converted")
+        reader.fault(
+            "target.species",
+            table["species"],
+            "a species that is charged or fed",
+            "what is never brought in cannot be converted",
+        )
     if "conversion" in table:
         reader.quantity("target.conversion", table["conversion"], "dimensionless")
     reader.needed("target.conversion", "a target is a conversion to reach")
     value = reader.values.get("target.conversion")
     if value is not None and not 0.0 < value < 1.0:
-        reader.fault("target.conversion", value, "a number between 0 and 1", "a conversion is a share, and complete conversion takes for ever")
+        reader.fault(
+            "target.conversion",
+            value,
+            "a number between 0 and 1",
+            "a conversion is a share, and complete conversion takes for ever",
+        )
     return Target(table["species"], table.get("product"))
 
 
@@ -145,7 +160,12 @@ def _variable(reader: Reader, path: str, name: str, sets: list[str], entry: dict
         return None
     for one in sets:
         if not ends[0] - 1e-9 * abs(ends[0]) <= reader.values[one] <= ends[1] + 1e-9 * abs(ends[1]):
-            reader.warn(one, f"{reader.values[one]:g} (SI)", f"{entry['from']} to {entry['to']}", f"the set-point lies outside the range of {name}")
+            reader.warn(
+                one,
+                f"{reader.values[one]:g} (SI)",
+                f"{entry['from']} to {entry['to']}",
+                f"the set-point lies outside the range of {name}",
+            )
     return Variable(name, tuple(sets), ends[0], ends[1], levels, unit_of(str(entry["from"])))
 
 
@@ -164,7 +184,12 @@ def read_plan(reader: Reader, table: dict[str, Any] | None, variables: tuple[Var
     if kind == "factorial":
         for variable in variables:
             if variable.levels is None:
-                reader.fault(f"variables.{variable.name}.levels", "nothing", "a whole number from 2", "a factorial plan counts levels")
+                reader.fault(
+                    f"variables.{variable.name}.levels",
+                    "nothing",
+                    "a whole number from 2",
+                    "a factorial plan counts levels",
+                )
     return Plan(kind, points, folder / file if kind == "list" and isinstance(file, str) else None)
 
 
@@ -207,7 +232,12 @@ def read_failure(reader: Reader, table: dict[str, Any] | None) -> FailureSetting
     table = table or {}
     reader.only(table, "failure", ("horizon", "wall", "td24", "mtt", "feeds", "feeds_stop_after"))
     reader.keep("failure.horizon", 2_592_000.0, "d", "time")
-    for key, dimension in (("horizon", "time"), ("td24", "temperature"), ("mtt", "temperature"), ("feeds_stop_after", "time")):
+    for key, dimension in (
+        ("horizon", "time"),
+        ("td24", "temperature"),
+        ("mtt", "temperature"),
+        ("feeds_stop_after", "time"),
+    ):
         if key in table:
             reader.quantity(f"failure.{key}", table[key], dimension)
     reader.at_least("failure.horizon", 0.0, True, "a horizon lies ahead")

@@ -55,7 +55,7 @@ def _document(text: str, name: str) -> dict[str, Any]:
         line = int(place[1]) if place else text.count("\n") + 1
         lines = text.split("\n")
         found = lines[line - 1].strip() if line <= len(lines) else ""
-        raise _single(name, line, "syntax", repr(found), "TOML, such as key = \"value\"", str(error)) from None
+        raise _single(name, line, "syntax", repr(found), 'TOML, such as key = "value"', str(error)) from None
     except (RecursionError, ValueError):
         raise _single(name, 1, "syntax", "nested too deep, or a number too long", "a plain TOML file", "it cannot be read") from None
 

@@ -10,10 +10,11 @@ from sweep.base.errors import Fault
 from sweep.base.units import UnitFault, to_si, unit_of
 from sweep.study.lines import line_of
 
-LATER = frozenset(
-    "uncertain correlations sensitivity risk ranges optimum scenarios deviations fit vessels".split()
-    + ["recipe.phases", "rate", "when", "pressure", "max_pressure"]
-)  # keys that are planned and not there
+_PLANNED = """
+    uncertain correlations sensitivity risk ranges optimum scenarios deviations fit vessels
+    recipe.phases rate when pressure max_pressure
+"""
+LATER = frozenset(_PLANNED.split())  # keys that are planned and not there
 
 
 _NAME = re.compile(r"^[A-Za-z_][A-Za-z0-9_]*$")

@@ -86,7 +86,12 @@ def _balanced(reader: Reader, path: str, left: dict[str, float], right: dict[str
         return
     before, after = (sum(n * masses[s] for s, n in side.items()) for side in (left, right))
     if abs(before - after) > _BALANCE * max(before, after):
-        reader.fault(path, f"{text}: {before * 1e3:.6g} g/mol becomes {after * 1e3:.6g} g/mol", "equal mass on both sides", "mass is conserved")
+        reader.fault(
+            path,
+            f"{text}: {before * 1e3:.6g} g/mol becomes {after * 1e3:.6g} g/mol",
+            "equal mass on both sides",
+            "mass is conserved",
+        )
 
 
 def _reaction(reader: Reader, name: str, table: dict[str, Any], names: set[str]) -> Reaction | None:
@@ -108,7 +113,17 @@ def _reaction(reader: Reader, name: str, table: dict[str, Any], names: set[str])
         return None
     _balanced(reader, f"{path}.equation", left, right, str(text))
     purpose = reader.choice(table, path, "purpose", ("synthesis", "decomposition"), "synthesis")
-    reaction = Reaction(name, str(text), purpose, reversible, left, right, orders, str(table["source"]) if "source" in table else None, _valid(reader, f"{path}.valid", table))
+    reaction = Reaction(
+        name,
+        str(text),
+        purpose,
+        reversible,
+        left,
+        right,
+        orders,
+        str(table["source"]) if "source" in table else None,
+        _valid(reader, f"{path}.valid", table),
+    )
     _constants(reader, path, table, reaction)
     return reaction
 
@@ -152,15 +167,30 @@ def _constants(reader: Reader, path: str, table: dict[str, Any], reaction: React
     reader.only(heat, f"{path}.heat", ("value", "at"))
     _read(reader, f"{path}.heat", heat, "energy per amount")
     if reaction.purpose == "synthesis" and reader.values.get(f"{path}.heat.value", -1.0) > 0.0:
-        reader.warn(f"{path}.heat.value", heat.get("value"), "a negative value where heat is given off", "an endothermic synthesis is legal, and rare")
+        reader.warn(
+            f"{path}.heat.value",
+            heat.get("value"),
+            "a negative value where heat is given off",
+            "an endothermic synthesis is legal, and rare",
+        )
     if reaction.reversible:
         known = reader.table(table, "equilibrium_constant", f"{path}.equilibrium_constant")
         reader.only(known, f"{path}.equilibrium_constant", ("value", "at"))
-        _read(reader, f"{path}.equilibrium_constant", known, concentration_power(sum(reaction.stoichiometry.values()), False))
+        _read(
+            reader,
+            f"{path}.equilibrium_constant",
+            known,
+            concentration_power(sum(reaction.stoichiometry.values()), False),
+        )
         reader.needed(f"{path}.equilibrium_constant.value", "a reversible reaction has an equilibrium")
         for s, nu in reaction.stoichiometry.items():
             if reaction.orders.get(s, 0.0) + nu < 0.0:
-                reader.fault(f"{path}.orders", f"{s}: {reaction.orders.get(s, 0.0):g}", f"at least {-nu:g}", "the reverse rate would have a negative order")
+                reader.fault(
+                    f"{path}.orders",
+                    f"{s}: {reaction.orders.get(s, 0.0):g}",
+                    f"at least {-nu:g}",
+                    "the reverse rate would have a negative order",
+                )
     elif "equilibrium_constant" in table:
         reader.fault(f"{path}.equilibrium_constant", "an equilibrium constant", "<=> in the equation", "-> runs one way")
 
@@ -171,5 +201,3 @@ def _read(reader: Reader, path: str, table: dict[str, Any], dimension: str) -> N
         reader.quantity(f"{path}.value", value, "dimensionless" if dimension == "dimensionless" else dimension)
     if "at" in table:
         reader.quantity(f"{path}.at", table["at"], "temperature")
-
-

@@ -54,34 +54,99 @@ def test_quantity_and_paths():
 
 
 CASES = {
-    "wrong dimension": ('"58 kJ/mol"', '"58 kJ"', "reactions.acylation.rate_constant.activation_energy", "measures something else"),
+    "wrong dimension": (
+        '"58 kJ/mol"',
+        '"58 kJ"',
+        "reactions.acylation.rate_constant.activation_energy",
+        "measures something else",
+    ),
     "unknown unit": ('"3 h"', '"3 hx"', "recipe.feeds.anhydride.duration", "unknown unit"),
     "unknown key": ('batch_time = "6 h"', 'batch_tme = "6 h"', "recipe.batch_tme", "the key is not known here"),
-    "unknown species": ("amide -> tar", "amid -> tar", "reactions.decomposition.equation", "[species.amid] is not written"),
-    "unbalanced": ("amine + anhydride -> amide + acid", "amine + anhydride -> amide", "reactions.acylation.equation", "mass is conserved"),
-    "missing constant": ('value = "8e-6 1/s", ', "", "reactions.decomposition.rate_constant.value", "a reaction has a rate"),
-    "missing heat": ('heat     = { value = "-70 kJ/mol", at = "25 degC" }', "", "reactions.overacylation.heat.value", "balance"),
-    "missing reference": ('at = "45 degC", activation_energy = "58', 'activation_energy = "58', "reactions.acylation.rate_constant.at", "moves"),
-    "upside down": ('from = "30 degC", to = "65 degC"', 'from = "65 degC", to = "30 degC"', "variables.charge_temperature.to", "upside down"),
+    "unknown species": (
+        "amide -> tar",
+        "amid -> tar",
+        "reactions.decomposition.equation",
+        "[species.amid] is not written",
+    ),
+    "unbalanced": (
+        "amine + anhydride -> amide + acid",
+        "amine + anhydride -> amide",
+        "reactions.acylation.equation",
+        "mass is conserved",
+    ),
+    "missing constant": (
+        'value = "8e-6 1/s", ',
+        "",
+        "reactions.decomposition.rate_constant.value",
+        "a reaction has a rate",
+    ),
+    "missing heat": (
+        'heat     = { value = "-70 kJ/mol", at = "25 degC" }',
+        "",
+        "reactions.overacylation.heat.value",
+        "balance",
+    ),
+    "missing reference": (
+        'at = "45 degC", activation_energy = "58',
+        'activation_energy = "58',
+        "reactions.acylation.rate_constant.at",
+        "moves",
+    ),
+    "upside down": (
+        'from = "30 degC", to = "65 degC"',
+        'from = "65 degC", to = "30 degC"',
+        "variables.charge_temperature.to",
+        "upside down",
+    ),
     "absolute zero": ('"20 degC"\nstart', '"-300 degC"\nstart', "recipe.feeds.anhydride.temperature", "below it"),
-    "negative duration": ('duration    = "3 h"', 'duration    = "-3 h"', "recipe.feeds.anhydride.duration", "a feed takes time"),
-    "zero duration": ('duration    = "3 h"', 'duration    = "0 h"', "recipe.feeds.anhydride.duration", "a feed takes time"),
-    "infinite": ("equivalents = 1.06", "equivalents = inf", "recipe.feeds.anhydride.amount.anhydride.equivalents", "nothing can be computed"),
+    "negative duration": (
+        'duration    = "3 h"',
+        'duration    = "-3 h"',
+        "recipe.feeds.anhydride.duration",
+        "a feed takes time",
+    ),
+    "zero duration": (
+        'duration    = "3 h"',
+        'duration    = "0 h"',
+        "recipe.feeds.anhydride.duration",
+        "a feed takes time",
+    ),
+    "infinite": (
+        "equivalents = 1.06",
+        "equivalents = inf",
+        "recipe.feeds.anhydride.amount.anhydride.equivalents",
+        "nothing can be computed",
+    ),
     "not a number": ('"3 kW"', '"nan kW"', "vessel.stirrer_power", "a quantity is a number and its unit"),
     "decimal comma": ('"2.2 mol/L"', '"2,2 mol/L"', "recipe.charge.concentration.amine", "a comma is not read"),
-    "bare number": ('"6 h"\nturn', '6\nturn', "recipe.batch_time", "a bare number is dimensionless"),
+    "bare number": ('"6 h"\nturn', "6\nturn", "recipe.batch_time", "a bare number is dimensionless"),
     "conversion": ("conversion = 0.985", "conversion = 1.2", "target.conversion", "a conversion is a share"),
     "molar mass": ('"107.2 g/mol"', '"0 g/mol"', "species.amine.molar_mass", "weighs something"),
     "overfull": ('volume        = "2.0 m3"', 'volume        = "3.8 m3"', "vessel.volume", "above the vessel's volume"),
-    "overfull in a corner": ('to = "2.8 mol/L"', 'to = "9 mol/L"', "vessel.volume", "above the vessel's volume"),
-    "sets nothing": ('"recipe.feeds.anhydride.duration"', '"recipe.feeds.anhydrid.duration"', "variables.dosing_time.sets", "sets nothing"),
-    "sets the same": ('"recipe.feeds.anhydride.duration"', '"cooling.start"', "variables.dosing_time.sets", "charge_temperature sets it already"),
+    "overfull in a corner": ('"4 m3"\nheat', '"2.5 m3"\nheat', "vessel.volume", "above the vessel's volume"),
+    "sets nothing": (
+        '"recipe.feeds.anhydride.duration"',
+        '"recipe.feeds.anhydrid.duration"',
+        "variables.dosing_time.sets",
+        "sets nothing",
+    ),
+    "sets the same": (
+        '"recipe.feeds.anhydride.duration"',
+        '"cooling.start"',
+        "variables.dosing_time.sets",
+        "charge_temperature sets it already",
+    ),
     "no decomposition": ('purpose  = "decomposition"', "", "limits.tmr_ad", "not assessed"),
     "beyond the horizon": ('"24 h" }', '"60 d" }', "limits.tmr_ad.at_least", "beyond the horizon"),
     "no product": ('product    = "amide"', "", "limits.per_product_diamide", "it counts on the product"),
     "unknown limit": ("cooling_duty  ", "coling_duty  ", "limits.coling_duty", "no response has this name"),
     "later section": ("[accuracy]", "[risk]\ndraws = 4\n[accuracy]", "risk", "not available yet"),
-    "later limit": ("[limits]", '[limits]\nmax_pressure = { at_most = "2 bar" }', "limits.max_pressure", "not available yet"),
+    "later limit": (
+        "[limits]",
+        '[limits]\nmax_pressure = { at_most = "2 bar" }',
+        "limits.max_pressure",
+        "not available yet",
+    ),
     "never brought in": ('species    = "amine"', 'species    = "tar"', "target.species", "cannot be converted"),
     "unused cooling key": ('kind      = "jacket"', 'kind      = "adiabatic"', "cooling.flow", "does not use it"),
     "no flow": ('flow      = "9 m3/h"', "", "cooling.flow", "kind jacket needs it"),
@@ -89,7 +154,12 @@ CASES = {
     "axis": ('["charge_temperature", "dosing_time"]', '["charge_temperature", "nothing"]', "window.axes", "two axes"),
     "levels": ('"6 h", levels = 15', '"6 h"', "variables.dosing_time.levels", "a factorial plan counts levels"),
     "temperature as coulomb": ('inlet     = "5 degC"', 'inlet     = "5 C"', "cooling.inlet", "not what it seems"),
-    "feed without density": ('density       = "1.08 kg/L"', "", "species.anhydride.density", "feed anhydride adds its volume"),
+    "feed without density": (
+        'density       = "1.08 kg/L"',
+        "",
+        "species.anhydride.density",
+        "feed anhydride adds its volume",
+    ),
     "no room": ('"2.2 mol/L" }', '"12 mol/L" }', "recipe.charge.balance", "nothing is left"),
 }
 
@@ -106,8 +176,14 @@ def test_every_fault_at_once_with_its_line():
     with pytest.raises(StudyError) as caught:
         read_text(text, "slow.toml")
     lines = {f.key: f.line for f in caught.value.faults}
-    numbers = {key: 1 + text[: text.index(part)].count("\n") for key, part in [
-        ("recipe.feeds.anhydride.duration", '"20 K"'), ("target.conversion", "conversion = -1"), ("species.amine.molar_mass", '"x"')]}
+    numbers = {
+        key: 1 + text[: text.index(part)].count("\n")
+        for key, part in [
+            ("recipe.feeds.anhydride.duration", '"20 K"'),
+            ("target.conversion", "conversion = -1"),
+            ("species.amine.molar_mass", '"x"'),
+        ]
+    }
     assert numbers == {key: lines[key] for key in numbers}
     assert f"slow.toml:{numbers['target.conversion']}  target.conversion\n  found     -1" in str(caught.value)
     assert str(caught.value).endswith(f"{len(caught.value.faults)} faults")
@@ -132,7 +208,9 @@ def test_warnings():
     assert any("cannot carry the dosing heat" in w for w in warned(('"310 W/m2/K"', '"30 W/m2/K"')))
     assert any("outside the range of dosing_time" in w for w in warned(('"3 h"', '"8 h"')))
     assert any("reference temperature" in w for w in warned(('at = "45 degC", activation', 'at = "200 degC", activation')))
-    assert any("validity" in w for w in warned(('purpose  = "dec', 'purpose  = "dec'), ("amide + acid\"", "amide + acid\"\nvalid = [\"20 degC\", \"50 degC\"]")))
+    assert any(
+        "validity" in w for w in warned(('purpose  = "dec', 'purpose  = "dec'), ('amide + acid"', 'amide + acid"\nvalid = ["20 degC", "50 degC"]'))
+    )
     assert any("flow is what is written" in w for w in warned(('gain      = "0.08 1/K"', "")))
 
 

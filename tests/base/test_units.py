@@ -1,0 +1,75 @@
+"""Units: exact definitions (SI brochure; 0 degC = 273.15 K), and the texts that a unit library alone reads wrongly."""
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from sweep.base.units import UnitFault, from_si, show, to_si
+
+
+@pytest.mark.parametrize(
+    ("text", "dimension", "expected"),
+    [
+        ("25 degC", "temperature", 298.15),
+        ("-10 degC", "temperature", 263.15),
+        ("1.9 J/g/degC", "specific heat capacity", 1900.0),
+        ("310 W/m2/K", "heat transfer coefficient", 310.0),
+        ("9 m3/h", "volume flow", 0.0025),
+        ("2.2 mol/L", "concentration", 2200.0),
+        ("4.4 kmol", "amount", 4400.0),
+        ("98.5 %", "dimensionless", 0.985),
+        ("1.5", "dimensionless", 1.5),
+        ("30 d", "time", 2592000.0),
+        ("5 K", "temperature difference", 5.0),
+        ("2 L^0.5/mol^0.5/s", "mol**(-0.5)*m**(1.5)*s**(-1)", 2.0 * 1e-3**0.5),
+    ],
+)
+def test_to_si(text, dimension, expected):
+    assert expected == pytest.approx(to_si(text, dimension), rel=1e-12)
+
+
+@pytest.mark.parametrize(
+    ("text", "dimension", "because"),
+    [
+        ("1,5 L", "volume", "comma"),
+        ("5 degC", "temperature difference", "counts from a zero"),
+        ("25 C", "temperature", "not what it seems"),
+        ("1 barg", "pressure", "not what it seems"),
+        ("12:30", "time", "signs"),
+        ("nan K", "temperature", "a number and its unit"),
+        ("1e999 K", "temperature", "not finite"),
+        ("9**9**9 K", "temperature", ""),
+        ('__import__("os")', "time", "a number and its unit"),
+        ("5", "time", "with its unit"),
+        ("20 K", "time", "measures something else"),
+        ("3 hx", "time", "unknown unit 'hx'"),
+        ("-1 K", "temperature", "below"),
+    ],
+)
+def test_refused(text, dimension, because):
+    with pytest.raises(UnitFault) as caught:
+        to_si(text, dimension)
+    assert because in caught.value.because
+
+
+@given(
+    st.floats(0.1, 1e6),
+    st.sampled_from([("degC", "temperature"), ("h", "time"), ("kmol", "amount"), ("kJ/mol", "energy per amount")]),
+)
+def test_there_and_back(value, unit):
+    text, dimension = unit
+    assert value == pytest.approx(from_si(to_si(f"{value!r} {text}", dimension), text), rel=1e-9, abs=1e-9)
+
+
+@given(st.text(max_size=30))
+def test_any_text_is_a_quantity_or_a_fault(text):
+    try:
+        to_si(text, "time")
+    except UnitFault as error:
+        assert error.expected
+
+
+def test_show():
+    assert "45 degC" == show(318.15, "degC")
+    assert "2.5 h" == show(9000.0, "h")
+    assert "0.1235" == show(0.123456, "")
