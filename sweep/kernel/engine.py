@@ -16,7 +16,7 @@ MOST_STEPS = 20_000
 class Marched:
     """What a march left. N points, R rows of state, K sample times.
 
-    out: (N, 16) by the names OUT_* of `layout`; at_end, at_target, at_best, at_last: (N, R) states (NaN where there was none);
+    out: (N, OUT_STATES) by the names OUT_* of `layout`; at_end, at_target, at_best, at_last: (N, R) states (NaN where there was none);
     samples: (N, K, R) states at the times asked for (NaN beyond the march's end).
     """
 

@@ -29,9 +29,10 @@ from sweep.kernel.vector import STRIDE, compiled, integer, load, number, size, s
     at.VOLUME, at.VOLUME_RATE, at.UA_CONSTANT, at.UA_PER_VOLUME, at.FREE, at.DUTY_ON, at.DUTY, at.SET_POINT, at.HOLD_RATE, at.HAS_DUTY,
     at.FEED_CP, at.LOSS, at.INLET,
 )  # fmt: skip
-(JACKET_CAPACITY_INVERSE, JACKET_RENEWAL, GAIN, RESET_INVERSE, L_DELTA, L_HEAT_SLOPE, L_DUTY_SLOPE, L_HEAT_NOW, STIRRER, AMBIENT) = (
+(JACKET_CAPACITY_INVERSE, JACKET_RENEWAL, GAIN, RESET_INVERSE, L_DELTA, L_HEAT_SLOPE, L_DUTY_SLOPE, L_HEAT_NOW, STIRRER, AMBIENT, L_RATE,
+    L_RATE_SLOPE) = (
     at.JACKET_CAPACITY_INVERSE, at.JACKET_RENEWAL, at.GAIN, at.RESET_INVERSE, at.L_DELTA, at.L_HEAT_SLOPE, at.L_DUTY_SLOPE,
-    at.L_HEAT_NOW, at.STIRRER, at.AMBIENT,
+    at.L_HEAT_NOW, at.STIRRER, at.AMBIENT, at.L_RATE, at.L_RATE_SLOPE,
 )  # fmt: skip
 
 
@@ -200,7 +201,7 @@ def heat_by_time(s, w):  # type: ignore[no-untyped-def]
 
 @compiled
 def jacobian(s, f, w, y, slope_now, volume, capacity):  # type: ignore[no-untyped-def]
-    """Write the Jacobian into its slots and df/dt beside it; note how heat release and duty change (W/s)."""
+    """Write the Jacobian into its slots and df/dt beside it; note how heat release and duty (W/s) and dT/dt (K/s2) change."""
     block, lane, slope = row(s, w, W_BLOCK), row(s, w, W_LANE), row(s, w, W_SLOPE)
     nz = integer(s + 8 * N_STATES)
     T, jacket, integral = load(y + nz * STRIDE), load(y + (nz + 1) * STRIDE), load(y + (nz + 2) * STRIDE)
@@ -276,3 +277,8 @@ def jacobian(s, f, w, y, slope_now, volume, capacity):  # type: ignore[no-untype
     needed = heat_slope - (loss_T + cp_feed) * dT
     pinned = where(wall_on > 0.5, where(free > 0.5, wall_slope, needed), where(hold < 0.0, needed, 0.0))
     store(lane + L_DUTY_SLOPE * STRIDE, pinned)
+    heating_slope = load(slope + nz * STRIDE)
+    for l in range(nz + 2):
+        heating_slope = heating_slope + load(slot(s, w, nz, l)) * load(slope_now + l * STRIDE)
+    store(lane + L_RATE * STRIDE, dT)
+    store(lane + L_RATE_SLOPE * STRIDE, heating_slope)

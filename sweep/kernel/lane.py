@@ -40,6 +40,10 @@ from sweep.kernel.vector import STRIDE, compiled, integer, number, put, put_inte
     at.OUT_STATUS, at.OUT_STEPS, at.OUT_REJECTED, at.OUT_TIME, at.OUT_CROSSED, at.OUT_T_MAX, at.OUT_T_MAX_TIME, at.OUT_HEAT_MAX,
     at.OUT_DUTY_MAX, at.OUT_BEST,
 )  # fmt: skip
+(L_RATE, L_RATE_SLOPE, L_PEND_RATE, L_PEND_RATE_SLOPE, L_RATE_MAX, L_RATE_MAX_TIME, OUT_RATE_MAX, OUT_RATE_MAX_TIME) = (
+    at.L_RATE, at.L_RATE_SLOPE, at.L_PEND_RATE, at.L_PEND_RATE_SLOPE, at.L_RATE_MAX, at.L_RATE_MAX_TIME, at.OUT_RATE_MAX,
+    at.OUT_RATE_MAX_TIME,
+)  # fmt: skip
 (OUT_BEST_TIME, OUT_REACTED_MAX, OUT_HEAT_SUM, OUT_BOUNDARY_SUM, OUT_END_TIME, OUT_STATES) = (
     at.OUT_BEST_TIME, at.OUT_REACTED_MAX, at.OUT_HEAT_SUM, at.OUT_BOUNDARY_SUM, at.OUT_END_TIME, at.OUT_STATES,
 )  # fmt: skip
@@ -100,6 +104,7 @@ def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, out, 
     keep(place, L_T_MAX, T)
     keep(place, L_HEAT_MAX, -_NEVER)
     keep(place, L_DUTY_MAX, -_NEVER)
+    keep(place, L_RATE_MAX, -_NEVER)
     keep(place, L_CROSSED, math.nan)
     keep(place, L_BEST, -_NEVER)
     keep(place, L_BEST_TIME, math.nan)
@@ -153,6 +158,20 @@ def state_place(s, out, out_length, point, which):  # type: ignore[no-untyped-de
 
 
 @compiled
+def rate_peak(place):  # type: ignore[no-untyped-def]
+    """Note the largest dT/dt between the beginnings of the step before and of the one just made, and its time."""
+    before, theta, rate = get(place, L_PEND_STEP), 0.0, get(place, L_RATE)
+    if get(place, L_PENDING) > 0.5:
+        theta, rate = hermite_peak(get(place, L_PEND_RATE), get(place, L_PEND_RATE_SLOPE), rate, get(place, L_RATE_SLOPE), before)
+        theta -= 1.0
+    if rate > get(place, L_RATE_MAX):
+        keep(place, L_RATE_MAX, rate)
+        keep(place, L_RATE_MAX_TIME, get(place, L_TIME) + theta * before)
+    keep(place, L_PEND_RATE, get(place, L_RATE))
+    keep(place, L_PEND_RATE_SLOPE, get(place, L_RATE_SLOPE))
+
+
+@compiled
 def peaks_of_step(s, w, lane, h, until):  # type: ignore[no-untyped-def]
     """Raise the highest temperature, heat release and duty by the step just made, up to a fraction of it."""
     place, nz = row(s, w, W_LANE) + 8 * lane, integer(s + 8 * N_STATES)
@@ -163,8 +182,8 @@ def peaks_of_step(s, w, lane, h, until):  # type: ignore[no-untyped-def]
     heat, duty = get(place, L_HEAT), get(place, L_DUTY)
     if get(place, L_PENDING) > 0.5:
         before = get(place, L_PEND_STEP)
-        heat = hermite_peak(get(place, L_PEND_HEAT), get(place, L_PEND_HEAT_SLOPE), heat, get(place, L_HEAT_SLOPE), before)
-        duty = hermite_peak(get(place, L_PEND_DUTY), get(place, L_PEND_DUTY_SLOPE), duty, get(place, L_DUTY_SLOPE), before)
+        _, heat = hermite_peak(get(place, L_PEND_HEAT), get(place, L_PEND_HEAT_SLOPE), heat, get(place, L_HEAT_SLOPE), before)
+        _, duty = hermite_peak(get(place, L_PEND_DUTY), get(place, L_PEND_DUTY_SLOPE), duty, get(place, L_DUTY_SLOPE), before)
     end_heat = get(place, L_HEAT) + until * (get(place, L_HEAT_NOW) - get(place, L_HEAT))
     end_duty = get(place, L_DUTY) + until * (get(place, L_DUTY_NOW) - get(place, L_DUTY))
     keep(place, L_HEAT_MAX, max(get(place, L_HEAT_MAX), max(heat, end_heat)))
@@ -173,6 +192,7 @@ def peaks_of_step(s, w, lane, h, until):  # type: ignore[no-untyped-def]
     keep(place, L_PEND_HEAT_SLOPE, get(place, L_HEAT_SLOPE))
     keep(place, L_PEND_DUTY, get(place, L_DUTY))
     keep(place, L_PEND_DUTY_SLOPE, get(place, L_DUTY_SLOPE))
+    rate_peak(place)
     keep(place, L_PEND_STEP, h)
     keep(place, L_PENDING, 1.0)
     keep(place, L_SUM_HEAT, get(place, L_SUM_HEAT) + 0.5 * until * h * (abs(get(place, L_HEAT)) + abs(end_heat)))
@@ -328,6 +348,8 @@ def leave(s, w, lane, out, out_length, whose):  # type: ignore[no-untyped-def]
     put(target + 8 * OUT_HEAT_SUM, get(place, L_SUM_HEAT))
     put(target + 8 * OUT_BOUNDARY_SUM, get(place, L_SUM_BOUNDARY))
     put(target + 8 * OUT_END_TIME, get(place, L_END_TIME))
+    put(target + 8 * OUT_RATE_MAX, get(place, L_RATE_MAX))
+    put(target + 8 * OUT_RATE_MAX_TIME, get(place, L_RATE_MAX_TIME))
     last = state_place(s, out, out_length, point, AT_LAST)
     for i in range(n):
         put(last + 8 * i, number(row(s, w, W_Y) + 8 * lane + i * STRIDE))

@@ -40,9 +40,9 @@ N_CONSTANTS = 8
 # what a march leaves per point ---------------------------------------------------------------------------------------------
 (
     OUT_STATUS, OUT_STEPS, OUT_REJECTED, OUT_TIME, OUT_CROSSED, OUT_T_MAX, OUT_T_MAX_TIME, OUT_HEAT_MAX, OUT_DUTY_MAX,
-    OUT_BEST, OUT_BEST_TIME, OUT_REACTED_MAX, OUT_HEAT_SUM, OUT_BOUNDARY_SUM, OUT_END_TIME,
-) = range(15)  # fmt: skip
-OUT_STATES = 16  # then four states: at the batch's end, at the target, at the most productive time, at the last moment
+    OUT_BEST, OUT_BEST_TIME, OUT_REACTED_MAX, OUT_HEAT_SUM, OUT_BOUNDARY_SUM, OUT_END_TIME, OUT_RATE_MAX, OUT_RATE_MAX_TIME,
+) = range(17)  # fmt: skip
+OUT_STATES = 18  # then four states: at the batch's end, at the target, at the most productive time, at the last moment
 
 # rows of one lane's own numbers, from W_LANE on -----------------------------------------------------------------------------
 (
@@ -50,6 +50,7 @@ OUT_STATES = 16  # then four states: at the batch's end, at the target, at the m
     L_T_MAX, L_T_MAX_TIME, L_HEAT_MAX, L_DUTY_MAX, L_TARGET, L_TURNAROUND, L_ATOL, L_TOO_HOT, L_DELTA, L_END, L_NEXT_SAMPLE,
     L_REACTED_MAX, L_OLD_STEP, L_FAILED_LAST, L_CAP, L_CROSSED, L_BEST, L_BEST_TIME, L_END_FIXED, L_EARLIEST, L_SUM_HEAT,
     L_SUM_BOUNDARY, L_PEND_HEAT, L_PEND_HEAT_SLOPE, L_PEND_DUTY, L_PEND_DUTY_SLOPE, L_PENDING, L_END_TIME,
-    L_SEGMENT, L_STEPS, L_REJECTED, L_STATUS, L_PEND_STEP, L_TFINAL, L_SEG_END,
-) = range(47)  # fmt: skip
-LANE_ROWS = 47
+    L_SEGMENT, L_STEPS, L_REJECTED, L_STATUS, L_PEND_STEP, L_TFINAL, L_SEG_END, L_RATE, L_RATE_SLOPE, L_PEND_RATE, L_PEND_RATE_SLOPE,
+    L_RATE_MAX, L_RATE_MAX_TIME,
+) = range(53)  # fmt: skip
+LANE_ROWS = 53

@@ -48,16 +48,20 @@ def crossing(cubic, level):  # type: ignore[no-untyped-def]
 
 @compiled
 def hermite_peak(q0, s0, q1, s1, h):  # type: ignore[no-untyped-def]
-    """Return the highest value of the cubic through two values with their slopes, a step h apart."""
-    highest = max(q0, q1)
+    """Return (theta, value) of the highest point of the cubic through two values with their slopes, a step h apart."""
+    best, highest = 0.0, q0
+    if q1 > q0:
+        best, highest = 1.0, q1
     m0, m1 = s0 * h, s1 * h
     if not (m0 > 0.0 and m1 < 0.0):
-        return highest
+        return best, highest
     a, b = 2.0 * (q0 - q1) + m0 + m1, 3.0 * (q1 - q0) - 2.0 * m0 - m1
     inner = b * b - 3.0 * a * m0
     if inner <= 0.0 or b - math.sqrt(inner) >= 0.0:
-        return highest
+        return best, highest
     theta = m0 / (math.sqrt(inner) - b)
     if 0.0 < theta < 1.0:
-        highest = max(highest, q0 + theta * (m0 + theta * (b + theta * a)))
-    return highest
+        value = q0 + theta * (m0 + theta * (b + theta * a))
+        if value > highest:
+            best, highest = theta, value
+    return best, highest
