@@ -1,0 +1,5 @@
+"""Which points are evaluated."""
+
+from sweep.plan.points import Planned, planned, points, set_point
+
+__all__ = ["Planned", "planned", "points", "set_point"]
