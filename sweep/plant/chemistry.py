@@ -11,7 +11,7 @@ from sweep.plant.values import Floats, Values
 from sweep.study.model import Reaction, Study
 
 R = 8.31446261815324  # J/mol/K, exact (SI 2019: k times N_A)
-NO_RATE = -1.0e4  # ln k of a rate constant of zero
+NO_RATE = -230.0  # ln k of a rate constant of zero: 1e-100, small enough to do nothing, large enough for its products to stay normal numbers
 
 
 def names(study: Study) -> list[str]:

@@ -7,9 +7,10 @@ import pandas as pd
 
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
-from sweep.plant import states
-from sweep.plant.recipe import charge_plant
-from sweep.plant.values import values_of
+from sweep.plant import rates, states
+from sweep.plant.onward import segment_at
+from sweep.plant.recipe import Charged, charge_plant, has_heat_capacities
+from sweep.plant.values import Floats, values_of
 from sweep.study.model import Study
 
 DRAWN = 401  # times that draw well
@@ -25,22 +26,38 @@ def profile(study: Study, point: Mapping[str, float] | None = None, times: Seque
     order = np.argsort(wanted, kind="stable")
     ascending = wanted[order][None, :]
     marched = march(plant.program, plant.blocks, plant.starts, plant.constants, ascending, float(study.values["accuracy.relative"]))
-    state, nz = marched.samples, plant.program.structure.sources.shape[0]
-    moles = states.amounts(plant, state, ascending)[0]
-    columns = {"time_s": ascending[0], "temperature_K": state[0, :, nz]}
-    jacket = study.cooling_kind in ("jacket", "coolant")
-    columns["jacket_temperature_K"] = state[0, :, nz + 1] if jacket else np.full(ascending.size, np.nan)
-    share = plant.brought.share(ascending)[0]
-    columns["volume_m3"] = plant.brought.volume[0] + plant.brought.feed_volume[0] @ share
-    for i, species in enumerate(study.species):
-        columns[f"n_{species.name}_mol"] = moles[:, i]
-    if study.target is not None:
-        k = [s.name for s in study.species].index(study.target.species)
-        brought = plant.brought.charged[0, k] + plant.brought.fed[0, :, k] @ share
-        columns["conversion"] = (brought - moles[:, k]) / plant.brought.total()[0, k]
-    if study.reactions and all(plant.values.has(f"reactions.{r.name}.heat.value") for r in study.reactions):
-        columns["accumulation"] = states.accumulation(study, plant, np.nan_to_num(state), ascending)[0]
-    table = pd.DataFrame(columns)
+    table = pd.DataFrame(_lines(study, plant, ascending, marched.samples))
     back = np.empty_like(order)
     back[order] = np.arange(order.size)
     return table.iloc[back].reset_index(drop=True)
+
+
+def _lines(study: Study, plant: Charged, times: Floats, state: Floats) -> dict[str, Floats]:
+    """Return the columns of a profile from states (1, K, R) at times (1, K)."""
+    nz, one, count = plant.program.structure.sources.shape[0], np.zeros(1, dtype=int), times.size
+    T, T_jacket, known = state[0, :, nz], state[0, :, nz + 1], np.nan_to_num(state, nan=300.0)
+    moles = np.where(np.isfinite(T)[:, None], states.amounts_at(plant, one, known, times)[0], np.nan)
+    share = states.share_at(plant, one, times)[0]
+    volume = plant.brought.volume[0] + plant.brought.feed_volume[0] @ share
+    rows = np.zeros(count, dtype=int)
+    block = plant.blocks[rows, segment_at(plant, rows, times[0])]
+    has_jacket = (block[:, at.UA_CONSTANT] > 0.0) | (block[:, at.UA_PER_VOLUME] > 0.0)
+    columns = {"time_s": times[0], "temperature_K": T, "jacket_temperature_K": np.where(has_jacket, T_jacket, np.nan), "volume_m3": volume}
+    columns.update({f"n_{s.name}_mol": moles[:, i] for i, s in enumerate(study.species)})
+    columns["conversion"] = _conversion(study, plant, share, moles) if study.target is not None else np.full(count, np.nan)
+    heated = all(plant.values.has(f"reactions.{r.name}.heat.value") for r in study.reactions)
+    now = rates.flow(plant, block, np.repeat(plant.constants[:, at.DELTA], count), np.nan_to_num(moles), np.nan_to_num(T, nan=300.0), volume)
+    missing = np.isnan(T) | (not heated)
+    columns["heat_release_W"] = np.where(missing, np.nan, now.heat.sum(axis=1))
+    duty = rates.cooling_duty(block, now, np.nan_to_num(T, nan=300.0), np.nan_to_num(T_jacket, nan=300.0), volume)
+    columns["cooling_duty_W"] = np.where(missing | (not has_heat_capacities(study, plant.values)), np.nan, duty)
+    left = states.accumulation(study, plant, one, known, times)[0] if heated and study.reactions else np.full(count, np.nan)
+    columns["accumulation"] = np.where(np.isnan(T), np.nan, left)
+    return columns
+
+
+def _conversion(study: Study, plant: Charged, share: Floats, moles: Floats) -> Floats:
+    assert study.target is not None
+    k = [s.name for s in study.species].index(study.target.species)
+    brought = plant.brought.charged[0, k] + plant.brought.fed[0, :, k] @ share
+    return np.asarray((brought - moles[:, k]) / plant.brought.total()[0, k])

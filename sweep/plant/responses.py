@@ -9,7 +9,10 @@ from sweep.base.status import DONE, OUTCOMES, UNBALANCED
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched, march
 from sweep.plant import states
+from sweep.plant.failure import failure_figures
+from sweep.plant.moments import Batch, refine, sampled
 from sweep.plant.recipe import TOO_HOT, Charged, charge_plant, has_heat_capacities
+from sweep.plant.target import CAUSES, productivity_unit, target_columns, why_not
 from sweep.plant.values import Floats, values_of
 from sweep.study.model import Study
 
@@ -25,16 +28,13 @@ class Response(NamedTuple):
     kind: str = "float"
 
 
-def _product_mass(study: Study) -> float | None:
-    """Return the product's molar mass (kg/mol), None where it is not written or there is no product."""
-    if study.target is None or study.target.product is None:
-        return None
-    return study.values.get(f"species.{study.target.product}.molar_mass")
-
-
-def productivity_unit(study: Study) -> str:
-    """Return "kg", or "mol" where the product has no molar mass."""
-    return "mol" if _product_mass(study) is None else "kg"
+FAILURE = [
+    Response("mtsr_K", "K"), Response("mtsr_time_s", "s"), Response("tmr_ad_s", "s"), Response("tmr_ad_censored", "", "bool"),
+    Response("tmr_ad_time_s", "s"), Response("tmr_ad_closed_form_s", "s"), Response("td24_K", "K"), Response("td24_censored", "", "bool"),
+    Response("mtt_K", "K"), Response("criticality_class", "", "int"), Response("adiabatic_rise_synthesis_K", "K"),
+    Response("adiabatic_rise_decomposition_K", "K"),
+]  # fmt: skip
+_DTYPES = {"float": "float64", "text": "str", "bool": "boolean", "int": "Int64"}
 
 
 def counted(study: Study) -> list[str]:
@@ -56,6 +56,7 @@ def responses(study: Study) -> tuple[Response, ...]:
             columns += [Response(f"per_product_{s}", "1") for s in counted(study) if s != study.target.product]
     columns += [Response(f"fraction_{s}", "1") for s in counted(study)]
     columns.append(Response("cycle_time_s", "s"))
+    columns += FAILURE if study.asks_failure else []
     if study.target is not None:
         columns.append(Response("highest_conversion", "1"))
         if study.target.product is not None:
@@ -70,12 +71,11 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     values = values_of(study, points)
     plant = charge_plant(study, values)
     times = _sample_times(plant)
-    marched = march(
-        plant.program, plant.blocks, plant.starts, plant.constants, times, float(study.values.get("accuracy.relative", 1e-6))
-    )
-    found = _respond(study, plant, marched, times)
-    order = [r.column for r in responses(study)]
-    return pd.concat([points, pd.DataFrame({name: found[name] for name in order}, index=points.index)], axis=1)
+    tolerance = float(study.values.get("accuracy.relative", 1e-6))
+    marched = march(plant.program, plant.blocks, plant.starts, plant.constants, times, tolerance)
+    found = _respond(study, plant, marched, times, tolerance)
+    columns = {r.column: pd.array(found[r.column], dtype=_DTYPES[r.kind]) for r in responses(study)}
+    return pd.concat([points, pd.DataFrame(columns, index=points.index)], axis=1)
 
 
 def _sample_times(plant: Charged) -> Floats:
@@ -85,7 +85,7 @@ def _sample_times(plant: Charged) -> Floats:
     return np.sort(np.concatenate([even, plant.boundaries], axis=1), axis=1)
 
 
-def _respond(study: Study, plant: Charged, marched: Marched, times: Floats) -> dict[str, Floats | list[str]]:
+def _respond(study: Study, plant: Charged, marched: Marched, times: Floats, tolerance: float) -> dict[str, Floats | list[str]]:
     out, values = marched.out, plant.values
     end = np.where(np.isnan(out[:, at.OUT_END_TIME]), out[:, at.OUT_TIME], out[:, at.OUT_END_TIME])
     ended = np.where(np.isnan(out[:, [at.OUT_END_TIME]]), marched.at_last, marched.at_end)
@@ -98,20 +98,25 @@ def _respond(study: Study, plant: Charged, marched: Marched, times: Floats) -> d
         "heat_release_W": out[:, at.OUT_HEAT_MAX],
         "cooling_duty_W": out[:, at.OUT_DUTY_MAX],
     }
+    nothing = np.full(values.count, np.nan)
     heated = all(values.has(f"reactions.{r.name}.heat.value") for r in study.reactions)
     full = heated and has_heat_capacities(study, values)
-    if not heated:
-        found["heat_release_W"] = np.full(values.count, np.nan)
-    if not full:
-        found["cooling_duty_W"] = np.full(values.count, np.nan)
-    found["accumulation"] = _accumulation(study, plant, marched, times, end, heated)
-    found["energy_balance_error"] = _balance(plant, marched, ended, moles) if full else np.full(values.count, np.nan)
+    found["heat_release_W"] = out[:, at.OUT_HEAT_MAX] if heated else nothing
+    found["cooling_duty_W"] = out[:, at.OUT_DUTY_MAX] if full else nothing
+    found["energy_balance_error"] = _balance(plant, marched, ended, moles) if full else nothing
     with np.errstate(invalid="ignore"):
         bad = (code == DONE) & (np.asarray(found["energy_balance_error"]) > BALANCE)
     code = np.where(bad, UNBALANCED, code)
+    found.update(target_columns(study, plant, marched, end, moles))
     _by_species(study, plant, moles, found)
-    _by_target(study, plant, marched, end, moles, found)
-    _missing(found, reasons, heated, full)
+    _missing(found, reasons, why_not(study, plant, marched), heated, full)
+    batch = sampled(plant, times, marched.samples, end, ended)
+    found["accumulation"] = _accumulation(study, plant, batch, tolerance) if heated and study.reactions else nothing
+    if study.asks_failure:
+        columns, why = failure_figures(study, plant, batch, out[:, at.OUT_T_MAX], tolerance)
+        found.update(columns)
+        for reason, more in zip(reasons, why, strict=True):
+            reason.extend(more)
     found["status"] = [OUTCOMES[c].status for c in code]
     found["reason"] = [
         "; ".join([OUTCOMES[c].sentence.format(time=t, limit=TOO_HOT)] * int(c != DONE) + r)
@@ -120,13 +125,21 @@ def _respond(study: Study, plant: Charged, marched: Marched, times: Floats) -> d
     return found
 
 
-def _accumulation(study: Study, plant: Charged, marched: Marched, times: Floats, end: Floats, heated: bool) -> Floats:
-    """Return the largest accumulation up to the batch's end, (N,); NaN where heats are missing."""
-    if not heated or not study.reactions:
-        return np.full(plant.values.count, np.nan)
-    share = states.accumulation(study, plant, np.nan_to_num(marched.samples), times)
-    inside = (times <= end[:, None]) & ~np.isnan(marched.samples[:, :, 0])
-    return np.where(inside, share, -np.inf).max(axis=1)
+def _accumulation(study: Study, plant: Charged, batch: Batch, tolerance: float) -> Floats:
+    """Return the largest accumulation up to the batch's end, (N,): the highest sample, refined between its neighbours."""
+
+    def share(rows: np.ndarray, times: Floats, state: Floats) -> Floats:
+        return states.accumulation(study, plant, rows, np.nan_to_num(state, nan=300.0), times)
+
+    rows = np.arange(plant.values.count)
+    value = np.where(batch.inside, share(rows, batch.times, batch.states), -np.inf)
+    worst = value.argmax(axis=1)
+    highest = value[rows, worst]
+    inner = np.flatnonzero((worst > 0) & (worst < batch.inside.sum(axis=1) - 1) & np.isfinite(highest))
+    if inner.size:
+        times, state = refine(plant, batch, share, inner, worst[inner], tolerance)
+        highest[inner] = np.fmax(highest[inner], np.nanmax(np.where(np.isfinite(state[:, :, 0]), share(inner, times, state), -np.inf), axis=1))
+    return np.where(np.isfinite(highest), highest, np.nan)
 
 
 def _balance(plant: Charged, marched: Marched, ended: Floats, moles: Floats) -> Floats:
@@ -153,47 +166,15 @@ def _by_species(study: Study, plant: Charged, moles: Floats, found: dict[str, Fl
                     found[f"per_product_{s}"] = moles[:, index[s]] / moles[:, index[str(study.target.product)]]
 
 
-def _by_target(study: Study, plant: Charged, marched: Marched, end: Floats, moles: Floats, found: dict[str, Floats | list[str]]) -> None:
-    """Add conversion, times and productivities."""
-    out, values = marched.out, plant.values
-    turnaround = values.get("recipe.turnaround")
-    found["time_to_target_s"] = out[:, at.OUT_CROSSED]
-    crossed = np.isfinite(out[:, at.OUT_CROSSED])
-    ok = crossed if study.batch_to_target else np.ones(values.count, dtype=bool)
-    found["cycle_time_s"] = np.where(ok, end + turnaround, np.nan)
-    if study.target is None:
-        found["conversion"] = np.full(values.count, np.nan)
-        return
-    k = [s.name for s in study.species].index(study.target.species)
-    weights, nz = plant.program.structure.target, plant.program.structure.sources.shape[0]
-    brought = plant.brought.total()[:, k]
-    at_start = plant.starts[:, :nz] @ weights
-    fed = np.einsum("nf,nf->n", plant.brought.share(end), plant.brought.fed[:, :, k])
-    found["conversion"] = (plant.brought.charged[:, k] + fed - moles[:, k]) / brought
-    found["highest_conversion"] = (out[:, at.OUT_REACTED_MAX] - at_start) / brought
-    if study.target.product is None:
-        return
-    unit, mass = productivity_unit(study), _product_mass(study)
-    per = (mass or 1.0) / values.get("vessel.volume", plant.brought.volume + plant.brought.feed_volume.sum(axis=1))
-    product = plant.program.structure.product
-    p = [s.name for s in study.species].index(study.target.product)
-    formed = moles[:, p] - plant.brought.total()[:, p]
-    found[f"productivity_{unit}_per_m3_s"] = np.where(ok, per * formed / (end + turnaround), np.nan)
-    at_target = marched.at_target[:, :nz] @ product - plant.starts[:, :nz] @ product
-    when = np.maximum(out[:, at.OUT_CROSSED], plant.brought.last_feed())
-    found[f"at_target_{unit}_per_m3_s"] = per * at_target / (when + turnaround)
-    found["most_productive_time_s"] = out[:, at.OUT_BEST_TIME]
-    found[f"most_productive_{unit}_per_m3_s"] = per * out[:, at.OUT_BEST]
-    found["most_productive_conversion"] = (marched.at_best[:, :nz] @ weights - at_start) / brought
-
-
-def _missing(found: dict[str, Floats | list[str]], reasons: list[list[str]], heated: bool, full: bool) -> None:
+def _missing(found: dict[str, Floats | list[str]], reasons: list[list[str]], causes: np.ndarray, heated: bool, full: bool) -> None:
     """Write why a response has no value."""
-    never = np.isnan(np.asarray(found["time_to_target_s"], dtype=np.float64))
     highest = found.get("highest_conversion")
+    never = np.isnan(np.asarray(found["time_to_target_s"], dtype=np.float64))
     for n in np.flatnonzero(never):
-        best = f"; the highest conversion is {np.asarray(highest)[n]:.6g}" if highest is not None else ""
-        reasons[n].append(f"time_to_target: never reached{best}")
+        if highest is None:
+            reasons[n].append("time_to_target, conversion: the study has no target")
+        else:
+            reasons[n].append(f"time_to_target: never reached, {CAUSES[causes[n]]}; the highest conversion is {np.asarray(highest)[n]:.6g}")
     if not heated:
         for reason in reasons:
             reason.append("heat_release, accumulation: heats of reaction are not given")

@@ -10,14 +10,8 @@ REFERENCE = 298.15  # K; the common reference of the energy balance's check
 
 
 def amounts(plant: Charged, state: Floats, time: Floats) -> Floats:
-    """Return moles (N, I) or (N, K, I) of states (N, R) at times (N,), or (N, K, R) at (N, K)."""
-    structure = plant.program.structure
-    nz = structure.sources.shape[0]
-    share = plant.brought.share(time)
-    letters = "nf,nfi->ni" if time.ndim == 1 else "nfk,nfi->nki"
-    fed = np.einsum(letters, share, plant.brought.fed)
-    base = plant.brought.charged if plant.extents else np.zeros_like(plant.brought.charged)
-    return fed + (base if time.ndim == 1 else base[:, None, :]) + state[..., :nz] @ structure.amounts.T
+    """Return moles (N, I) of states (N, R) at times (N,)."""
+    return amounts_at(plant, np.arange(time.size), state[:, None, :], time[:, None])[:, 0, :]
 
 
 def enthalpy(plant: Charged, moles: Floats, T: Floats) -> Floats:
@@ -33,40 +27,72 @@ def reference_heats(study: Study, plant: Charged) -> Floats:
     return np.stack([-plant.values.get(f"reactions.{r.name}.heat.value") for r in study.reactions], axis=1)
 
 
-def complete_synthesis(study: Study, moles: Floats, given_off: Floats) -> Floats:
-    """Return the heat (J) that complete synthesis would still release from moles (..., I), heats (N, reactions) broadcast.
+def complete(study: Study, moles: Floats, given_off: Floats, purpose: str = "synthesis") -> Floats:
+    """Return the heat (J) that completion of all reactions of a purpose would still release; see `completed`."""
+    return completed(study, moles, given_off, purpose)[0]
 
-    Synthesis reactions in order of falling heat given off, each until a reactant is gone, repeated until none moves.
+
+def completed(study: Study, moles: Floats, given_off: Floats, purpose: str = "synthesis") -> tuple[Floats, Floats]:
+    """Return heat (J) and moles after completion, from moles (N, I) or (N, K, I) and heats given off (N, reactions), J/mol.
+
+    Reactions of the purpose in order of falling heat given off (per point), each until a reactant is gone, repeated until none moves;
+    reversible ones as irreversible.
     """
     names = {s.name: i for i, s in enumerate(study.species)}
-    synthesis = [j for j, r in enumerate(study.reactions) if r.purpose == "synthesis"]
-    order = sorted(synthesis, key=lambda j: -float(given_off[:, j].mean()))
-    left = np.maximum(moles, 0.0)
-    heat = np.zeros(moles.shape[:-1])
-    weights = given_off if moles.ndim == 2 else given_off[:, None, :]
-    scale = float(left.sum(axis=-1).max(initial=1e-300))
-    for _ in range(4 * len(synthesis) + 1):
-        moved = 0.0
-        for j in order:
-            nu = np.zeros(len(names))
-            for s, n in study.reactions[j].stoichiometry.items():
-                nu[names[s]] = n
-            used = np.flatnonzero(nu < 0.0)
+    chosen = [j for j, r in enumerate(study.reactions) if r.purpose == purpose]
+    left, heat = np.maximum(moles, 0.0), np.zeros(moles.shape[:-1])
+    if not chosen:
+        return heat, left
+    nu = np.zeros((len(study.reactions), len(names)))
+    for j, reaction in enumerate(study.reactions):
+        for s, n in reaction.stoichiometry.items():
+            nu[j, names[s]] = n
+    order = np.array(chosen)[np.argsort(-given_off[:, chosen], axis=1, kind="stable")]
+    for ranks in np.unique(order, axis=0):
+        here = (order == ranks).all(axis=1)
+        heat[here], left[here] = _in_order(ranks, nu, left[here], given_off[here])
+    return heat, left
+
+
+def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) -> tuple[Floats, Floats]:
+    """Run the reactions `ranks` one after another, each until a reactant is gone, until none moves; return heat and moles."""
+    heat = np.zeros(left.shape[:-1])
+    weights = given_off if left.ndim == 2 else given_off[:, None, :]
+    scale = 1e-12 * left.sum(axis=-1)
+    for _ in range(4 * ranks.size + 1):
+        moved = np.zeros(left.shape[:-1], dtype=bool)
+        for j in ranks:
+            used = np.flatnonzero(nu[j] < 0.0)
             if not used.size:
                 continue
-            extent = (left[..., used] / -nu[used]).min(axis=-1)
-            left = np.maximum(left + extent[..., None] * nu, 0.0)
+            extent = (left[..., used] / -nu[j, used]).min(axis=-1)
+            left = np.maximum(left + extent[..., None] * nu[j], 0.0)
             heat += extent * weights[..., j]
-            moved = max(moved, float(extent.max(initial=0.0)))
-        if moved <= 1e-12 * scale:
+            moved |= extent > scale
+        if not moved.any():
             break
-    return heat
+    return heat, left
 
 
-def accumulation(study: Study, plant: Charged, state: Floats, time: Floats) -> Floats:
-    """Return the heat still to come over the heat of the whole batch, (N, K); NaN where the whole is not positive."""
-    given_off = reference_heats(study, plant)
-    whole = complete_synthesis(study, plant.brought.total(), given_off)
-    left = complete_synthesis(study, amounts(plant, state, time), given_off)
+def accumulation(study: Study, plant: Charged, rows: np.ndarray, state: Floats, time: Floats) -> Floats:
+    """Return the heat still to come over the heat of the whole batch, (M, K), of points `rows` (M,); NaN where that is not positive."""
+    given_off = reference_heats(study, plant)[rows]
+    whole = complete(study, plant.brought.total()[rows], given_off)
+    left = complete(study, amounts_at(plant, rows, state, time), given_off)
     with np.errstate(divide="ignore", invalid="ignore"):
         return np.where(whole[:, None] > 0.0, left / whole[:, None], np.nan)
+
+
+def share_at(plant: Charged, rows: np.ndarray, time: Floats) -> Floats:
+    """Return which share of each feed is in at times (M, K) of points `rows`: (M, F, K)."""
+    start, end = plant.brought.start[rows][:, :, None], plant.brought.end[rows][:, :, None]
+    return np.clip((time[:, None, :] - start) / (end - start), 0.0, 1.0)
+
+
+def amounts_at(plant: Charged, rows: np.ndarray, state: Floats, time: Floats) -> Floats:
+    """Return moles (M, K, I) of states (M, K, R) at times (M, K) of points `rows` (M,)."""
+    structure = plant.program.structure
+    nz = structure.sources.shape[0]
+    fed = np.einsum("mfk,mfi->mki", share_at(plant, rows, time), plant.brought.fed[rows])
+    base = plant.brought.charged[rows][:, None, :] if plant.extents else 0.0
+    return fed + base + state[..., :nz] @ structure.amounts.T

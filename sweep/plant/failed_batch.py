@@ -1,0 +1,139 @@
+"""One batch and its cooling failures: MTSR and time to maximum rate against the time of failure, and the path after a failure."""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import pandas as pd
+
+from sweep.base.errors import SweepError
+from sweep.kernel import layout as at
+from sweep.kernel.engine import march
+from sweep.plant import adiabatic, states
+from sweep.plant.failure import march_moments
+from sweep.plant.onward import march_on
+from sweep.plant.recipe import Charged, charge_plant
+from sweep.plant.values import Floats, values_of
+from sweep.study.model import Study
+
+DRAWN = 101  # moments that draw well
+_PATH_TIMES = 241
+
+
+@dataclass(frozen=True)
+class FailurePath:
+    """What happens after a cooling failure with every reaction running: lines over time, and when temperatures are reached.
+
+    lines: time_after_failure_s, temperature_K, stage; reaches: (name, temperature K, seconds after the failure or None).
+    """
+
+    failure_time: float
+    lines: pd.DataFrame
+    reaches: tuple[tuple[str, float, float | None], ...]
+
+
+def _one(study: Study, point: Mapping[str, float] | None) -> Charged:
+    if not study.asks_failure:
+        raise SweepError("[failure] is not written in the study, and no limit asks for a failure figure")
+    return charge_plant(study, values_of(study, pd.DataFrame({name: [value] for name, value in (point or {}).items()}, index=[0])))
+
+
+def failure_times(study: Study, point: Mapping[str, float] | None = None, times: Sequence[float] | None = None) -> pd.DataFrame:
+    """Return temperature, MTSR, time to maximum rate and accumulation were cooling lost at times (s) of a batch; SI.
+
+    Times in any order; NaN beyond the batch's end. SweepError where the study asks for no failure.
+    """
+    plant = _one(study, point)
+    tolerance = float(study.values["accuracy.relative"])
+    end = _batch_end(plant, tolerance)
+    wanted = np.asarray(times, dtype=np.float64) if times is not None else _drawn(plant, end)
+    order = np.argsort(wanted, kind="stable")
+    ascending = wanted[order][None, :]
+    state = march(plant.program, plant.blocks, plant.starts, plant.constants, ascending, tolerance).samples
+    good = np.isfinite(state[0]).all(axis=1) & (ascending[0] <= end * (1.0 + 1e-12))
+    rows = np.zeros(int(good.sum()), dtype=int)
+    marched = march_moments(study, plant, rows, ascending[0][good], state[0][good], tolerance, all_tmr=True)
+    nz = plant.program.structure.sources.shape[0]
+    share = states.accumulation(study, plant, np.zeros(1, dtype=int), np.nan_to_num(state, nan=300.0), ascending)[0]
+    columns = {"time_s": ascending[0], "temperature_K": state[0, :, nz]}
+    for name, values in (
+        ("mtsr_K", np.where(marched.ok, marched.mtsr, np.nan)),
+        ("tmr_ad_s", np.where(marched.ok & np.isfinite(marched.tmr), marched.tmr, np.nan)),
+        ("tmr_ad_censored", marched.censored),
+    ):
+        columns[name] = np.full(wanted.size, np.nan)
+        columns[name][good] = values
+    columns["accumulation"] = np.where(good, share, np.nan)
+    table = pd.DataFrame(columns)
+    back = np.empty_like(order)
+    back[order] = np.arange(order.size)
+    return table.iloc[back].reset_index(drop=True)
+
+
+def _batch_end(plant: Charged, tolerance: float) -> float:
+    """Return when the batch ends (s)."""
+    end = float(plant.constants[0, at.END_FIXED])
+    if np.isfinite(end):
+        return end
+    out = march(plant.program, plant.blocks, plant.starts, plant.constants, None, tolerance).out[0]
+    return float(out[at.OUT_END_TIME] if np.isfinite(out[at.OUT_END_TIME]) else out[at.OUT_TIME])
+
+
+def _drawn(plant: Charged, end: float) -> Floats:
+    times = np.union1d(np.linspace(0.0, end, DRAWN), plant.boundaries[0])
+    return times[times <= end]
+
+
+def failure_path(study: Study, point: Mapping[str, float] | None, time: float, levels: Mapping[str, float]) -> FailurePath:
+    """Return the path after cooling is lost at `time` (s), all reactions running, and when each level (K) is reached."""
+    plant = _one(study, point)
+    tolerance = float(study.values["accuracy.relative"])
+    nz = plant.program.structure.sources.shape[0]
+    when = np.array([[min(time, _batch_end(plant, tolerance))]])
+    state = march(plant.program, plant.blocks, plant.starts, plant.constants, when, tolerance).samples[:, 0]
+    if not np.isfinite(state).all():
+        raise SweepError(f"the batch does not reach {time:g} s, where its cooling was to fail")
+    rows = np.zeros(1, dtype=int)
+    failed = adiabatic.fail(study, plant, rows, when[:, 0], state)
+    blocks = adiabatic.path_blocks(study, plant, failed, purpose=None)
+    horizon = float(study.values["failure.horizon"])
+    blocks[:, -1, at.T_END] = np.maximum(blocks[:, -1, at.T_START], 0.0) + horizon
+    fine = np.concatenate([[0.0], np.geomspace(1.0, horizon, 4001)])[None, :]
+    marched = march_on(plant, rows, blocks, state, tolerance, fine)
+    T = marched.samples[0, :, nz]
+    known = np.isfinite(T)
+    reaches = [(name, level, _first(fine[0][known], T[known], level)) for name, level in levels.items()]
+    fastest = float(marched.out[0, at.OUT_RATE_MAX_TIME])
+    if adiabatic.purposes(study, "decomposition"):
+        late = known & (fine[0] >= fastest)
+        rising = np.diff(T[known]).argmax() >= known.sum() - 2
+        level = float(T[late][0]) if late.any() else float(T[known][-1])
+        reaches.append(("maximum rate", level, None if rising and marched.out[0, at.OUT_STATUS] == 0 else fastest))
+    return FailurePath(float(when[0, 0]), _lines(study, plant, failed, fine[0], marched.samples[0], fastest), tuple(reaches))
+
+
+def _first(times: Floats, T: Floats, level: float) -> float | None:
+    """Return when a level is first reached, by interpolation in a fine grid; None where it is not."""
+    above = np.flatnonzero(T >= level)
+    if not above.size:
+        return None
+    k = int(above[0])
+    if k == 0:
+        return 0.0
+    share = (level - T[k - 1]) / (T[k] - T[k - 1])
+    return float(times[k - 1] + share * (times[k] - times[k - 1]))
+
+
+def _lines(study: Study, plant: Charged, failed: adiabatic.Failed, times: Floats, state: Floats, fastest: float) -> pd.DataFrame:
+    """Return some lines of the path that draw well, with which kind of reaction gives off more heat."""
+    nz = plant.program.structure.sources.shape[0]
+    T = state[:, nz]
+    known = np.flatnonzero(np.isfinite(T))
+    spread = np.interp(np.linspace(0.0, 1.0, _PATH_TIMES), np.linspace(0.0, 1.0, known.size), known).astype(int)
+    rise = np.searchsorted(T[known], np.linspace(T[known[0]], T[known[-1]], _PATH_TIMES))
+    picked = np.union1d(spread, known[np.minimum(rise, known.size - 1)])
+    block = np.repeat(failed.block, picked.size, axis=0)
+    now = adiabatic.flow_of(plant, np.zeros(picked.size, dtype=int), block, state[picked])
+    share = [now.heat[:, adiabatic.purposes(study, p)].sum(axis=1) for p in ("synthesis", "decomposition")]
+    stage = np.where(share[0] >= share[1], "synthesis", "decomposition")
+    return pd.DataFrame({"time_after_failure_s": times[picked], "temperature_K": T[picked], "stage": stage})

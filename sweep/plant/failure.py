@@ -1,0 +1,238 @@
+"""Cooling failure over a whole batch: MTSR and time to maximum rate at their worst moments, T_D24, rises, criticality class.
+
+Estimates (`moments.py`) tell which moments are marched; all figures come from marches (`adiabatic.py`). N points.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from sweep.plant import adiabatic, moments, states
+from sweep.plant.criticality import classify
+from sweep.plant.moments import Batch
+from sweep.plant.onward import states_at
+from sweep.plant.rates import closed_form_tmr
+from sweep.plant.recipe import Charged
+from sweep.plant.td24 import find_td24
+from sweep.plant.values import Floats
+from sweep.study.model import Study
+
+WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
+WORTH = 3.0  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
+ROUNDS = 6  # where the marches contradict the estimates: rounds of marches, each in a third of the bracket before
+MTSR_TOLERANCE = 0.01  # K; a coarse moment hotter than the refined ones by more contradicts the estimate
+TMR_TOLERANCE = 0.002  # relative, likewise
+
+
+@dataclass(frozen=True)
+class Moments:
+    """M failures that were marched: rows (M,), time (M,) s, mtsr (M,) K, tmr (M,) s (infinite where not marched), censored (M,),
+    urgency (M,): minus ln of the closed form; ok (M,), mixture block (M, block) and state (M, R) where MTSR is reached."""
+
+    rows: np.ndarray
+    time: Floats
+    mtsr: Floats
+    tmr: Floats
+    censored: np.ndarray
+    urgency: Floats
+    ok: np.ndarray
+    block: Floats
+    state: Floats
+
+    def joined(self, other: "Moments") -> "Moments":
+        """Return both together."""
+        return Moments(*(np.concatenate([getattr(self, name), getattr(other, name)]) for name in self.__dataclass_fields__))
+
+
+def march_moments(study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, all_tmr: bool = False) -> Moments:
+    """March failures at times (M,) from states (M, R): the synthesis, then the decomposition where it may be among the worst."""
+    failed = adiabatic.fail(study, plant, rows, time, state)
+    synthesis = adiabatic.run_synthesis(study, plant, failed, tolerance)
+    block = adiabatic.mixture_block(study, plant, failed)
+    tmr, censored = np.full(rows.size, np.inf), np.zeros(rows.size, dtype=bool)
+    ok = synthesis.ok.copy()
+    decomposes, urgency = bool(adiabatic.purposes(study, "decomposition")), np.full(rows.size, -np.inf)
+    if decomposes and rows.size:
+        urgency = np.where(ok, _urgency(study, plant, rows, block, synthesis.state), -np.inf)
+    worst = np.full(plant.values.count, -np.inf)
+    np.maximum.at(worst, rows, urgency)
+    chosen = ok & decomposes & (all_tmr | ~(urgency < worst[rows] - WORTH))
+    if chosen.any():
+        horizon = plant.values.get("failure.horizon")[rows[chosen]]
+        run = adiabatic.run_decomposition(study, plant, rows[chosen], block[chosen], synthesis.state[chosen], horizon, tolerance)
+        tmr[chosen], censored[chosen], ok[chosen] = run.tmr, run.censored, run.ok
+    return Moments(rows, time, synthesis.temperature, tmr, censored, urgency, ok, block, synthesis.state)
+
+
+def _urgency(study: Study, plant: Charged, rows: np.ndarray, block: Floats, state: Floats) -> Floats:
+    """Return minus the logarithm of the closed form of the time to maximum rate, (M,)."""
+    nz = plant.program.structure.sources.shape[0]
+    now = adiabatic.flow_of(plant, rows, block, state)
+    return -np.log(closed_form_tmr(now, adiabatic.purposes(study, "decomposition"), state[:, nz]))
+
+
+def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) -> Moments:
+    """Return the failures marched in search of the worst ones, several for every point."""
+    count = batch.times.shape[0]
+    rows = np.arange(count)
+    found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
+    tops = [e.argmax(axis=1) for e in found]
+    pairs = _coarse(batch, found, tops)
+    marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], tolerance)
+    parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, top, tolerance) for which, top in enumerate(tops)]
+    time, state = np.concatenate([p[0] for p in parts], axis=1), np.concatenate([p[1] for p in parts], axis=1)
+    every = np.repeat(rows, time.shape[1])
+    _, first = np.unique(np.stack([every, time.ravel()]), axis=1, return_index=True)
+    usable = first[np.isfinite(state.reshape(-1, state.shape[2])[first]).all(axis=1)]
+    refined = march_moments(study, plant, every[usable], time.ravel()[usable], state.reshape(-1, state.shape[2])[usable], tolerance)
+    both = marched.joined(refined)
+    for which in range(len(found)):
+        both = _contradicted(study, plant, batch, both, marched, refined, which, tolerance)
+    return both
+
+
+def _estimate(study: Study, plant: Charged, which: int) -> moments.Estimate:
+    return lambda rows, times, state: moments.estimates(study, plant, rows, times, state)[which]
+
+
+def _coarse(batch: Batch, found: list[Floats], tops: list[np.ndarray]) -> np.ndarray:
+    """Return (row, sample) pairs to march, without repeats: the top of each estimate in each stretch, and the tops' neighbours."""
+    count = batch.times.shape[0]
+    rows, last = np.arange(count), np.maximum(batch.inside.sum(axis=1) - 1, 0)
+    end = batch.times[rows, last]
+    share = batch.times / np.where(end > 0.0, end, 1.0)[:, None]
+    stretch = np.minimum((share * WINDOWS).astype(int), WINDOWS - 1)
+    columns = [np.where(stretch == part, e, -np.inf).argmax(axis=1) for e in found for part in range(WINDOWS)]
+    columns += [np.clip(top + d, 0, last) for top in tops for d in (-1, 1)]
+    pairs = np.unique(np.stack([np.tile(rows, len(columns)), np.concatenate(columns)], axis=1), axis=0)
+    return pairs[batch.inside[tuple(pairs.T)]]
+
+
+def _score(marched: Moments, which: int) -> Floats:
+    """Return what is highest at the worst moment: MTSR (K), or minus ln TMRad; -inf where there is none."""
+    if which == 0:
+        return np.where(marched.ok, marched.mtsr, -np.inf)
+    with np.errstate(divide="ignore"):
+        return np.where(marched.ok & ~marched.censored, -np.log(np.maximum(marched.tmr, 1e-3)), -np.inf)
+
+
+def _best(marched: Moments, score: Floats, count: int) -> tuple[np.ndarray, Floats]:
+    """Return for each point the place of its highest score (-1: none) and that score."""
+    order = np.lexsort((-marched.time, score, marched.rows))
+    place, best = np.full(count, -1), np.full(count, -np.inf)
+    place[marched.rows[order]] = order
+    known = place >= 0
+    best[known] = score[place[known]]
+    return np.where(np.isfinite(best), place, -1), best
+
+
+def _contradicted(
+    study: Study, plant: Charged, batch: Batch, both: Moments, coarse: Moments, refined: Moments, which: int, tolerance: float
+) -> Moments:
+    """Search by marches alone where a coarse moment turned out worse than the refined ones."""
+    count = plant.values.count
+    allowed = MTSR_TOLERANCE if which == 0 else TMR_TOLERANCE
+    here = _best(coarse, _score(coarse, which), count)[1]
+    there = _best(refined, _score(refined, which), count)[1]
+    rows = np.flatnonzero(here > there + allowed)
+    for _ in range(ROUNDS if rows.size else 0):
+        place, _ = _best(both, _score(both, which), count)
+        middle = both.time[place[rows]]
+        low, high = _neighbours(both, rows, middle)
+        thirds = np.array([1.0, 2.0]) / 3.0
+        left, right = low[:, None] + thirds * (middle - low)[:, None], middle[:, None] + thirds * (high - middle)[:, None]
+        time = np.concatenate([left, right], axis=1)
+        sample = np.maximum((batch.times[rows] <= time[:, :1]).sum(axis=1) - 1, 0)
+        begin = batch.times[rows, sample]
+        state = states_at(plant, rows, begin, np.nan_to_num(batch.states[rows, sample], nan=300.0), time, tolerance)
+        every, flat = np.repeat(rows, time.shape[1]), state.reshape(-1, state.shape[2])
+        good = np.isfinite(flat).all(axis=1)
+        both = both.joined(march_moments(study, plant, every[good], time.ravel()[good], flat[good], tolerance, all_tmr=which == 1))
+    return both
+
+
+def _neighbours(marched: Moments, rows: np.ndarray, middle: Floats) -> tuple[Floats, Floats]:
+    """Return the marched times just below and above `middle` of each of `rows`; itself where there is none."""
+    low, high = middle.copy(), middle.copy()
+    place = np.full(int(marched.rows.max(initial=0)) + 1, -1)
+    place[rows] = np.arange(rows.size)
+    mine = place[marched.rows]
+    times, mine = marched.time[mine >= 0], mine[mine >= 0]
+    under, over = times < middle[mine], times > middle[mine]
+    low[:], high[:] = -np.inf, np.inf
+    np.maximum.at(low, mine[under], times[under])
+    np.minimum.at(high, mine[over], times[over])
+    return np.where(np.isfinite(low), low, middle), np.where(np.isfinite(high), high, middle)
+
+
+def failure_figures(study: Study, plant: Charged, batch: Batch, process: Floats, tolerance: float) -> tuple[dict[str, Floats], list[list[str]]]:
+    """Return the failure columns, each (N,), and per point why one has no value. process: highest normal temperature (K)."""
+    count = plant.values.count
+    marched = worst_moments(study, plant, batch, tolerance)
+    hot, mtsr = _best(marched, _score(marched, 0), count)
+    known = hot >= 0
+    found = {"mtsr_K": np.where(known, mtsr, np.nan), "mtsr_time_s": np.where(known, marched.time[hot], np.nan)}
+    reasons: list[list[str]] = [[] for _ in range(count)]
+    for n in np.flatnonzero(~known):
+        reasons[n].append("mtsr, tmr_ad, td24, criticality_class: no march after a cooling failure came to an end")
+    _urgent(study, plant, marched, known, found, tolerance)
+    _rises(study, plant, marched, hot, known, found)
+    mtt = plant.values.get("failure.mtt", np.nan)
+    td24 = plant.values.get("failure.td24") if plant.values.has("failure.td24") else None
+    if td24 is not None:
+        found["td24_K"], found["td24_censored"] = np.where(known, td24, np.nan), np.zeros(count)
+    found["mtt_K"] = np.array(mtt)
+    found["criticality_class"], why = classify(process, found["mtsr_K"], mtt, found["td24_K"])
+    for n, text in enumerate(why):
+        if text:
+            reasons[n].append(f"criticality_class: {text}")
+    if not plant.values.has("failure.mtt"):
+        for reason in reasons:
+            reason.append("mtt: not given in [failure]")
+    if not adiabatic.purposes(study, "decomposition"):
+        for reason in reasons:
+            reason.append("tmr_ad, td24: not assessed, no reaction has the purpose decomposition")
+    return found, reasons
+
+
+def _urgent(study: Study, plant: Charged, marched: Moments, known: np.ndarray, found: dict[str, Floats], tolerance: float) -> None:
+    """Add the least time to maximum rate, its closed form, and T_D24 of the same mixture."""
+    count = plant.values.count
+    names = ("tmr_ad_s", "tmr_ad_censored", "tmr_ad_time_s", "tmr_ad_closed_form_s", "td24_K", "td24_censored")
+    found.update({name: np.full(count, np.nan) for name in names})
+    decomposes = adiabatic.purposes(study, "decomposition")
+    if not decomposes or not known.any():
+        return
+    place = _most_urgent(marched, count)
+    have = np.flatnonzero(known & (place >= 0))
+    at_worst = place[have]
+    found["tmr_ad_s"][have] = marched.tmr[at_worst]
+    found["tmr_ad_censored"][have] = marched.censored[at_worst]
+    found["tmr_ad_time_s"][have] = marched.time[at_worst]
+    block, state = marched.block[at_worst], marched.state[at_worst]
+    nz = plant.program.structure.sources.shape[0]
+    found["tmr_ad_closed_form_s"][have] = closed_form_tmr(adiabatic.flow_of(plant, have, block, state), decomposes, state[:, nz])
+    if not plant.values.has("failure.td24"):
+        found["td24_K"][have], found["td24_censored"][have] = find_td24(study, plant, have, block, state, tolerance)
+    rise = adiabatic.complete_rise(study, plant, have, block, state, "decomposition")
+    found["adiabatic_rise_decomposition_K"] = np.full(count, np.nan)
+    found["adiabatic_rise_decomposition_K"][have] = rise
+
+
+def _most_urgent(marched: Moments, count: int) -> np.ndarray:
+    """Return for each point the place of the shortest time to maximum rate (-1: none); among equal bounds the most urgent one."""
+    usable = np.flatnonzero(marched.ok & np.isfinite(marched.tmr))
+    order = usable[np.lexsort((marched.urgency[usable], -marched.tmr[usable], marched.rows[usable]))]
+    place = np.full(count, -1)
+    place[marched.rows[order]] = order
+    return place
+
+
+def _rises(study: Study, plant: Charged, marched: Moments, hot: np.ndarray, known: np.ndarray, found: dict[str, Floats]) -> None:
+    """Add the adiabatic rises of the whole synthesis, and of the decomposition of what the worst failure leaves."""
+    total = plant.brought.total()
+    given_off = states.reference_heats(study, plant)
+    T = plant.values.get("recipe.charge.temperature")
+    capacity = (total * sum(plant.cp[:, :, k] * T[:, None] ** k for k in range(4))).sum(axis=1)
+    found["adiabatic_rise_synthesis_K"] = states.complete(study, total, given_off) / capacity
+    found.setdefault("adiabatic_rise_decomposition_K", np.full(plant.values.count, np.nan))

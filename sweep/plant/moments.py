@@ -1,0 +1,124 @@
+"""Where in a batch a cooling failure is worst: estimates from stoichiometry and closed forms that tell the marches where to look.
+
+The estimates decide only which moments are marched; every figure that is reported comes from a march (`failure.py`).
+N points, K times, R rows of state, I species.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from sweep.kernel import layout as at
+from sweep.plant import rates, states
+from sweep.plant.adiabatic import feeding_time, purposes
+from sweep.plant.chemistry import R
+from sweep.plant.onward import states_at
+from sweep.plant.recipe import Charged
+from sweep.plant.values import Floats
+from sweep.study.model import Study
+
+FINE = 33  # times looked at inside a bracket
+
+
+Estimate = Callable[[np.ndarray, Floats, Floats], Floats]  # points (M,), times (M, K), states (M, K, R) -> (M, K)
+
+
+@dataclass(frozen=True)
+class Batch:
+    """A batch as sampled: times (N, K) s ascending, states (N, K, R), inside (N, K): up to the batch's end and marched."""
+
+    times: Floats
+    states: Floats
+    inside: np.ndarray
+
+
+def sampled(plant: Charged, times: Floats, samples: Floats, end: Floats, at_end: Floats) -> Batch:
+    """Return the samples with the batch's end among them."""
+    times = np.concatenate([times, end[:, None]], axis=1)
+    whole = np.concatenate([samples, at_end[:, None, :]], axis=1)
+    order = np.argsort(times, axis=1, kind="stable")
+    times = np.take_along_axis(times, order, axis=1)
+    whole = np.take_along_axis(whole, order[:, :, None], axis=1)
+    return Batch(times, whole, (times <= end[:, None]) & np.isfinite(whole).all(axis=2))
+
+
+def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> tuple[Floats, Floats, Floats]:
+    """Return the temperature (N, K) that complete synthesis would reach after a failure, the moles left and the volume (m3)."""
+    nz, values = plant.program.structure.sources.shape[0], plant.values
+    state = np.nan_to_num(state, nan=300.0)
+    moles, T = states.amounts_at(plant, rows, state, times), state[:, :, nz]
+    delay = np.stack([feeding_time(study, plant, rows, t) for t in times.T], axis=1)
+    coming = states.share_at(plant, rows, times + delay) - states.share_at(plant, rows, times)
+    moles = moles + np.einsum("nfk,nfi->nki", coming, plant.brought.fed[rows])
+    heat, left = states.completed(study, moles, states.reference_heats(study, plant)[rows])
+    wall = values.get("vessel.heat_capacity")[rows] * float(study.failure is not None and study.failure.wall)
+    cp = plant.cp[rows]
+    per_mole = sum(cp[:, None, :, k] * T[:, :, None] ** k for k in range(4))
+    capacity = (moles * per_mole).sum(axis=2) + wall[:, None]
+    volume = plant.brought.volume[rows, None] + np.einsum("nfk,nf->nk", states.share_at(plant, rows, times + delay), plant.brought.feed_volume[rows])
+    return T + heat / capacity, left, volume
+
+
+def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles: Floats, volume: Floats) -> Floats:
+    """Return minus the logarithm of the closed form of the time to maximum rate (N, K), up to a constant per point."""
+    block = plant.blocks[rows, 0]
+    terms, _, _ = rates.parts_of_block(plant, block)
+    delta = plant.constants[rows, at.DELTA][:, None]
+    total = np.zeros_like(T)
+    k = 0
+    chosen = set(purposes(study, "decomposition"))
+    given_off = states.reference_heats(study, plant)[rows]
+    for j, reaction in enumerate(plant.program.structure.reactions):
+        if j in chosen:
+            energy = -terms[:, k, 1][:, None]
+            rate = np.exp(np.clip(terms[:, k, 0][:, None] - energy / T, -700.0, 700.0)) * volume
+            for factor in reaction[0].factors:
+                x = moles[:, :, factor.species] / volume
+                rate = rate * np.maximum(x, 0.0) ** factor.power * (np.abs(x) + delta) ** factor.extra
+            total += np.maximum(rate * given_off[:, j][:, None], 0.0) * energy * R / T**2
+        k += len(reaction)
+    capacity = (moles * plant.cp[rows][:, None, :, 0]).sum(axis=2)
+    with np.errstate(divide="ignore"):
+        return np.log(total / np.where(capacity > 0.0, capacity, 1.0))
+
+
+def estimates(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> list[Floats]:
+    """Return what is to be looked at, highest where a failure is worst, each (N, K): MTSR and, with a decomposition, its urgency."""
+    T, moles, volume = synthesis_rise(study, plant, rows, times, state)
+    found = [T]
+    if purposes(study, "decomposition"):
+        found.append(log_urgency(study, plant, rows, T, moles, volume))
+    return found
+
+
+def refine(plant: Charged, batch: Batch, of: Estimate, rows: np.ndarray, worst: np.ndarray, tolerance: float) -> tuple[Floats, Floats]:
+    """Return three times (M, 3) near the highest estimate around sample `worst` (M,) of points `rows` (M,), and the states (M, 3, R)."""
+    last = np.maximum(batch.inside[rows].sum(axis=1) - 1, 0)
+    low, high = np.maximum(worst - 1, 0), np.minimum(worst + 1, last)
+    start, stop, peak = (batch.times[rows, k] for k in (low, high, worst))
+    begin = np.nan_to_num(batch.states[rows, low], nan=300.0)
+    fine = start[:, None] + np.linspace(0.0, 1.0, FINE) * (stop - start)[:, None]
+    fine = np.sort(np.concatenate([fine, peak[:, None]], axis=1), axis=1)
+    state = states_at(plant, rows, start, begin, fine, tolerance)
+    value = np.where(np.isfinite(state[:, :, 0]), of(rows, fine, state), -np.inf)
+    times = _candidates(fine, value)
+    return times, states_at(plant, rows, start, begin, times, tolerance)
+
+
+def _candidates(t: Floats, value: Floats) -> Floats:
+    """Return per row, ascending: the highest sample, the top of the parabola through it, and where the lines beside it meet."""
+    rows, top = np.arange(t.shape[0]), value.argmax(axis=1)
+    last = t.shape[1] - 1
+    k = np.clip(top, 2, last - 2)
+    a, b, c = (t[rows, k + d] for d in (-1, 0, 1))
+    fa, fb, fc = (value[rows, k + d] for d in (-1, 0, 1))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        bend = (b - a) * (fb - fc) - (b - c) * (fb - fa)
+        vertex = b - 0.5 * ((b - a) ** 2 * (fb - fc) - (b - c) ** 2 * (fb - fa)) / bend
+        rising = (value[rows, k - 1] - value[rows, k - 2]) / (t[rows, k - 1] - t[rows, k - 2])
+        falling = (value[rows, k + 2] - value[rows, k + 1]) / (t[rows, k + 2] - t[rows, k + 1])
+        meet = (fc - fa + rising * a - falling * c) / (rising - falling)
+    best = t[rows, top]
+    found = [best] + [np.where(np.isfinite(x) & (x >= a) & (x <= c), x, best) for x in (vertex, meet)]
+    return np.sort(np.stack(found, axis=1), axis=1)
