@@ -14,7 +14,7 @@ _HOME = {
     "read_study": "sweep.study",
     "simulate": "sweep.runner",
     "profile": "sweep.plant",
-    "run": "sweep.workflow",
+    "run": "sweep.workflow.run",
 }
 
 

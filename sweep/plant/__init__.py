@@ -1,10 +1,13 @@
 """The physics as numbers: a study and its points to arrays, and what a march left to responses."""
 
+from sweep.plant.criticality import class_sentence
 from sweep.plant.failed_batch import FailurePath, failure_path, failure_times
 from sweep.plant.limits import LimitRow, holds, limits, margins
-from sweep.plant.profile import profile
+from sweep.plant.profile import batch_longest, productivity_of, profile
 from sweep.plant.responses import Response, evaluate, responses
+from sweep.plant.understood import Understood, understood
 
 __all__ = [
-    "FailurePath", "LimitRow", "Response", "evaluate", "failure_path", "failure_times", "holds", "limits", "margins", "profile", "responses",
+    "FailurePath", "LimitRow", "Response", "Understood", "batch_longest", "class_sentence", "evaluate", "failure_path", "failure_times",
+    "holds", "limits", "margins", "productivity_of", "profile", "responses", "understood",
 ]  # fmt: skip

@@ -34,6 +34,14 @@ def classify(process: Floats, mtsr: Floats, mtt: Floats, td24: Floats) -> tuple[
     return np.where(outside | missing, np.nan, found), reasons
 
 
+def class_sentence(number: int | None, reason: str) -> str:
+    """Return what a class means, or why there is none, out of a point's reason."""
+    if number is not None:
+        return CLASSES[int(number)]
+    named = [part for part in reason.split("; ") if part.startswith("criticality_class: ")]
+    return named[0].removeprefix("criticality_class: ") if named else "not assessed"
+
+
 def _why(process: float, mtsr: float, mtt: float, td24: float) -> str:
     """Return why a class cannot be given, or nothing."""
     names = (("MTSR", mtsr), ("MTT", mtt), ("T_D24", td24), ("the process temperature", process))

@@ -9,7 +9,7 @@ import pandas as pd
 from sweep.base.errors import SweepError
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
-from sweep.plant import adiabatic, states
+from sweep.plant import adiabatic, rates, states
 from sweep.plant.failure import march_moments
 from sweep.plant.onward import march_on
 from sweep.plant.recipe import Charged, charge_plant
@@ -104,12 +104,34 @@ def failure_path(study: Study, point: Mapping[str, float] | None, time: float, l
     known = np.isfinite(T)
     reaches = [(name, level, _first(fine[0][known], T[known], level)) for name, level in levels.items()]
     fastest = float(marched.out[0, at.OUT_RATE_MAX_TIME])
-    if adiabatic.purposes(study, "decomposition"):
-        late = known & (fine[0] >= fastest)
-        rising = np.diff(T[known]).argmax() >= known.sum() - 2
-        level = float(T[late][0]) if late.any() else float(T[known][-1])
-        reaches.append(("maximum rate", level, None if rising and marched.out[0, at.OUT_STATUS] == 0 else fastest))
-    return FailurePath(float(when[0, 0]), _lines(study, plant, failed, fine[0], marched.samples[0], fastest), tuple(reaches))
+    now = _flow_along(plant, failed, marched.samples[0])
+    stage = _stages(study, now, known)
+    decomposes = adiabatic.purposes(study, "decomposition")
+    if decomposes:
+        reaches.append(_fastest(fine[0], T, np.where(known, now.heat[:, decomposes].sum(axis=1) / now.capacity, -np.inf)))
+    return FailurePath(float(when[0, 0]), _lines(fine[0], T, stage), tuple(reaches))
+
+
+def _flow_along(plant: Charged, failed: adiabatic.Failed, state: Floats) -> rates.Flow:
+    """Return rates and heats along a path, feeds over."""
+    count = state.shape[0]
+    block = np.repeat(failed.block, count, axis=0)
+    return adiabatic.flow_of(plant, np.zeros(count, dtype=int), block, np.nan_to_num(state, nan=300.0))
+
+
+def _stages(study: Study, now: rates.Flow, known: np.ndarray) -> np.ndarray:
+    """Return which kind of reaction gives off more heat at each time."""
+    share = [now.heat[:, adiabatic.purposes(study, p)].sum(axis=1) for p in ("synthesis", "decomposition")]
+    return np.where(known & (share[0] < share[1]), "decomposition", "synthesis")
+
+
+def _fastest(times: Floats, T: Floats, rate: Floats) -> tuple[str, float, float | None]:
+    """Return when and where the decomposition heats fastest; no time where it is still speeding up at the end."""
+    k = int(rate.argmax())
+    last = int(np.flatnonzero(np.isfinite(T))[-1])
+    if rate[k] <= 0.0 or k >= last:
+        return "maximum rate", np.nan, None
+    return "maximum rate", float(T[k]), float(times[k])
 
 
 def _first(times: Floats, T: Floats, level: float) -> float | None:
@@ -124,16 +146,10 @@ def _first(times: Floats, T: Floats, level: float) -> float | None:
     return float(times[k - 1] + share * (times[k] - times[k - 1]))
 
 
-def _lines(study: Study, plant: Charged, failed: adiabatic.Failed, times: Floats, state: Floats, fastest: float) -> pd.DataFrame:
-    """Return some lines of the path that draw well, with which kind of reaction gives off more heat."""
-    nz = plant.program.structure.sources.shape[0]
-    T = state[:, nz]
+def _lines(times: Floats, T: Floats, stage: np.ndarray) -> pd.DataFrame:
+    """Return some lines of the path that draw well: spread over time and over temperature."""
     known = np.flatnonzero(np.isfinite(T))
     spread = np.interp(np.linspace(0.0, 1.0, _PATH_TIMES), np.linspace(0.0, 1.0, known.size), known).astype(int)
     rise = np.searchsorted(T[known], np.linspace(T[known[0]], T[known[-1]], _PATH_TIMES))
     picked = np.union1d(spread, known[np.minimum(rise, known.size - 1)])
-    block = np.repeat(failed.block, picked.size, axis=0)
-    now = adiabatic.flow_of(plant, np.zeros(picked.size, dtype=int), block, state[picked])
-    share = [now.heat[:, adiabatic.purposes(study, p)].sum(axis=1) for p in ("synthesis", "decomposition")]
-    stage = np.where(share[0] >= share[1], "synthesis", "decomposition")
-    return pd.DataFrame({"time_after_failure_s": times[picked], "temperature_K": T[picked], "stage": stage})
+    return pd.DataFrame({"time_after_failure_s": times[picked], "temperature_K": T[picked], "stage": stage[picked]})

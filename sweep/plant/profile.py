@@ -10,6 +10,7 @@ from sweep.kernel.engine import march
 from sweep.plant import rates, states
 from sweep.plant.onward import segment_at
 from sweep.plant.recipe import Charged, charge_plant, has_heat_capacities
+from sweep.plant.target import product_mass, productivity_unit, vessel_volume
 from sweep.plant.values import Floats, values_of
 from sweep.study.model import Study
 
@@ -30,6 +31,24 @@ def profile(study: Study, point: Mapping[str, float] | None = None, times: Seque
     back = np.empty_like(order)
     back[order] = np.arange(order.size)
     return table.iloc[back].reset_index(drop=True)
+
+
+def batch_longest(study: Study, point: Mapping[str, float]) -> tuple[float, float]:
+    """Return when the last feed ends and when the march ends (s): between them a batch may end."""
+    plant = charge_plant(study, values_of(study, pd.DataFrame({name: [value] for name, value in point.items()}, index=[0])))
+    return float(plant.brought.last_feed()[0]), float(plant.constants[0, at.T_FINAL])
+
+
+def productivity_of(study: Study, point: Mapping[str, float], table: pd.DataFrame) -> tuple[str, Floats]:
+    """Return "kg" or "mol" and the productivity (per m3 and s) were the batch ended at each line of a profile; "" without a product."""
+    if study.target is None or study.target.product is None:
+        return "", np.zeros(0)
+    values = values_of(study, pd.DataFrame({name: [value] for name, value in point.items()}, index=[0]))
+    plant = charge_plant(study, values)
+    product = [s.name for s in study.species].index(study.target.product)
+    formed = table[f"n_{study.target.product}_mol"].to_numpy() - plant.brought.total()[0, product]
+    per = (product_mass(study) or 1.0) / vessel_volume(plant)[0]
+    return productivity_unit(study), per * formed / (table["time_s"].to_numpy() + values.get("recipe.turnaround")[0])
 
 
 def _lines(study: Study, plant: Charged, times: Floats, state: Floats) -> dict[str, Floats]:

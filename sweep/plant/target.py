@@ -26,6 +26,11 @@ def productivity_unit(study: Study) -> str:
     return "mol" if product_mass(study) is None else "kg"
 
 
+def vessel_volume(plant: Charged) -> Floats:
+    """Return the vessel's volume (m3), (N,); the whole fill where no vessel is written."""
+    return plant.values.get("vessel.volume", plant.brought.volume + plant.brought.feed_volume.sum(axis=1))
+
+
 def target_columns(study: Study, plant: Charged, marched: Marched, end: Floats, moles: Floats) -> dict[str, Floats]:
     """Return conversion, times and productivities, each (N,); end (N,) s of the batch, moles (N, I) then."""
     out, values = marched.out, plant.values
@@ -41,6 +46,9 @@ def target_columns(study: Study, plant: Charged, marched: Marched, end: Floats, 
     at_start = plant.starts[:, :nz] @ weights
     fed = np.einsum("nf,nf->n", plant.brought.share(end), plant.brought.fed[:, :, k])
     found["conversion"] = (plant.brought.charged[:, k] + fed - moles[:, k]) / brought
+    if study.batch_to_target:  # the batch ended where the target was reached: what is left of the gap is rounding
+        wanted = values.get("target.conversion")
+        found["conversion"] = np.where(crossed & (np.abs(found["conversion"] - wanted) < 1e-9), wanted, found["conversion"])
     found["highest_conversion"] = (out[:, at.OUT_REACTED_MAX] - at_start) / brought
     if study.target.product is not None:
         found.update(_productive(study, plant, marched, end, moles, ok))
@@ -52,7 +60,7 @@ def _productive(study: Study, plant: Charged, marched: Marched, end: Floats, mol
     """Return productivities: as written, at the target, and at the most productive time."""
     out, values, nz = marched.out, plant.values, plant.program.structure.sources.shape[0]
     unit, product, turnaround = productivity_unit(study), plant.program.structure.product, values.get("recipe.turnaround")
-    per = (product_mass(study) or 1.0) / values.get("vessel.volume", plant.brought.volume + plant.brought.feed_volume.sum(axis=1))
+    per = (product_mass(study) or 1.0) / vessel_volume(plant)
     assert study.target is not None
     p = [s.name for s in study.species].index(str(study.target.product))
     formed = moles[:, p] - plant.brought.total()[:, p]

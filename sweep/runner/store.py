@@ -76,14 +76,15 @@ class Store:
     def _clean(self) -> None:
         """Remove what an interrupted run left half-written."""
         for path in self.folder.rglob(".*"):
-            if path.is_file() and path.name != _Lock.NAME and ".parquet" in path.name:
+            if path.is_file() and path.name != _Lock.NAME:
                 path.unlink(missing_ok=True)
 
     def missing(self) -> list[int]:
         """Return the first plan index of each file that is not there whole."""
-        return [start for start in range(0, self.plan.size, ROWS) if not self._whole(_name(start))]
+        return [start for start in range(0, self.plan.size, ROWS) if not self.whole(_name(start))]
 
-    def _whole(self, name: str) -> bool:
+    def whole(self, name: str) -> bool:
+        """Tell whether a file of the results is there as its digest says."""
         path = self.folder / name
         known = self.manifest["files"].get(name)
         return known is not None and path.is_file() and digest(path.read_bytes()) == known

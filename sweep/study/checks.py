@@ -3,12 +3,10 @@
 from collections.abc import Mapping
 from itertools import product
 
-from sweep.study.model import Charge, Feed, Limit, Reaction, Species, Target, Variable
-from sweep.study.question import FAILURE
+from sweep.study.model import FAILURE, Charge, Feed, Limit, Reaction, Species, Target, Variable
 from sweep.study.reader import Reader
 
 _MOST_CORNERS = 10  # variables; beyond, only the set-point is looked at
-
 
 def check_thermal(reader: Reader, species: tuple[Species, ...], reactions: tuple[Reaction, ...], isothermal: bool, why: str) -> None:
     """Fault heats, heat capacities and reference temperatures that an energy balance cannot do without."""
@@ -27,14 +25,12 @@ def check_thermal(reader: Reader, species: tuple[Species, ...], reactions: tuple
         if any(abs(c) > 1e-9 for c in change):
             reader.needed(f"reactions.{reaction.name}.heat.at", "the heat moves with temperature, for the heat capacities differ")
 
-
 def check_equilibria(reader: Reader, reactions: tuple[Reaction, ...]) -> None:
     """Fault an equilibrium constant that moves with temperature and has no temperature of its own."""
     for reaction in reactions:
         path = f"reactions.{reaction.name}"
         if reaction.reversible and f"{path}.heat.value" in reader.values:
             reader.needed(f"{path}.equilibrium_constant.at", "an equilibrium moves with temperature, by van 't Hoff")
-
 
 def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Reaction, ...], target: Target | None) -> None:
     """Fault limits without what they need."""
@@ -62,7 +58,6 @@ def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Rea
             "what lies beyond the horizon is not seen",
         )
 
-
 def _brought(values: Mapping[str, float], charge: Charge, feeds: tuple[Feed, ...]) -> tuple[float, float, float]:
     """Return charged volume, own volume of all but the balance, volume with feeds (m3); KeyError where something is missing."""
 
@@ -87,7 +82,6 @@ def _brought(values: Mapping[str, float], charge: Charge, feeds: tuple[Feed, ...
             n = values[f"{path}.equivalents"] * plain.get(feed.equivalents[s], 0.0) if s in feed.equivalents else values[path]
             fed += n * own(s)
     return volume, parts, total + fed
-
 
 def check_fill(reader: Reader, charge: Charge, feeds: tuple[Feed, ...], variables: tuple[Variable, ...]) -> None:
     """Fault a fill above the vessel, or a charge without room for its balance, at the set-point and the variables' corners."""
@@ -119,7 +113,6 @@ def check_fill(reader: Reader, charge: Charge, feeds: tuple[Feed, ...], variable
             )
             return
 
-
 def warn_ranges(reader: Reader, reactions: tuple[Reaction, ...], variables: tuple[Variable, ...]) -> None:
     """Warn where constants are used far from where they were found."""
     swept = [(v.low, v.high) for v in variables if "recipe.charge.temperature" in v.sets or "cooling.set_point" in v.sets]
@@ -145,7 +138,6 @@ def warn_ranges(reader: Reader, reactions: tuple[Reaction, ...], variables: tupl
                 f"{low:.2f} to {high:.2f} K",
                 "temperatures outside its range of validity are swept",
             )
-
 
 def warn_jacket(reader: Reader, kind: str, reactions: tuple[Reaction, ...], charge: Charge, feeds: tuple[Feed, ...]) -> None:
     """Warn where the jacket at its coldest cannot carry the heat of a feed that reacts as it comes in."""

@@ -6,6 +6,8 @@ from pathlib import Path
 
 from sweep.base.errors import Fault, SweepError
 
+FAILURE = frozenset(("mtsr", "tmr_ad", "td24", "mtt", "criticality_class"))  # responses that need a cooling failure
+
 
 @dataclass(frozen=True)
 class Species:
@@ -157,6 +159,13 @@ class Study:
     dimensions: Mapping[str, str]
     asks_failure: bool = False
     warnings: tuple[Fault, ...] = ()
+
+    def without_failure(self) -> "Study":
+        """Return this study without the figures of a cooling failure and the limits on them, for what does not need them."""
+        from dataclasses import replace
+
+        kept = tuple(limit for limit in self.limits if limit.name not in FAILURE)
+        return replace(self, failure=None, asks_failure=False, limits=kept)
 
     def quantity(self, name: str, text: str) -> float:
         """Return a quantity of a variable or path in SI; SweepError where the text is none of its dimension."""

@@ -14,7 +14,7 @@ _PLAIN = {
     "mtt": ("_K", "temperature"), "tmr_ad": ("_s", "time"), "time_to_target": ("_s", "time"), "cycle_time": ("_s", "time"),
     "cooling_duty": ("_W", "power"), "heat_release": ("_W", "power"), "productivity": ("", "productivity"),
 }  # fmt: skip
-FAILURE = frozenset(("mtsr", "tmr_ad", "td24", "mtt", "criticality_class"))
+
 
 
 def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], brought: set[str]) -> Target | None:

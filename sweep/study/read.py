@@ -9,7 +9,7 @@ from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
 from sweep.study import batch, checks, equipment, question, substances
 from sweep.study.lines import lines_of
-from sweep.study.model import Study
+from sweep.study.model import FAILURE, Study
 from sweep.study.reader import Reader
 
 _SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
@@ -89,7 +89,7 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     reader.swept = {path for v in variables for path in v.sets}
     plan = question.read_plan(reader, given("plan"), variables, folder)
     window = question.read_window(reader, given("window"), variables)
-    asks_failure = failure is not None or any(limit.name in question.FAILURE for limit in limits)
+    asks_failure = failure is not None or any(limit.name in FAILURE for limit in limits)
     isothermal = {kind, *kinds} == {"isothermal"} and not asks_failure
     why = "cooling failure needs an energy balance" if asks_failure else f"a cooling of kind {kind} needs an energy balance"
     checks.check_thermal(reader, species, reactions, isothermal, why)

@@ -1,0 +1,108 @@
+"""The set-point: its responses, the margin to each limit, and the limit that is nearest."""
+
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from sweep.base.units import si_unit
+from sweep.plan import set_point
+from sweep.plant import LimitRow, limits, margins, profile, responses
+from sweep.study.model import Study
+
+Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
+
+
+@dataclass(frozen=True)
+class SetPoint:
+    """row: inputs and responses; rows: the limits; margin (L,): by how much each holds; spread (L,): of its response over the plan."""
+
+    study: Study
+    point: dict[str, float]
+    row: pd.Series
+    rows: tuple[LimitRow, ...]
+    margin: np.ndarray
+    spread: np.ndarray
+    profile: pd.DataFrame
+
+    @property
+    def holds(self) -> bool:
+        """Tell whether every limit holds."""
+        return bool((self.margin >= 0.0).all())
+
+    def nearest(self) -> dict[str, Any] | None:
+        """Return the limit with the smallest margin in shares of its response's spread over the plan (of its bound without a plan)."""
+        scale = np.where(np.isfinite(self.spread) & (self.spread > 0.0), self.spread, [max(abs(r.bound), 1e-300) for r in self.rows])
+        share = np.where(np.isnan(self.margin), -np.inf, self.margin / scale) if self.rows else np.zeros(0)
+        if not self.rows:
+            return None
+        k = int(share.argmin())
+        of = "the spread of this response over the plan" if np.isfinite(self.spread[k]) and self.spread[k] > 0.0 else "its bound"
+        row = self.rows[k]
+        return {
+            "name": row.name, "sense": row.sense, "label": row.label, "margin": _number(self.margin[k]), "unit": row.unit,
+            "share": _number(share[k]), "of": of,
+        }  # fmt: skip
+
+    def limit_lines(self) -> list[dict[str, Any]]:
+        """Return each limit with its value, margin, and whether it holds."""
+        lines = []
+        for row, margin in zip(self.rows, self.margin, strict=True):
+            value = self.row[row.response]
+            missing = pd.isna(value)
+            reason = str(self.row["reason"]) if missing or self.row["status"] != "done" else ""
+            lines.append({
+                "name": row.name, "label": row.label, "sense": row.sense, "bound": row.bound, "value": None if missing else float(value),
+                "margin": _number(margin), "unit": row.unit, "holds": bool(margin >= 0.0), "reason": reason,
+            })  # fmt: skip
+        return lines
+
+    def summary(self) -> dict[str, Any]:
+        """Return the blocks set_point, limits and nearest_limit."""
+        study = self.study
+        inputs = {}
+        for v in study.variables:
+            unit = si_unit(study.dimensions[v.sets[0]])
+            inputs[v.name] = {"value": self.point[v.name], "unit": unit, "written_unit": v.unit}
+        found = {r.column: _plain(self.row[r.column]) for r in responses(study) if r.column not in ("status", "reason")}
+        block = {"inputs": inputs, "status": str(self.row["status"]), "reason": str(self.row["reason"]), "responses": found, "holds": self.holds}
+        return {"set_point": block, "limits": self.limit_lines(), "nearest_limit": self.nearest()}
+
+    def tables(self) -> dict[str, pd.DataFrame]:
+        """Return the profile and the limits."""
+        return {"set_point_profile": self.profile, "limits": pd.DataFrame(self.limit_lines())}
+
+
+def _number(value: float) -> float | None:
+    return float(value) if np.isfinite(value) else None
+
+
+def _plain(value: Any) -> Any:
+    if pd.isna(value):
+        return None
+    return value.item() if hasattr(value, "item") else value
+
+
+def look_at_set_point(
+    study: Study, evaluate: Evaluate, tables: Iterable[pd.DataFrame] = (), point: dict[str, float] | None = None
+) -> SetPoint:
+    """Evaluate the set-point, or another point (SI); `tables` are the plan's points, for the spread of each limited response."""
+    point = set_point(study) if point is None else point
+    frame = pd.DataFrame({name: [value] for name, value in point.items()}, index=[0])
+    table = evaluate(frame)
+    rows = limits(study)
+    return SetPoint(study, point, table.iloc[0], rows, margins(study, table)[0], spread_of(rows, tables), profile(study, point))
+
+
+def spread_of(rows: tuple[LimitRow, ...], tables: Iterable[pd.DataFrame]) -> np.ndarray:
+    """Return highest less lowest of each limited response over the points that are done, (L,); NaN without points."""
+    low, high = np.full(len(rows), np.inf), np.full(len(rows), -np.inf)
+    for table in tables:
+        done = table[table["status"] == "done"]
+        for k, row in enumerate(rows):
+            values = done[row.response].dropna().to_numpy(dtype=np.float64)
+            if values.size:
+                low[k], high[k] = min(low[k], values.min()), max(high[k], values.max())
+    return np.where(high > low, high - low, np.nan)

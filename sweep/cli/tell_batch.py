@@ -1,0 +1,86 @@
+"""What `sweep batch` prints."""
+
+import math
+from typing import Any
+
+from sweep.base.units import from_si, show
+from sweep.cli.terminal import Terminal, duration
+from sweep.workflow.batch import OneBatch
+
+_SENSE = {"at_most": "at most", "at_least": "at least"}
+_OWN = {"K": "degC", "s": "h", "W": "kW"}
+
+
+def in_words(value: float | None, unit: str, own: str | None = None, digits: int = 5) -> str:
+    """Return an SI value in the unit an engineer reads it in."""
+    if value is None or math.isnan(value):
+        return "-"
+    return show(value, own or _OWN.get(unit, "" if unit == "1" else unit), digits)
+
+
+def difference(value: float | None, unit: str, own: str | None = None) -> str:
+    """Return a margin: a difference of temperatures stays in K."""
+    if value is None:
+        return "-"
+    if unit == "K":
+        return f"{value:+.4g} K"
+    own = own or _OWN.get(unit, "" if unit == "1" else unit)
+    return f"{from_si(value, own):+.4g} {own}" if own else f"{value:+.4g}"
+
+
+def limit_sentence(line: dict[str, Any], own: str | None = None) -> str:
+    """Return one limit with its value and margin as a sentence."""
+    verdict = "holds" if line["holds"] else "DOES NOT HOLD"
+    bound = in_words(line["bound"], line["unit"], own)
+    if line["value"] is None:
+        return f"{line['name']} {_SENSE[line['sense']]} {bound}: {verdict}, no value: {line['reason']}"
+    return (
+        f"{line['name']} {_SENSE[line['sense']]} {bound}: {verdict}, {in_words(line['value'], line['unit'], own)}, "
+        f"margin {difference(line['margin'], line['unit'], own)}"
+    )
+
+
+def tell_batch(found: OneBatch, terminal: Terminal) -> None:
+    """Print one batch."""
+    row, study = found.seen.row, found.study
+    terminal.title(study.title)
+    terminal.heading("Batch")
+    for variable in study.variables:
+        if variable.name in found.seen.point:
+            terminal.item(f"{variable.name}: {show(found.seen.point[variable.name], study.units.get(variable.sets[0]) or variable.unit)}")
+    terminal.item(f"status: {row['status']}" + (f" ({row['reason']})" if row["reason"] else ""))
+    terminal.item(f"highest temperature: {in_words(row['max_temperature_K'], 'K')} after {duration(float(row['time_of_max_temperature_s']))}")
+    if study.target is not None:
+        terminal.item(f"conversion at the end: {row['conversion']:.6g}; target reached after {in_words(row['time_to_target_s'], 's')}")
+    terminal.item(f"largest cooling duty: {in_words(row['cooling_duty_W'], 'W')}; largest accumulation: {in_words(row['accumulation'], '1')}")
+    if found.failed is not None:
+        tell_failure(found.failed.summary(), terminal)
+    terminal.heading("Limits")
+    for line in found.seen.limit_lines():
+        terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}")))
+    if not found.seen.rows:
+        terminal.item("none are written")
+    terminal.line("")
+    terminal.line(f"written to {found.folder}")
+    terminal.line("This screens; it does not approve. Figures rest on the kinetics given; have hazards tested and reviewed by qualified people.")
+
+
+def tell_failure(block: dict[str, Any], terminal: Terminal) -> None:
+    """Print what a cooling failure does."""
+    terminal.heading("Cooling failure")
+    terminal.item(f"MTSR {in_words(block['mtsr_K'], 'K')}, were cooling lost after {in_words(block['mtsr_time_s'], 's')}")
+    if block["tmr_ad_s"] is None:
+        terminal.item("time to maximum rate, T_D24: not assessed")
+    else:
+        bound = "more than " if block["tmr_ad_censored"] else ""
+        terminal.item(f"shortest adiabatic time to maximum rate: {bound}{in_words(block['tmr_ad_s'], 's')}")
+        above = "above " if block["td24_censored"] else ""
+        terminal.item(f"T_D24: {above}{in_words(block['td24_K'], 'K')}")
+    number = block["criticality_class"]
+    terminal.item(f"criticality class {number}: {block['class_reason']}" if number is not None else f"criticality class: {block['class_reason']}")
+    for reach in block.get("path", {}).get("reaches", []):
+        after = "not reached" if reach["after_s"] is None else f"after {duration(reach['after_s'])}"
+        level = "" if reach["temperature_K"] is None else f" ({in_words(reach['temperature_K'], 'K')})"
+        terminal.item(f"after the worst failure, {reach['name']}{level}: {after}")
+    for caution in block["cautions"]:
+        terminal.item(f"caution: {caution}")

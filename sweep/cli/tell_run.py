@@ -1,0 +1,68 @@
+"""What `sweep run` prints at its end: the answers."""
+
+from typing import Any
+
+from sweep.base.units import show
+from sweep.cli.tell_batch import difference, in_words, limit_sentence, tell_failure
+from sweep.cli.terminal import Terminal
+from sweep.study.model import Study
+from sweep.workflow.run import Run
+
+
+def tell_run(found: Run, study: Study, terminal: Terminal) -> None:
+    """Print the answers of a run."""
+    summary = found.summary
+    terminal.title(study.title)
+    points = summary["points"]
+    held = "" if points["all_hold"] is None else f"; {points['all_hold']:,} hold every limit"
+    counts = ", ".join(f"{points[status]:,} {status}" for status in ("done", "runaway", "failed"))
+    terminal.item(f"{points['planned']:,} points ({points['plan']}): {counts}{held}")
+    terminal.heading("Set-point")
+    for name, given in summary["set_point"]["inputs"].items():
+        terminal.item(f"{name}: {show(given['value'], given['written_unit'] or given['unit'])}")
+    for line in summary["limits"]:
+        terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}")))
+    nearest = summary["nearest_limit"]
+    if nearest is not None:
+        terminal.item(f"nearest limit: {nearest['name']}, margin {difference(nearest['margin'], nearest['unit'])}")
+    _tell_batch_time(summary["batch_time"], terminal)
+    _tell_window(summary["window"], study, terminal)
+    _tell_failure(summary["failure"], terminal)
+    terminal.line("")
+    terminal.line(f"report: {found.folder / 'report.html'}")
+    terminal.line("This screens; it does not approve. Figures rest on the kinetics given; have hazards tested and reviewed by qualified people.")
+
+
+def _tell_batch_time(block: dict[str, Any], terminal: Terminal) -> None:
+    terminal.heading("Batch time")
+    if "not_assessed" in block:
+        terminal.item(f"not assessed: {block['not_assessed']}")
+        return
+    if block["why_not"] is not None:
+        terminal.item(f"the target is never reached: {block['why_not']['cause']}")
+    for option in block["options"]:
+        made = "" if option["productivity"] is None else f", {option['productivity'] * 3600.0:.4g} {option['productivity_unit'].split('/')[0]}/m3/h"
+        terminal.item(f"{option['name']}: {in_words(option['time_s'], 's')}, conversion {in_words(option['conversion'], '1')}{made}")
+
+
+def _tell_window(block: dict[str, Any], study: Study, terminal: Terminal) -> None:
+    terminal.heading("Operating window")
+    if "not_assessed" in block:
+        terminal.item(f"not assessed: {block['not_assessed']}")
+        return
+    terminal.item(f"over {' and '.join(block['axes'])}: every limit holds in {100.0 * block['safe_share']:.3g} % of the area")
+    units = {v.name: v.unit for v in study.variables}
+    for edge in block["set_point"]["distances"]:
+        if edge["distance"] is None:
+            terminal.item(f"{edge['axis']} {edge['direction']}: no edge within its range")
+        else:
+            distance = difference(edge["distance"], edge["unit"], None if edge["unit"] == "K" else units[edge["axis"]]).lstrip("+")
+            terminal.item(f"{edge['axis']} {edge['direction']}: {distance} to the edge, where {edge['limit']} ends it")
+
+
+def _tell_failure(block: dict[str, Any], terminal: Terminal) -> None:
+    if "not_assessed" in block:
+        terminal.heading("Cooling failure")
+        terminal.item(f"not assessed: {block['not_assessed']}")
+        return
+    tell_failure(block, terminal)

@@ -1,0 +1,102 @@
+"""`check`: what was understood of a study, in words and in the study's own units."""
+
+from collections.abc import Iterator
+
+from sweep.base.units import show, si_unit
+from sweep.plan import planned
+from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
+from sweep.study.model import Limit, Study, Variable
+
+_SENSE = {"at_most": "at most", "at_least": "at least"}
+
+
+def told(study: Study) -> list[tuple[str, list[str]]]:
+    """Return headed lists of sentences; SweepError where the set-point lacks a quantity."""
+    seen = understood(study)
+    parts = [
+        ("Reactions", [_reaction(study, r) for r in seen.reactions]),
+        ("Charge and feeds", [*_charge(study, seen), *(_feed(study, f) for f in seen.feeds)]),
+        ("Cooling", list(_cooling(study, seen))),
+        ("Events", [f"at {_in(study, t.time, 's', 'recipe.batch_time')}: {_sets(t.sets)}" for t in study.events]),
+        ("Target", list(_target(study))),
+        ("Limits", [_limit(study, limit) for limit in study.limits]),
+        ("Variables", [_variable(study, v) for v in study.variables]),
+        ("Asked for", list(_asked(study))),
+    ]
+    return [(title, lines) for title, lines in parts if lines]
+
+
+def _in(study: Study, value: float, si: str, path: str, fallback: str = "") -> str:
+    """Return an SI value in the unit in which the study writes a quantity of the same dimension."""
+    unit = study.units.get(path) or fallback or si
+    return show(value, unit)
+
+
+def _reaction(study: Study, seen: ReactionSeen) -> str:
+    heat = "heat not given"
+    if seen.heat is not None:
+        kind = "gives off" if seen.heat < 0.0 else "takes up"
+        heat = f"{kind} {show(abs(seen.heat), study.units.get(f'reactions.{seen.name}.heat.value', 'kJ/mol'))}"
+    rise = "" if seen.rise is None else f", adiabatic rise {seen.rise:.4g} K for {show(seen.extent, 'kmol')} of it"
+    path = f"reactions.{seen.name}.rate_constant.value"
+    k = show(seen.k_start, study.units.get(path) or si_unit(study.dimensions[path]))
+    return f"{seen.name} ({seen.purpose}): {seen.equation}; {heat}{rise}; k = {k} at the charge temperature"
+
+
+def _charge(study: Study, seen: Understood) -> Iterator[str]:
+    temperature = _in(study, study.values["recipe.charge.temperature"], "K", "recipe.charge.temperature")
+    yield f"charge: {_in(study, seen.fill[0][1], 'm3', 'recipe.charge.volume')} at {temperature}"
+    room = study.values.get("vessel.volume")
+    for time, volume in seen.fill[1:]:
+        share = f", {100.0 * volume / room:.3g} % of the vessel" if room else ""
+        yield f"fill at {_in(study, time, 's', 'recipe.batch_time', 'h')}: {_in(study, volume, 'm3', 'recipe.charge.volume')}{share}"
+    if seen.capacity is not None:
+        yield f"heat capacity of the whole fill and the wall: {show(seen.capacity, 'MJ/K')}"
+
+
+def _feed(study: Study, feed: FeedSeen) -> str:
+    unit = study.units.get(f"recipe.feeds.{feed.name}.duration", "h")
+    mass = "" if feed.mass is None else f" ({show(feed.mass, 'kg')}, {show(feed.mass / (feed.end - feed.start), 'kg/h')})"
+    heat = "" if feed.heat is None else f"; its synthesis heat, reacting as it comes in: {show(feed.heat, 'kW')}"
+    return f"feed {feed.name}: {show(feed.amount, 'kmol')}{mass} from {show(feed.start, unit)} to {show(feed.end, unit)}{heat}"
+
+
+def _cooling(study: Study, seen: Understood) -> Iterator[str]:
+    yield f"kind: {study.cooling_kind or 'isothermal'}"
+    if seen.ua_start is not None and seen.duty_start is not None:
+        yield f"at the start U A = {show(seen.ua_start, 'kW/K')}; with the coldest coolant it carries {show(seen.duty_start, 'kW')}"
+    elif seen.duty_start is not None:
+        yield f"it carries at most {show(seen.duty_start, 'kW')}"
+
+
+def _sets(sets: object) -> str:
+    return ", ".join(f"{path} = {value if isinstance(value, str) else f'{value:g} (SI)'}" for path, value in dict(sets).items())  # type: ignore[call-overload]
+
+
+def _target(study: Study) -> Iterator[str]:
+    if study.target is not None:
+        product = f", product {study.target.product}" if study.target.product else ""
+        yield f"conversion of {study.target.species}: {study.values['target.conversion']:.6g}{product}"
+
+
+def _limit(study: Study, limit: Limit) -> str:
+    path = f"limits.{limit.name}.{limit.sense}"
+    return f"{limit.name} {_SENSE[limit.sense]} {show(study.values[path], study.units[path])}"
+
+
+def _variable(study: Study, v: Variable) -> str:
+    unit = study.units.get(v.sets[0]) or v.unit
+    now = study.values[v.sets[0]]
+    levels = f", {v.levels} levels" if v.levels else ""
+    return f"{v.name}: {show(v.low, unit)} to {show(v.high, unit)}{levels}, now {show(now, unit)}; sets {', '.join(v.sets)}"
+
+
+def _asked(study: Study) -> Iterator[str]:
+    plan = planned(study)
+    yield f"points: {plan.size:,} ({plan.kind})"
+    if study.window is not None:
+        yield f"window over {study.window.axes[0]} and {study.window.axes[1]}"
+    if study.batch_time is not None:
+        yield "batch time"
+    if study.failure is not None:
+        yield f"cooling failure, horizon {show(study.values['failure.horizon'], study.units['failure.horizon'])}"
