@@ -103,7 +103,6 @@ def failure_path(study: Study, point: Mapping[str, float] | None, time: float, l
     T = marched.samples[0, :, nz]
     known = np.isfinite(T)
     reaches = [(name, level, _first(fine[0][known], T[known], level)) for name, level in levels.items()]
-    fastest = float(marched.out[0, at.OUT_RATE_MAX_TIME])
     now = _flow_along(plant, failed, marched.samples[0])
     stage = _stages(study, now, known)
     decomposes = adiabatic.purposes(study, "decomposition")

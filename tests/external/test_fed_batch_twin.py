@@ -26,8 +26,8 @@ def _right_side(t: float, y: np.ndarray, feeding: bool, set_point: float, rate: 
     fed = rate * (min(t, 11400.0) - 600.0 if t > 600.0 else 0.0)
     V = 2.0 + fed * 0.1021 / 1080.0
     c = n / V
-    k = [2.6e-6, 2.0e-9] * np.exp(-np.array([58e3, 74e3]) / R * (1 / T - 1 / 318.15))
-    k3 = 8e-6 * np.exp(-135e3 / R * (1 / T - 1 / 393.15))
+    k = [1.3e-6, 7.0e-10] * np.exp(-np.array([58e3, 74e3]) / R * (1 / T - 1 / 318.15))
+    k3 = 9e-5 * np.exp(-135e3 / R * (1 / T - 1 / 393.15))
     r = np.array([k[0] * c[0] * c[1], k[1] * c[3] * c[1], k3 * c[3]])
     cp = np.array(list(CP.values()))
     dH = HEAT + (NU @ cp) * (T - 298.15)
