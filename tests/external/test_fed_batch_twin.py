@@ -94,6 +94,5 @@ def test_neighbours_do_not_matter():
     whole = evaluate(study, points)
     alone = evaluate(study, points.iloc[[20]])
     turned = evaluate(study, points.iloc[::-1])
-    numbers = whole.select_dtypes("number").columns
-    assert whole.loc[[20], numbers].to_numpy().tobytes() == alone[numbers].to_numpy().tobytes()
-    assert whole[numbers].to_numpy().tobytes() == turned.loc[whole.index, numbers].to_numpy().tobytes()
+    pd.testing.assert_frame_equal(whole.loc[[20]], alone, check_exact=True)
+    pd.testing.assert_frame_equal(whole, turned.loc[whole.index], check_exact=True)
