@@ -70,6 +70,9 @@ def _at(study: Study, values: Values, time: Floats) -> tuple[Values, NDKind]:
 
 
 
+def _flat(array: Floats) -> Floats:
+    """Return (N, A, B) as (N, A B), for no points too."""
+    return array.reshape(array.shape[0], array.shape[1] * array.shape[2])
 
 
 def _cooling(block: Floats, values: Values, kind: NDKind, first: bool, was: NDKind, charge_T: Floats) -> None:
@@ -148,9 +151,9 @@ def charge_plant(study: Study, values: Values) -> Charged:
         fed = np.einsum("nf,nfi->ni", share, brought.fed)
         block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (brought.charged if extents else 0.0)
         terms = chemistry.rate_terms(study, here, heats, structure.rate_terms)
-        block[:, head[at.BLOCK_RATE] : head[at.BLOCK_HEAT]] = terms.reshape(n, -1)
-        block[:, head[at.BLOCK_HEAT] : head[at.BLOCK_CP]] = heats[:, :, : structure.heat_terms].reshape(n, -1)
-        block[:, head[at.BLOCK_CP] : head[at.BLOCK_LENGTH]] = cp[:, :, : structure.cp_terms].reshape(n, -1)
+        block[:, head[at.BLOCK_RATE] : head[at.BLOCK_HEAT]] = _flat(terms)
+        block[:, head[at.BLOCK_HEAT] : head[at.BLOCK_CP]] = _flat(heats[:, :, : structure.heat_terms])
+        block[:, head[at.BLOCK_CP] : head[at.BLOCK_LENGTH]] = _flat(cp[:, :, : structure.cp_terms])
         if not has_heat_capacities(study, values):
             block[:, at.WALL] = np.where(block[:, at.WALL] > 0.0, block[:, at.WALL], 1.0)
         was, begin = kind, stop
