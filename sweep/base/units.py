@@ -11,6 +11,7 @@ if TYPE_CHECKING:
 
 _QUANTITY = re.compile(r"^\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3})?)\s*(\S.*?)?\s*$")
 _UNIT = re.compile(r"^[A-Za-z0-9µ°%·/*^().\s-]{1,60}$")
+_FACTOR = re.compile(r"([*/]?)\s*([A-Za-z%°µ]+|1)(?:\^?([+-]?[\d.]+))?")
 _REFUSED = {
     "C": "degC (C is coulomb)", "R": "degR (R is the gas constant)", "k": "a full unit (k is not one)", "pct": "%",
     "barg": "bar, absolute", "psig": "psi, absolute",
@@ -54,6 +55,18 @@ def _registry() -> "pint.UnitRegistry[Any]":
 def si_unit(dimension: str) -> str:
     """Return the SI unit of a named dimension, or of one given as a unit itself."""
     return _SI.get(dimension, dimension)
+
+
+def suffix(unit: str) -> str:
+    """Return a unit as the end of a column's name: "K" -> "_K", "mol/m^3" -> "_mol_per_m3", "m**(1.5)*s**(-1)" -> "_m1.5_per_s", "" -> ""."""
+    above: list[str] = []
+    below: list[str] = []
+    for divided, name, power in _FACTOR.findall(unit.replace("**", "^").replace("(", "").replace(")", "")):
+        under = (divided == "/") != power.startswith("-")
+        size = f"{abs(float(power or 1)):g}"
+        if name != "1" and size != "0":
+            (below if under else above).append(name if size == "1" else name + size)
+    return "".join(f"_{part}" for part in [*above, *(["per", *below] if below else [])])
 
 
 def _split(text: str, dimension: str) -> tuple[float, str]:

@@ -4,7 +4,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from sweep.base.units import UnitFault, from_si, show, to_si
+from sweep.base.units import UnitFault, from_si, show, suffix, to_si
 
 
 @pytest.mark.parametrize(
@@ -73,3 +73,24 @@ def test_show():
     assert "45 degC" == show(318.15, "degC")
     assert "2.5 h" == show(9000.0, "h")
     assert "0.1235" == show(0.123456, "")
+
+
+@pytest.mark.parametrize(
+    ("unit", "expected"),
+    [
+        ("K", "_K"),
+        ("s", "_s"),
+        ("", ""),
+        ("m^3", "_m3"),
+        ("m3", "_m3"),
+        ("mol/m^3", "_mol_per_m3"),
+        ("m^3/s", "_m3_per_s"),
+        ("W/m^2/K", "_W_per_m2_K"),
+        ("1/K", "_per_K"),
+        ("mol**(-0.5)*m**(1.5)*s**(-1)", "_m1.5_per_mol0.5_s"),
+        ("mol**(0)*s**(-1)", "_per_s"),
+        ("kg/m^3/s", "_kg_per_m3_s"),
+    ],
+)
+def test_suffix(unit, expected):
+    assert expected == suffix(unit)
