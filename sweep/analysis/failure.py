@@ -70,7 +70,7 @@ def levels_of(study: Study) -> dict[str, float]:
     if "failure.mtt" in study.values:
         levels["MTT"] = study.values["failure.mtt"]
     for row in limits(study):
-        if row.response in ("max_temperature_K", "mtsr_K") and row.sense == "at_most":
+        if row.response == "max_temperature_K" and row.sense == "at_most":
             levels[f"limit {row.label}"] = row.bound
     return levels
 

@@ -17,7 +17,8 @@ Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
 
 @dataclass(frozen=True)
 class SetPoint:
-    """row: inputs and responses; rows: the limits; margin (L,): by how much each holds; spread (L,): of its response over the plan."""
+    """row: inputs and responses; rows: the limits; margin (L,): by how much each holds; spread (L,): interquartile range of its
+    response over the plan."""
 
     study: Study
     point: dict[str, float]
@@ -33,13 +34,13 @@ class SetPoint:
         return bool((self.margin >= 0.0).all())
 
     def nearest(self) -> dict[str, Any] | None:
-        """Return the limit with the smallest margin in shares of its response's spread over the plan (of its bound without a plan)."""
+        """Return the limit with the smallest margin, counted in its response's interquartile range over the plan (in its bound without one)."""
         scale = np.where(np.isfinite(self.spread) & (self.spread > 0.0), self.spread, [max(abs(r.bound), 1e-300) for r in self.rows])
         share = np.where(np.isnan(self.margin), -np.inf, self.margin / scale) if self.rows else np.zeros(0)
         if not self.rows:
             return None
         k = int(share.argmin())
-        of = "the spread of this response over the plan" if np.isfinite(self.spread[k]) and self.spread[k] > 0.0 else "its bound"
+        of = "the interquartile range of this response over the plan" if np.isfinite(self.spread[k]) and self.spread[k] > 0.0 else "its bound"
         row = self.rows[k]
         return {
             "name": row.name, "sense": row.sense, "label": row.label, "margin": _number(self.margin[k]), "unit": row.unit,
@@ -97,12 +98,14 @@ def look_at_set_point(
 
 
 def spread_of(rows: tuple[LimitRow, ...], tables: Iterable[pd.DataFrame]) -> np.ndarray:
-    """Return highest less lowest of each limited response over the points that are done, (L,); NaN without points."""
-    low, high = np.full(len(rows), np.inf), np.full(len(rows), -np.inf)
-    for table in tables:
-        done = table[table["status"] == "done"]
-        for k, row in enumerate(rows):
-            values = done[row.response].dropna().to_numpy(dtype=np.float64)
-            if values.size:
-                low[k], high[k] = min(low[k], values.min()), max(high[k], values.max())
-    return np.where(high > low, high - low, np.nan)
+    """Return the interquartile range of each limited response over the points that are done, (L,); NaN without points."""
+    columns = [row.response for row in rows]
+    parts = [t.loc[t["status"] == "done", columns].to_numpy(dtype=np.float64, na_value=np.nan) for t in tables] if columns else []
+    values = np.concatenate(parts) if parts else np.zeros((0, len(rows)))
+    spread = np.full(len(rows), np.nan)
+    for k in range(len(rows)):
+        known = values[np.isfinite(values[:, k]), k]
+        if known.size > 1:
+            low, high = np.quantile(known, [0.25, 0.75])
+            spread[k] = high - low if high > low else np.nan
+    return spread
