@@ -7,6 +7,7 @@ from pathlib import Path
 from sweep.base.errors import Fault, SweepError
 
 FAILURE = frozenset(("mtsr", "tmr_ad", "td24", "mtt", "criticality_class"))  # responses that need a cooling failure
+SETTABLE = frozenset(("species", "reactions", "vessel", "cooling", "recipe", "events", "failure"))  # sections whose quantities a point may set
 
 
 @dataclass(frozen=True)
@@ -183,11 +184,13 @@ class Study:
         for variable in self.variables:
             if variable.name == name:
                 return variable.sets
-        if name in self.values:
+        if name in self.values and name.split(".")[0] in SETTABLE:
             return (name,)
+        if name in self.values:
+            raise SweepError(f"{name} belongs to the question, not to the batch: it is the same for every point; change it in the study")
         import difflib
 
-        known = [*(v.name for v in self.variables), *self.values]
+        known = [*(v.name for v in self.variables), *(path for path in self.values if path.split(".")[0] in SETTABLE)]
         near = difflib.get_close_matches(name, known, 1)
         hint = f"; did you mean {near[0]}?" if near else ""
         raise SweepError(f"{name} is neither a variable nor a quantity of this study{hint}")

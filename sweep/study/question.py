@@ -5,7 +5,7 @@ from pathlib import Path
 from typing import Any
 
 from sweep.base.units import UnitFault, unit_of
-from sweep.study.model import BatchTimeSettings, FailureSettings, Limit, Plan, Target, Variable, WindowSettings
+from sweep.study.model import SETTABLE, BatchTimeSettings, FailureSettings, Limit, Plan, Target, Variable, WindowSettings
 from sweep.study.reader import Reader, converted
 
 _PLAIN = {
@@ -118,6 +118,9 @@ def read_variables(reader: Reader, table: dict[str, Any]) -> tuple[Variable, ...
 
 
 def _settable(reader: Reader, place: str, path: str, name: str, owners: dict[str, str]) -> bool:
+    if path in reader.values and path.split(".")[0] not in SETTABLE:
+        reader.fault(place, path, "a quantity of the batch", "it belongs to the question and is the same for every point")
+        return False
     if path not in reader.values:
         near = difflib.get_close_matches(path, list(reader.values), 1)
         reader.fault(place, path, near[0] if near else "a quantity that is written", "the variable sets nothing")
