@@ -19,6 +19,7 @@ from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 LONG = 1e9  # s, some thirty years: by then a synthesis has done what it will do
+FASTER = 1.01  # a largest dT/dt that is not this many times the first is "at once": no acceleration worth the name
 STILL = 0.01  # K; a rise smaller than this is none
 SMALL_RISE = 50.0  # K; below it a decomposition without an acceleration is no runaway (CHECKS of severity: common practice)
 
@@ -196,7 +197,8 @@ def run_decomposition(
     last = np.nan_to_num(marched.at_last, nan=300.0)
     still_rising = rates.heating_rate(flow_of(plant, rows, block, last)) >= out[:, at.OUT_RATE_MAX] * (1.0 - 1e-9)
     hot = np.isin(code, (RUNAWAY, STEP_TOO_SMALL))  # an explosion faster than time can be told apart has reached its largest rate
-    at_once = when <= 0.0
+    at_start = rates.heating_rate(flow_of(plant, rows, block, state))
+    at_once = (when <= 0.0) | (out[:, at.OUT_RATE_MAX] <= FASTER * at_start)
     nothing = (rise < STILL) | (out[:, at.OUT_RATE_MAX] <= 0.0)
     tmr = np.where(hot & still_rising, out[:, at.OUT_TIME], when)
     censored = ~hot & (nothing | still_rising | (at_once & (rise < SMALL_RISE)))

@@ -19,9 +19,8 @@ from sweep.study.model import Study
 
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
 WORTH = 3.0  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
-ROUNDS = 6  # where the marches contradict the estimates: rounds of marches, each in a third of the bracket before
-MTSR_TOLERANCE = 0.01  # K; a coarse moment hotter than the refined ones by more contradicts the estimate
-TMR_TOLERANCE = 0.002  # relative, likewise
+CLOSE = 0.0025  # of the batch time; the marches left and right of the worst one are brought at least this near
+ROUNDS = 6  # of marches where they are not: each in a third of the bracket before
 
 
 @dataclass(frozen=True)
@@ -81,14 +80,18 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], tolerance)
     parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, top, tolerance) for which, top in enumerate(tops)]
     time, state = np.concatenate([p[0] for p in parts], axis=1), np.concatenate([p[1] for p in parts], axis=1)
-    every = np.repeat(rows, time.shape[1])
-    _, first = np.unique(np.stack([every, time.ravel()]), axis=1, return_index=True)
-    usable = first[np.isfinite(state.reshape(-1, state.shape[2])[first]).all(axis=1)]
-    refined = march_moments(study, plant, every[usable], time.ravel()[usable], state.reshape(-1, state.shape[2])[usable], tolerance)
-    both = marched.joined(refined)
+    marched = marched.joined(_march_grid(study, plant, rows, time, state, tolerance))
     for which in range(len(found)):
-        both = _contradicted(study, plant, batch, both, marched, refined, which, tolerance)
-    return both
+        marched = _narrowed(study, plant, batch, marched, which, tolerance)
+    return marched
+
+
+def _march_grid(study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, all_tmr: bool = False) -> Moments:
+    """March failures at times (M, K) from states (M, K, R) of points `rows` (M,), each time once."""
+    every, flat = np.repeat(rows, time.shape[1]), state.reshape(-1, state.shape[2])
+    _, first = np.unique(np.stack([every, time.ravel()]), axis=1, return_index=True)
+    usable = first[np.isfinite(flat[first]).all(axis=1)]
+    return march_moments(study, plant, every[usable], time.ravel()[usable], flat[usable], tolerance, all_tmr)
 
 
 def _estimate(study: Study, plant: Charged, which: int) -> moments.Estimate:
@@ -126,29 +129,56 @@ def _best(marched: Moments, score: Floats, count: int) -> tuple[np.ndarray, Floa
     return np.where(np.isfinite(best), place, -1), best
 
 
-def _contradicted(
-    study: Study, plant: Charged, batch: Batch, both: Moments, coarse: Moments, refined: Moments, which: int, tolerance: float
-) -> Moments:
-    """Search by marches alone where a coarse moment turned out worse than the refined ones."""
+def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, tolerance: float) -> Moments:
+    """March on around each point's worst moment until its neighbours are close, then at the top of the parabola through the three."""
     count = plant.values.count
-    allowed = MTSR_TOLERANCE if which == 0 else TMR_TOLERANCE
-    here = _best(coarse, _score(coarse, which), count)[1]
-    there = _best(refined, _score(refined, which), count)[1]
-    rows = np.flatnonzero(here > there + allowed)
-    for _ in range(ROUNDS if rows.size else 0):
-        place, _ = _best(both, _score(both, which), count)
-        middle = both.time[place[rows]]
-        low, high = _neighbours(both, rows, middle)
-        thirds = np.array([1.0, 2.0]) / 3.0
-        left, right = low[:, None] + thirds * (middle - low)[:, None], middle[:, None] + thirds * (high - middle)[:, None]
-        time = np.concatenate([left, right], axis=1)
-        sample = np.maximum((batch.times[rows] <= time[:, :1]).sum(axis=1) - 1, 0)
-        begin = batch.times[rows, sample]
-        state = states_at(plant, rows, begin, np.nan_to_num(batch.states[rows, sample], nan=300.0), time, tolerance)
-        every, flat = np.repeat(rows, time.shape[1]), state.reshape(-1, state.shape[2])
-        good = np.isfinite(flat).all(axis=1)
-        both = both.joined(march_moments(study, plant, every[good], time.ravel()[good], flat[good], tolerance, all_tmr=which == 1))
-    return both
+    end = np.where(batch.inside, batch.times, 0.0).max(axis=1)
+    for last in [False] * ROUNDS + [True]:
+        score = _score(marched, which)
+        place, best = _best(marched, score, count)
+        rows = np.flatnonzero(place >= 0)
+        middle = marched.time[place[rows]]
+        low, high = _neighbours(marched, rows, middle)
+        if not last:
+            wide = np.maximum(middle - low, high - middle) > CLOSE * end[rows]
+            rows, middle, low, high = rows[wide], middle[wide], low[wide], high[wide]
+            thirds = np.array([1.0, 2.0]) / 3.0
+            left, right = low[:, None] + thirds * (middle - low)[:, None], middle[:, None] + thirds * (high - middle)[:, None]
+            time = np.concatenate([left, right], axis=1)
+        else:
+            inner = (low < middle) & (high > middle)
+            rows, middle, low, high = rows[inner], middle[inner], low[inner], high[inner]
+            time = _vertex(marched, score, rows, low, middle, high, best)[:, None]
+        if rows.size:
+            marched = marched.joined(_march_grid(study, plant, rows, time, _states(plant, batch, rows, time, tolerance), tolerance, which == 1))
+    return marched
+
+
+def _states(plant: Charged, batch: Batch, rows: np.ndarray, time: Floats, tolerance: float) -> Floats:
+    """Return the states (M, K, R) at times (M, K) ascending, marched on from the sample before the first."""
+    sample = np.maximum((batch.times[rows] <= time[:, :1]).sum(axis=1) - 1, 0)
+    return states_at(plant, rows, batch.times[rows, sample], np.nan_to_num(batch.states[rows, sample], nan=300.0), time, tolerance)
+
+
+def _vertex(marched: Moments, score: Floats, rows: np.ndarray, low: Floats, middle: Floats, high: Floats, best: Floats) -> Floats:
+    """Return where the parabola through a worst moment and its neighbours is highest, (M,); the moment itself where there is none."""
+    at_low, at_high = (_score_at(marched, score, rows, time) for time in (low, high))
+    top = best[rows]
+    with np.errstate(invalid="ignore", divide="ignore"):
+        a, b = (middle - low) ** 2 * (top - at_high), (middle - high) ** 2 * (top - at_low)
+        bend = (middle - low) * (top - at_high) - (middle - high) * (top - at_low)
+        found = middle - 0.5 * (a - b) / bend
+    return np.where(np.isfinite(found) & (found > low) & (found < high), found, middle)
+
+
+def _score_at(marched: Moments, score: Floats, rows: np.ndarray, time: Floats) -> Floats:
+    """Return the score of the failure of each of `rows` at a marched time, (M,)."""
+    wanted = np.full(int(marched.rows.max(initial=0)) + 1, np.nan)
+    wanted[rows] = time
+    here = np.flatnonzero(marched.time == wanted[marched.rows])
+    found = np.full(wanted.size, -np.inf)
+    found[marched.rows[here]] = score[here]
+    return found[rows]
 
 
 def _neighbours(marched: Moments, rows: np.ndarray, middle: Floats) -> tuple[Floats, Floats]:

@@ -29,7 +29,7 @@ def limits(study: Study) -> tuple[LimitRow, ...]:
     both = {x.name for x in study.limits if sum(y.name == x.name for y in study.limits) > 1}
     rows = []
     if study.target is not None and "target.conversion" in study.values:
-        label = "conversion at_least" if any(x.name == "conversion" for x in study.limits) else "conversion"
+        label = "conversion at_least" if any(x.name == "conversion" and x.sense == "at_most" for x in study.limits) else "conversion"
         rows.append(LimitRow("conversion", "conversion", "at_least", study.values["target.conversion"], "1", label))
     for limit in study.limits:
         target = limit.name == "conversion" and limit.sense == "at_least"

@@ -93,7 +93,7 @@ def estimates(study: Study, plant: Charged, rows: np.ndarray, times: Floats, sta
 
 
 def refine(plant: Charged, batch: Batch, of: Estimate, rows: np.ndarray, worst: np.ndarray, tolerance: float) -> tuple[Floats, Floats]:
-    """Return three times (M, 3) near the highest estimate around sample `worst` (M,) of points `rows` (M,), and the states (M, 3, R)."""
+    """Return four times (M, 4) near the highest estimate around sample `worst` (M,) of points `rows` (M,), and the states (M, 4, R)."""
     last = np.maximum(batch.inside[rows].sum(axis=1) - 1, 0)
     low, high = np.maximum(worst - 1, 0), np.minimum(worst + 1, last)
     start, stop, peak = (batch.times[rows, k] for k in (low, high, worst))
@@ -107,18 +107,17 @@ def refine(plant: Charged, batch: Batch, of: Estimate, rows: np.ndarray, worst: 
 
 
 def _candidates(t: Floats, value: Floats) -> Floats:
-    """Return per row, ascending: the highest sample, the top of the parabola through it, and where the lines beside it meet."""
-    rows, top = np.arange(t.shape[0]), value.argmax(axis=1)
-    last = t.shape[1] - 1
+    """Return per row, ascending: the highest sample, its neighbours, and where the lines left and right of it meet (a kink)."""
+    rows, last = np.arange(t.shape[0]), t.shape[1] - 1
+    top = value.argmax(axis=1)
     k = np.clip(top, 2, last - 2)
-    a, b, c = (t[rows, k + d] for d in (-1, 0, 1))
-    fa, fb, fc = (value[rows, k + d] for d in (-1, 0, 1))
+    a, c = t[rows, k - 1], t[rows, k + 1]
+    fa, fc = value[rows, k - 1], value[rows, k + 1]
     with np.errstate(divide="ignore", invalid="ignore"):
-        bend = (b - a) * (fb - fc) - (b - c) * (fb - fa)
-        vertex = b - 0.5 * ((b - a) ** 2 * (fb - fc) - (b - c) ** 2 * (fb - fa)) / bend
-        rising = (value[rows, k - 1] - value[rows, k - 2]) / (t[rows, k - 1] - t[rows, k - 2])
-        falling = (value[rows, k + 2] - value[rows, k + 1]) / (t[rows, k + 2] - t[rows, k + 1])
+        rising = (fa - value[rows, k - 2]) / (a - t[rows, k - 2])
+        falling = (value[rows, k + 2] - fc) / (t[rows, k + 2] - c)
         meet = (fc - fa + rising * a - falling * c) / (rising - falling)
     best = t[rows, top]
-    found = [best] + [np.where(np.isfinite(x) & (x >= a) & (x <= c), x, best) for x in (vertex, meet)]
-    return np.sort(np.stack(found, axis=1), axis=1)
+    kink = np.where(np.isfinite(meet) & (meet >= a) & (meet <= c), meet, best)
+    near = [t[rows, np.clip(top + d, 0, last)] for d in (-1, 1)]
+    return np.sort(np.stack([best, kink, *near], axis=1), axis=1)
