@@ -11,12 +11,12 @@ _AXIS = (np.arange(200) + 0.5) / 200
 DENSE = np.stack(np.meshgrid(_AXIS, _AXIS, indexing="ij"), axis=-1).reshape(-1, 2)
 
 
-def halfway(answers, joined) -> Boundary:
-    """Return a boundary that crosses every edge in its middle."""
+def halfway(answers, joined, part=0.5) -> Boundary:
+    """Return a boundary that crosses every edge in its middle, or at another part of it, seen from below or from the left."""
     answers = np.array(answers, dtype=bool)
     size = len(answers)
     node = np.stack(np.meshgrid(np.arange(size), np.arange(size), indexing="ij"), axis=-1).reshape(-1, 2)
-    crossings = np.concatenate([node + 0.5 * np.eye(2)[axis] for axis in (0, 1)]) / (size - 1)
+    crossings = np.concatenate([node + part * np.eye(2)[axis] for axis in (0, 1)]) / (size - 1)
     joined = np.full((size - 1, size - 1), joined)
     return Boundary(answers, joined, crossings, np.zeros(len(crossings), dtype=np.int64), passed_cells(answers, joined))
 
@@ -41,6 +41,15 @@ def test_each_cell(corners, joined):
     assert area == pytest.approx(inside(boundary, DENSE).mean(), abs=0.006)
     corner = np.array([[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]])
     assert list(corners) == inside(boundary, corner).tolist()
+
+
+@pytest.mark.parametrize("part", [0.1, 0.3, 0.8])
+@pytest.mark.parametrize("joined", [True, False])
+@pytest.mark.parametrize("corners", list(itertools.product([True, False], repeat=4)))
+def test_area_is_what_is_inside(corners, joined, part):
+    a, b, c, d = corners
+    boundary = halfway([[a, d], [b, c]], joined, part)
+    assert safe_area(boundary) == pytest.approx(inside(boundary, DENSE).mean(), abs=0.006)
 
 
 @pytest.mark.parametrize(("joined", "pieces", "holes", "lines"), [(True, 1, 2, 3), (False, 2, 1, 3)])
