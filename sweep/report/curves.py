@@ -1,0 +1,144 @@
+"""What a figure of curves holds before it is drawn: plain numbers in units for display, and their labels."""
+
+from dataclasses import dataclass, field
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Line:
+    """A curve over the figure's x, both (N,); NaN where there is nothing to draw."""
+
+    name: str
+    y: Array
+
+
+@dataclass(frozen=True)
+class Level:
+    """A horizontal line, labelled: a limit, a target or a characteristic temperature."""
+
+    name: str
+    value: float
+    limit: bool = True
+
+
+@dataclass(frozen=True)
+class Moment:
+    """A vertical line through all panels, labelled above the top one; with `y`, marked on the top panel's curve too."""
+
+    name: str
+    x: float
+    y: float | None = None
+
+
+@dataclass(frozen=True)
+class Panel:
+    """One set of axes."""
+
+    label: str
+    lines: tuple[Line, ...]
+    levels: tuple[Level, ...] = ()
+
+
+@dataclass(frozen=True)
+class Curves:
+    """Stacked panels that share their x, and the numbers behind them."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    x_label: str
+    x: Array
+    panels: tuple[Panel, ...]
+    moments: tuple[Moment, ...]
+    numbers: pd.DataFrame
+    logarithmic: bool = False
+
+
+@dataclass(frozen=True)
+class Boundary:
+    """A piece of the window's edge: points (M,) along both axes, and the limit that ends it."""
+
+    limit: str
+    x: Array
+    y: Array
+
+
+@dataclass(frozen=True)
+class Reach:
+    """How far one axis may be changed from the set-point: the edge's place, or None where none was met in the range."""
+
+    axis: int
+    up: bool
+    edge: float | None
+    label: str
+
+
+@dataclass(frozen=True)
+class Ground:
+    """The plane of two variables: names with units, grid values (n,) and (m,), the set-point if it is in the plane, the edge."""
+
+    labels: tuple[str, str]
+    x: Array
+    y: Array
+    set_point: tuple[float, float] | None
+    boundaries: tuple[Boundary, ...]
+
+
+@dataclass(frozen=True)
+class WindowMap:
+    """Where every limit holds: margins (n, m, L) scaled by their largest size, NaN where a point has none.
+
+    `binding` (n, m) numbers the limit that binds at each point, -1 for none.
+    """
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    ground: Ground
+    limits: tuple[str, ...]
+    margins: Array
+    binding: NDArray[np.int64]
+    reaches: tuple[Reach, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Field:
+    """A quantity over the plane, (n, m); NaN where it has no value, which `absent` explains."""
+
+    title: str
+    unit: str
+    values: Array
+    absent: str
+
+
+@dataclass(frozen=True)
+class ContourMap:
+    """Quantities over the window's plane as labelled contours."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    ground: Ground
+    fields: tuple[Field, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Absent:
+    """A figure that is not drawn, and why."""
+
+    name: str
+    title: str
+    why: str
+
+
+Prepared = Curves | WindowMap | ContourMap | Absent
