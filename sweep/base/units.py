@@ -75,8 +75,25 @@ def suffix(unit: str) -> str:
     return "".join(f"_{part}" for part in [*above, *(["per", *below] if below else [])])
 
 
+def _words(dimension: str) -> str:
+    """Return a dimension in words, with an example where its name alone is none."""
+    return f'{kind_of(dimension)}, such as "1 {si_unit(dimension)}"' if _SI.get(dimension) else kind_of(dimension)
+
+
+def kind_of(dimension: str) -> str:
+    """Return a dimension in words: "a time", "an area", "a quantity in m^3/mol/s", "a number without a unit"."""
+    if dimension == "dimensionless":
+        return "a number without a unit"
+    if dimension in _SI:
+        return f"{'an' if dimension[0] in 'aeiou' else 'a'} {dimension}"
+    parts = re.findall(r"([a-z]+)\*\*\((-?)([\d.]+)\)", dimension)
+    powers = [(sign, name if power == "1" else f"{name}^{power}") for name, sign, power in parts]
+    above = "*".join(part for sign, part in powers if not sign) or "1"
+    return "a quantity in " + (above + "".join(f"/{part}" for sign, part in powers if sign) if powers else dimension)
+
+
 def _split(text: str, dimension: str) -> tuple[float, str]:
-    wanted = f'a {dimension}, such as "1 {si_unit(dimension)}"'.replace("^", "")
+    wanted = _words(dimension)
     if re.match(r"^\s*[+-]?\d+,\d", text):
         raise UnitFault(wanted, "the decimal sign is a point; a comma is not read")
     found = _QUANTITY.match(text) if len(text) <= _LONGEST else None
@@ -101,21 +118,21 @@ def to_si(text: str, dimension: str) -> float:
     target = si_unit(dimension)
     registry = _registry()
     if not unit and target:
-        raise UnitFault(f"a unit of {dimension}", "every quantity stands with its unit")
+        raise UnitFault(_words(dimension), "every quantity stands with its unit")
     try:
         value = float(registry.Quantity(number, _plain(unit)).to(target).magnitude)
         zero = float(registry.Quantity(0.0, _plain(unit)).to(target).magnitude) if dimension == "temperature difference" else 0.0
     except pint.UndefinedUnitError as error:
         near = _nearest(unit) or target
-        raise UnitFault(f"a unit of {dimension}, such as {near}", f"unknown unit {_names(error)} in {unit!r}") from None
+        raise UnitFault(f"a unit of {dimension}, such as {near}" if dimension in _SI else _words(dimension), f"unknown unit {_names(error)} in {unit!r}") from None
     except pint.DimensionalityError:
-        raise UnitFault(f"a {dimension}, in {target} or the like", f"{unit or 'a bare number'} measures something else") from None
+        raise UnitFault(_words(dimension), f"{unit or 'a bare number'} measures something else") from None
     except Exception:
-        raise UnitFault(f"a unit of {dimension}, such as {target}", f"{unit!r} cannot be read as a unit") from None
+        raise UnitFault(_words(dimension), f"{unit!r} cannot be read as a unit") from None
     if zero != 0.0:
         raise UnitFault("a difference in K", f"{unit} counts from a zero; a difference does not")
     if not math.isfinite(value):
-        raise UnitFault(f"a {dimension}", "the number is not finite")
+        raise UnitFault(_words(dimension), "the number is not finite")
     if dimension == "temperature" and value < 0.0:
         raise UnitFault("a temperature above absolute zero", f"{text!r} is below it")
     return value
