@@ -155,7 +155,7 @@ def _fault_fill(reader: Reader, found: Brought, room: float, target: Target | No
         reader.fault("vessel.volume", f"{found.fill:.6g} m3 of liquid at {where}", expected, because)
     elif not sum(found.charged.values()) > 0.0:
         reader.fault("recipe.charge", f"0 mol at {where}", "some amount above zero", "a batch is made of something")
-    elif target is not None and found.moles.get(target.species, 0.0) <= 0.0 and not reader.broken("target"):
+    elif target is not None and found.moles.get(target.species, 0.0) <= 0.0 and not (reader.broken("target") or reader.broken("recipe")):
         expected, because = "an amount above zero", "what is never brought in cannot be converted"
         reader.fault("target.species", f"0 mol of {target.species} at {where}", expected, because)
     else:

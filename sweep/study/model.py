@@ -158,8 +158,8 @@ def unset(path: str) -> str:
 
 def differs(path: str) -> bool:
     """Tell whether a quantity may differ from point to point: what is of the batch, not of the question or of the method."""
-    of_the_batch = path.startswith(("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events."))
-    return (of_the_batch or path in ("target.conversion", "batch_time.longest")) and not path.endswith(".molar_mass")
+    of_the_batch = path.startswith(("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")) or path == "batch_time.longest"
+    return of_the_batch and not path.endswith(".molar_mass")
 
 
 @dataclass(frozen=True)
