@@ -14,6 +14,10 @@ _FACTOR = re.compile(r"([*/]?)\s*([A-Za-z%°µ]+|1)(?:\^?([+-]?[\d.]+))?")
 _POWER = r"(?:\^|\*\*)\s*(?:[+-]?\d{1,2}(?:\.\d{1,12})?|\(\s*[+-]?\d{1,2}(?:\.\d{1,12})?(?:\s*/\s*\d{1,2})?\s*\))(?!\s*(?:\^|\*\*))"
 _UNIT = re.compile(rf"(?:[A-Za-zµ°%][A-Za-z]*[23]?(?![\w.])|{_POWER}|(?<![\w.])1\s*(?=/)|[*/·()]|\s+)*")
 _CUBED = re.compile(r"\b((?:[kdcmµun]|da)?m|ft|in|yd)([23])\b")
+_PREFIXED = frozenset(
+    ("meter", "gram", "second", "mole", "joule", "watt", "pascal", "kelvin", "liter", "bar", "calorie", "molar", "newton", "hertz", "meter_Hg",
+     "watt_hour")
+)  # fmt: skip
 _LONGEST = 100  # characters of a quantity
 _REFUSED = {
     "C": "degC (C is coulomb)", "R": "degR (R is the gas constant)", "k": "a full unit (k is not one)", "pct": "%",
@@ -117,14 +121,17 @@ def to_si(text: str, dimension: str) -> float:
     number, unit = _split(text, dimension)
     target = si_unit(dimension)
     registry = _registry()
+    if odd := _odd_prefix(unit):
+        near = _nearest(unit) or target
+        raise UnitFault(f"a unit, such as {near}", f"unknown unit {odd!r} in {unit!r}")
     if not unit and target:
         raise UnitFault(_words(dimension), "every quantity stands with its unit")
     try:
         value = float(registry.Quantity(number, _plain(unit)).to(target).magnitude)
         zero = float(registry.Quantity(0.0, _plain(unit)).to(target).magnitude) if dimension == "temperature difference" else 0.0
     except pint.UndefinedUnitError as error:
-        near = _nearest(unit) or target
-        raise UnitFault(f"a unit of {dimension}, such as {near}" if dimension in _SI else _words(dimension), f"unknown unit {_names(error)} in {unit!r}") from None
+        expected = f"a unit of {dimension}, such as {_nearest(unit) or target}" if dimension in _SI else _words(dimension)
+        raise UnitFault(expected, f"unknown unit {_names(error)} in {unit!r}") from None
     except pint.DimensionalityError:
         raise UnitFault(_words(dimension), f"{unit or 'a bare number'} measures something else") from None
     except Exception:
@@ -136,6 +143,15 @@ def to_si(text: str, dimension: str) -> float:
     if dimension == "temperature" and value < 0.0:
         raise UnitFault("a temperature above absolute zero", f"{text!r} is below it")
     return value
+
+
+def _odd_prefix(unit: str) -> str:
+    """Return a name that is no unit but for a prefix that nobody writes there ("hh", a hundred hours); "" where there is none."""
+    for name in re.findall(r"[A-Za-zµ°%]+", _plain(unit)):
+        read = _registry().parse_unit_name(name)
+        if read and all(prefix and base not in _PREFIXED for prefix, base, _ in read):
+            return str(name)
+    return ""
 
 
 def unit_of(text: str) -> str:

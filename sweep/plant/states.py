@@ -66,7 +66,8 @@ def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) ->
             used = np.flatnonzero(nu[j] < 0.0)
             if not used.size:
                 continue
-            extent = np.where(moving, (left[..., used] / -nu[j, used]).min(axis=-1), 0.0)  # what is settled keeps its bits, whatever its neighbours do
+            # what is settled keeps its bits, whatever its neighbours do
+            extent = np.where(moving, (left[..., used] / -nu[j, used]).min(axis=-1), 0.0)
             left = np.maximum(left + extent[..., None] * nu[j], 0.0)
             heat += extent * weights[..., j]
             moved |= extent > scale

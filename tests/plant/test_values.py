@@ -24,7 +24,7 @@ STUDY = read_study(Path(__file__).parents[2] / "studies" / "acylation.toml")
         ({"dosing_time": [-np.inf]}, "points: dosing_time is -inf in row 0"),
         ({"dosing_time": ["1 h"]}, "points: dosing_time is not a column of numbers"),
         ({"dosing_time": [None]}, "points: dosing_time is nan in row 0"),
-        ({"dosing_time": [1.0], "recipe.feeds.anhydride.duration": [1.0]}, "points: columns dosing_time and recipe.feeds.anhydride.duration both set"),
+        ({"dosing_time": [1.0], "recipe.feeds.anhydride.duration": [1.0]}, "dosing_time and recipe.feeds.anhydride.duration both set"),
         ({"charge_temperature": [320.0], "cooling.start": [320.0]}, "points: columns charge_temperature and cooling.start both set cooling.start"),
         ({"target.conversion": [0.9]}, "points: target.conversion cannot differ from point to point"),
         ({"accuracy.relative": [1e-9]}, "points: accuracy.relative cannot differ from point to point"),
