@@ -10,11 +10,18 @@ if TYPE_CHECKING:
     import pint
 
 _QUANTITY = re.compile(r"^\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3})?)\s*(\S.*?)?\s*$")
-_UNIT = re.compile(r"^[A-Za-z0-9µ°%·/*^().\s-]{1,60}$")
 _FACTOR = re.compile(r"([*/]?)\s*([A-Za-z%°µ]+|1)(?:\^?([+-]?[\d.]+))?")
+_POWER = r"(?:\^|\*\*)\s*(?:[+-]?\d{1,2}(?:\.\d{1,12})?|\(\s*[+-]?\d{1,2}(?:\.\d{1,12})?(?:\s*/\s*\d{1,2})?\s*\))(?!\s*(?:\^|\*\*))"
+_UNIT = re.compile(rf"(?:[A-Za-zµ°%][A-Za-z]*[23]?(?![\w.])|{_POWER}|(?<![\w.])1\s*(?=/)|[*/·()]|\s+)*")
+_CUBED = re.compile(r"\b((?:[kdcmµun]|da)?m|ft|in|yd)([23])\b")
+_PREFIXED = frozenset(
+    ("meter", "gram", "second", "mole", "joule", "watt", "pascal", "kelvin", "liter", "bar", "calorie", "molar", "newton", "hertz", "meter_Hg",
+     "watt_hour")
+)  # fmt: skip
+_LONGEST = 100  # characters of a quantity
 _REFUSED = {
     "C": "degC (C is coulomb)", "R": "degR (R is the gas constant)", "k": "a full unit (k is not one)", "pct": "%",
-    "barg": "bar, absolute", "psig": "psi, absolute",
+    "barg": "bar, absolute", "psig": "psi, absolute", "ton": "t, for 1000 kg (ton is 2000 lb)",
 }  # fmt: skip
 _SI = {
     "temperature": "K", "temperature difference": "K", "time": "s", "volume": "m^3", "amount": "mol", "mass": "kg",
@@ -47,9 +54,12 @@ def _registry() -> "pint.UnitRegistry[Any]":
         registry: pint.UnitRegistry[Any] = pint.UnitRegistry(cache_folder=":auto:")
     except OSError:
         registry = pint.UnitRegistry()
-    registry.define("m3 = m**3")
-    registry.define("m2 = m**2")
     return registry
+
+
+def _plain(unit: str) -> str:
+    """Return a unit with its squares and cubes written out: dm3 is (dm)^3, and never a tenth of a cubic metre."""
+    return _CUBED.sub(r"\1**\2", unit)
 
 
 def si_unit(dimension: str) -> str:
@@ -69,20 +79,38 @@ def suffix(unit: str) -> str:
     return "".join(f"_{part}" for part in [*above, *(["per", *below] if below else [])])
 
 
+def _words(dimension: str) -> str:
+    """Return a dimension in words, with an example where its name alone is none."""
+    return f'{kind_of(dimension)}, such as "1 {si_unit(dimension)}"' if _SI.get(dimension) else kind_of(dimension)
+
+
+def kind_of(dimension: str) -> str:
+    """Return a dimension in words: "a time", "an area", "a quantity in m^3/mol/s", "a number without a unit"."""
+    if dimension == "dimensionless":
+        return "a number without a unit"
+    if dimension in _SI:
+        return f"{'an' if dimension[0] in 'aeiou' else 'a'} {dimension}"
+    parts = re.findall(r"([a-z]+)\*\*\((-?)([\d.]+)\)", dimension)
+    powers = [(sign, name if power == "1" else f"{name}^{power}") for name, sign, power in parts]
+    above = "*".join(part for sign, part in powers if not sign) or "1"
+    return "a quantity in " + (above + "".join(f"/{part}" for sign, part in powers if sign) if powers else dimension)
+
+
 def _split(text: str, dimension: str) -> tuple[float, str]:
-    wanted = f'a {dimension}, such as "1 {si_unit(dimension)}"'.replace("^", "")
+    wanted = _words(dimension)
     if re.match(r"^\s*[+-]?\d+,\d", text):
         raise UnitFault(wanted, "the decimal sign is a point; a comma is not read")
-    found = _QUANTITY.match(text)
+    found = _QUANTITY.match(text) if len(text) <= _LONGEST else None
     if not found:
         raise UnitFault(wanted, "a quantity is a number and its unit")
     number, unit = float(found[1]), found[2] or ""
     if not math.isfinite(number):
         raise UnitFault(wanted, "the number is not finite")
-    if unit in _REFUSED:
-        raise UnitFault(_REFUSED[unit], f"the unit {unit!r} is not what it seems")
-    if unit and not _UNIT.match(unit):
-        raise UnitFault(wanted, f"the unit {unit!r} holds signs that no unit has")
+    for name in re.findall(r"[A-Za-zµ°]+", unit):
+        if name in _REFUSED:
+            raise UnitFault(_REFUSED[name], f"the unit {name!r} is not what it seems")
+    if not _UNIT.fullmatch(unit):
+        raise UnitFault(wanted, f"{unit!r} holds signs or numbers that no unit has")
     return number, unit
 
 
@@ -93,24 +121,37 @@ def to_si(text: str, dimension: str) -> float:
     number, unit = _split(text, dimension)
     target = si_unit(dimension)
     registry = _registry()
-    if not unit and target:
-        raise UnitFault(f"a unit of {dimension}", "every quantity stands with its unit")
-    if dimension == "temperature difference" and "deg" in unit and "delta" not in unit:
-        raise UnitFault("a difference in K", "degC counts from a zero; a difference does not")
-    try:
-        value = float(registry.Quantity(number, unit).to(target).magnitude)
-    except pint.UndefinedUnitError as error:
+    if odd := _odd_prefix(unit):
         near = _nearest(unit) or target
-        raise UnitFault(f"a unit of {dimension}, such as {near}", f"unknown unit {_names(error)} in {unit!r}") from None
+        raise UnitFault(f"a unit, such as {near}", f"unknown unit {odd!r} in {unit!r}")
+    if not unit and target:
+        raise UnitFault(_words(dimension), "every quantity stands with its unit")
+    try:
+        value = float(registry.Quantity(number, _plain(unit)).to(target).magnitude)
+        zero = float(registry.Quantity(0.0, _plain(unit)).to(target).magnitude) if dimension == "temperature difference" else 0.0
+    except pint.UndefinedUnitError as error:
+        expected = f"a unit of {dimension}, such as {_nearest(unit) or target}" if dimension in _SI else _words(dimension)
+        raise UnitFault(expected, f"unknown unit {_names(error)} in {unit!r}") from None
     except pint.DimensionalityError:
-        raise UnitFault(f"a {dimension}, in {target} or the like", f"{unit or 'a bare number'} measures something else") from None
+        raise UnitFault(_words(dimension), f"{unit or 'a bare number'} measures something else") from None
     except Exception:
-        raise UnitFault(f"a unit of {dimension}, such as {target}", f"{unit!r} cannot be read as a unit") from None
+        raise UnitFault(_words(dimension), f"{unit!r} cannot be read as a unit") from None
+    if zero != 0.0:
+        raise UnitFault("a difference in K", f"{unit} counts from a zero; a difference does not")
     if not math.isfinite(value):
-        raise UnitFault(f"a {dimension}", "the number is not finite")
+        raise UnitFault(_words(dimension), "the number is not finite")
     if dimension == "temperature" and value < 0.0:
         raise UnitFault("a temperature above absolute zero", f"{text!r} is below it")
     return value
+
+
+def _odd_prefix(unit: str) -> str:
+    """Return a name that is no unit but for a prefix that nobody writes there ("hh", a hundred hours); "" where there is none."""
+    for name in re.findall(r"[A-Za-zµ°%]+", _plain(unit)):
+        read = _registry().parse_unit_name(name)
+        if read and all(prefix and base not in _PREFIXED for prefix, base, _ in read):
+            return str(name)
+    return ""
 
 
 def unit_of(text: str) -> str:
@@ -121,7 +162,7 @@ def unit_of(text: str) -> str:
 
 def from_si(value: float, unit: str, dimension: str | None = None) -> float:
     """Return an SI value in another unit; SI is the dimension's own unit, or the base units of `unit`."""
-    registry = _registry()
+    registry, unit = _registry(), _plain(unit)
     base = si_unit(dimension) if dimension is not None else registry.Quantity(1.0, unit).to_base_units().units
     return float(registry.Quantity(value, base).to(unit).magnitude)
 

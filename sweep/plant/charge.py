@@ -30,15 +30,18 @@ class Brought:
             start, end, time = start[:, :, None], end[:, :, None], time[:, None, :]
         else:
             time = time[:, None]
-        return np.clip((time - start) / (end - start), 0.0, 1.0)
+        share: Floats = np.clip((time - start) / (end - start), 0.0, 1.0)
+        return share
 
     def total(self) -> Floats:
         """Return all moles brought in by the end, (N, I)."""
-        return self.charged + self.fed.sum(axis=1)
+        total: Floats = self.charged + self.fed.sum(axis=1)
+        return total
 
     def last_feed(self) -> Floats:
         """Return when the last feed ends (s), (N,); 0 without feeds."""
-        return self.end.max(axis=1, initial=0.0)
+        last: Floats = self.end.max(axis=1, initial=0.0)
+        return last
 
 
 def molar_volume(values: Values, name: str) -> Floats:

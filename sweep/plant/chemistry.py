@@ -56,7 +56,7 @@ def _terms(reaction: Reaction, index: dict[str, int]) -> tuple[Term, ...]:
 
 def carries_extents(nu: Floats) -> bool:
     """Tell whether extents can stand for amounts: where reactions are independent no cycle can turn an extent over without end."""
-    return nu.shape[1] > 0 and np.linalg.matrix_rank(nu) == nu.shape[1]
+    return nu.shape[1] > 0 and bool(np.linalg.matrix_rank(nu) == nu.shape[1])
 
 
 def structure_of(study: Study) -> Structure:

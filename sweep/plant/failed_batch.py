@@ -13,7 +13,8 @@ from sweep.plant import adiabatic, rates, states
 from sweep.plant.failure import march_moments
 from sweep.plant.onward import march_on
 from sweep.plant.recipe import Charged, charge_plant
-from sweep.plant.values import Floats, values_of
+from sweep.plant.sense import one_point
+from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 DRAWN = 101  # moments that draw well
@@ -35,7 +36,7 @@ class FailurePath:
 def _one(study: Study, point: Mapping[str, float] | None) -> Charged:
     if not study.asks_failure:
         raise SweepError("[failure] is not written in the study, and no limit asks for a failure figure")
-    return charge_plant(study, values_of(study, pd.DataFrame({name: [value] for name, value in (point or {}).items()}, index=[0])))
+    return charge_plant(study, one_point(study, point))
 
 
 def failure_times(study: Study, point: Mapping[str, float] | None = None, times: Sequence[float] | None = None) -> pd.DataFrame:

@@ -10,8 +10,9 @@ from sweep.kernel.engine import march
 from sweep.plant import rates, states
 from sweep.plant.onward import segment_at
 from sweep.plant.recipe import Charged, charge_plant, has_heat_capacities
+from sweep.plant.sense import one_point
 from sweep.plant.target import product_mass, productivity_unit, vessel_volume
-from sweep.plant.values import Floats, values_of
+from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 DRAWN = 401  # times that draw well
@@ -19,9 +20,7 @@ DRAWN = 401  # times that draw well
 
 def profile(study: Study, point: Mapping[str, float] | None = None, times: Sequence[float] | None = None) -> pd.DataFrame:
     """Return a batch at times (s), in their order: time, temperatures, volume, amounts, conversion, accumulation; SI."""
-    point = dict(point or {})
-    frame = pd.DataFrame({name: [value] for name, value in point.items()}, index=[0])
-    plant = charge_plant(study, values_of(study, frame))
+    plant = charge_plant(study, one_point(study, point))
     final = float(plant.constants[0, at.T_FINAL])
     wanted = np.asarray(times, dtype=np.float64) if times is not None else np.union1d(np.linspace(0.0, final, DRAWN), plant.boundaries[0])
     order = np.argsort(wanted, kind="stable")
@@ -35,7 +34,7 @@ def profile(study: Study, point: Mapping[str, float] | None = None, times: Seque
 
 def batch_longest(study: Study, point: Mapping[str, float]) -> tuple[float, float]:
     """Return when the last feed ends and when the march ends (s): between them a batch may end."""
-    plant = charge_plant(study, values_of(study, pd.DataFrame({name: [value] for name, value in point.items()}, index=[0])))
+    plant = charge_plant(study, one_point(study, point))
     return float(plant.brought.last_feed()[0]), float(plant.constants[0, at.T_FINAL])
 
 
@@ -43,7 +42,7 @@ def productivity_of(study: Study, point: Mapping[str, float], table: pd.DataFram
     """Return "kg" or "mol" and the productivity (per m3 and s) were the batch ended at each line of a profile; "" without a product."""
     if study.target is None or study.target.product is None:
         return "", np.zeros(0)
-    values = values_of(study, pd.DataFrame({name: [value] for name, value in point.items()}, index=[0]))
+    values = one_point(study, point)
     plant = charge_plant(study, values)
     product = [s.name for s in study.species].index(study.target.product)
     formed = table[f"n_{study.target.product}_mol"].to_numpy() - plant.brought.total()[0, product]

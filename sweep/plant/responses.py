@@ -12,8 +12,9 @@ from sweep.plant import states
 from sweep.plant.failure import failure_figures
 from sweep.plant.moments import Batch, refine, sampled
 from sweep.plant.recipe import TOO_HOT, Charged, charge_plant, has_heat_capacities
+from sweep.plant.sense import blank, sensible_values
 from sweep.plant.target import CAUSES, productivity_unit, target_columns, why_not
-from sweep.plant.values import Floats, values_of
+from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 ACCUMULATION_TIMES = 65  # evenly over the march, beside the recipe's own boundaries
@@ -68,14 +69,15 @@ def responses(study: Study) -> tuple[Response, ...]:
 
 def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     """Return inputs and responses of each point, same index. points: a column per variable or dotted path, SI."""
-    values = values_of(study, points)
+    values = sensible_values(study, points)
     plant = charge_plant(study, values)
     times = _sample_times(plant)
     tolerance = float(study.values.get("accuracy.relative", 1e-6))
     marched = march(plant.program, plant.blocks, plant.starts, plant.constants, times, tolerance)
     found = _respond(study, plant, marched, times, tolerance)
     columns = {r.column: pd.array(found[r.column], dtype=_DTYPES[r.kind]) for r in responses(study)}
-    return pd.concat([points, pd.DataFrame(columns, index=points.index)], axis=1)
+    table = blank(values, pd.DataFrame(columns).set_axis(points.index))
+    return pd.concat([points, table], axis=1)
 
 
 def _sample_times(plant: Charged) -> Floats:

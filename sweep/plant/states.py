@@ -59,13 +59,15 @@ def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) ->
     heat = np.zeros(left.shape[:-1])
     weights = given_off if left.ndim == 2 else given_off[:, None, :]
     scale = 1e-12 * left.sum(axis=-1)
+    moved = np.ones(left.shape[:-1], dtype=bool)
     for _ in range(4 * ranks.size + 1):
-        moved = np.zeros(left.shape[:-1], dtype=bool)
+        moving, moved = moved, np.zeros(left.shape[:-1], dtype=bool)
         for j in ranks:
             used = np.flatnonzero(nu[j] < 0.0)
             if not used.size:
                 continue
-            extent = (left[..., used] / -nu[j, used]).min(axis=-1)
+            # what is settled keeps its bits, whatever its neighbours do
+            extent = np.where(moving, (left[..., used] / -nu[j, used]).min(axis=-1), 0.0)
             left = np.maximum(left + extent[..., None] * nu[j], 0.0)
             heat += extent * weights[..., j]
             moved |= extent > scale

@@ -1,14 +1,14 @@
 """The quantities of a study for many points at once: what is written, overlaid by each point's columns and by events."""
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
 from sweep.base.errors import SweepError
-from sweep.study.model import Study
+from sweep.study.model import Bound, Study, differs, unset
 
 Floats = NDArray[np.float64]
 
@@ -19,6 +19,7 @@ class Values:
 
     count: int
     given: Mapping[str, float | Floats]
+    refused: Mapping[int, str] = field(default_factory=dict)  # point -> why its values make no sense; the written ones stand in for them
 
     def has(self, path: str) -> bool:
         """Tell whether a quantity is written."""
@@ -36,14 +37,63 @@ class Values:
 
     def overlaid(self, sets: Mapping[str, float | Floats]) -> "Values":
         """Return these quantities with some replaced."""
-        return Values(self.count, {**self.given, **sets})
+        return Values(self.count, {**self.given, **sets}, self.refused)
+
+    def refusing(self, refused: Mapping[int, str], written: Mapping[str, float]) -> "Values":
+        """Return these quantities with the written ones at the points that are refused."""
+        given = dict(self.given)
+        rows = list(refused)
+        for path, value in given.items():
+            if isinstance(value, np.ndarray):
+                kept = value.copy()
+                kept[rows] = written[path]
+                given[path] = kept
+        return Values(self.count, given, refused)
 
 
 def values_of(study: Study, points: pd.DataFrame) -> Values:
-    """Return the quantities of each point: columns are variables or dotted paths, SI."""
+    """Return the quantities of each point: columns are variables or dotted paths, SI.
+
+    SweepError where a column is unknown, sets what another sets or what cannot differ, or holds what is no finite number. A finite
+    number that makes no sense (a negative duration) refuses its own point only.
+    """
     sets: dict[str, float | Floats] = {}
-    for column in points.columns:
-        array = points[column].to_numpy(dtype=np.float64, copy=True)
-        for path in study.paths_of(str(column)):
-            sets[path] = array
-    return Values(len(points), {**study.values, **sets})
+    owners: dict[str, str] = {}
+    refused: dict[int, str] = {}
+    for place, column in enumerate(map(str, points.columns)):
+        paths, array = study.paths_of(column), _numbers(points.iloc[:, place], column)
+        for path in paths:
+            if path in owners:
+                raise SweepError(f"points: columns {owners[path]} and {column} both set {path}")
+            if not differs(path):
+                raise SweepError(f"points: {column} cannot differ from point to point; it is written in the study")
+            owners[path] = column
+            sets[path] = _sensible(study, path, array, refused)
+    return Values(len(points), {**study.values, **sets}, refused)
+
+
+def _numbers(column: pd.Series, name: str) -> Floats:
+    """Return a column as floats; SweepError where it holds something else, NaN or infinity, with the first row that does."""
+    try:
+        array: Floats = column.to_numpy(dtype=np.float64, copy=True)
+    except (TypeError, ValueError) as error:
+        raise SweepError(f"points: {name} is not a column of numbers ({error})") from None
+    bad = np.flatnonzero(~np.isfinite(array))
+    if bad.size:
+        raise SweepError(f"points: {name} is {array[bad[0]]} in row {column.index[bad[0]]}; a finite number in SI is expected")
+    return array
+
+
+def _sensible(study: Study, path: str, array: Floats, refused: dict[int, str]) -> Floats:
+    """Return a column with the written value where its own breaks the quantity's bound; note those points and why."""
+    bound = study.bounds.get(unset(path))
+    if study.dimensions.get(path) == "temperature":
+        bound = Bound(0.0, True, np.inf, "absolute zero is never reached")
+    if bound is None:
+        return array
+    bad = [int(n) for n in np.flatnonzero(~((array > bound.low) if bound.strict else (array >= bound.low)) | (array >= bound.below))]
+    for n in bad:
+        refused.setdefault(n, f"{path} is {array[n]:.6g}, and should be {bound.words}: {bound.because}")
+    array = array.copy()
+    array[bad] = study.values[path]
+    return array

@@ -28,8 +28,21 @@ def read_recipe(reader: Reader, table: dict[str, Any], names: set[str]) -> tuple
         reader.keep("recipe.turnaround", 0.0, "s", "time")
     reader.at_least("recipe.turnaround", 0.0, False, "a turnaround is not negative")
     charge = _charge(reader, reader.table(table, "charge", "recipe.charge"), names)
-    feeds = reader.names(reader.table(table, "feeds", "recipe.feeds"), "recipe.feeds")
-    return charge, tuple(_feed(reader, name, feed, names) for name, feed in feeds.items()), to_target
+    written = reader.names(reader.table(table, "feeds", "recipe.feeds"), "recipe.feeds")
+    feeds = tuple(_feed(reader, name, feed, names) for name, feed in written.items())
+    _count_equivalents(reader, charge, feeds)
+    return charge, feeds, to_target
+
+
+def _count_equivalents(reader: Reader, charge: Charge, feeds: tuple[Feed, ...]) -> None:
+    """Fault equivalents of what is not brought in by an amount of its own: they would count as nothing."""
+    own = {*charge.amounts, *charge.concentrations, charge.balance}
+    own |= {s for feed in feeds for s in feed.species if s not in feed.equivalents}
+    for feed in feeds:
+        for species, of in feed.equivalents.items():
+            if of not in own and not reader.broken("recipe.charge"):
+                place = f"recipe.feeds.{feed.name}.amount.{species}.of"
+                reader.fault(place, repr(of), "a species that is charged, or fed by an amount", "equivalents of nothing are nothing")
 
 
 def _species(reader: Reader, table: dict[str, Any], path: str, names: set[str]) -> list[str]:
@@ -58,6 +71,11 @@ def _charge(reader: Reader, table: dict[str, Any], names: set[str]) -> Charge:
     if balance is not None and (not isinstance(balance, str) or balance not in names):
         reader.fault(f"{path}.balance", repr(balance), "a species of this study", "it fills what the others' volumes leave")
         balance = None
+    for key in ("amount", "concentration"):
+        if balance in found[key]:
+            reader.fault(f"{path}.balance", balance, f"a species without its own {key}", f"{path}.{key}.{balance} would not count")
+    if not (found["amount"] or found["concentration"] or balance is not None or reader.broken(path)):
+        reader.fault(path, "nothing", "a concentration, an amount, or a balance", "a batch is made of something")
     if found["concentration"] or balance is not None or not found["amount"]:
         reader.needed(f"{path}.volume", "a concentration, or a balance, is of a volume")
     own = [] if balance is None else [*found["amount"], *found["concentration"], balance]
@@ -150,7 +168,8 @@ def _event(reader: Reader, path: str, entry: object) -> Event | None:
     reader.only(entry, path, ("time", "set"))
     if "time" in entry:
         reader.quantity(f"{path}.time", entry["time"], "time")
-    reader.needed(f"{path}.time", "an event happens at a time")
+    if "when" not in entry:
+        reader.needed(f"{path}.time", "an event happens at a time")
     reader.at_least(f"{path}.time", 0.0, False, "a batch begins at zero")
     sets: dict[str, float | str] = {}
     table = reader.table(entry, "set", f"{path}.set")
@@ -162,7 +181,10 @@ def _event(reader: Reader, path: str, entry: object) -> Event | None:
             sets[name] = reader.choice(table, f"{path}.set", name, KINDS, "isothermal")
         elif name in _SETTABLE:
             number = reader.quantity(f"{path}.set.{name}", value, _SETTABLE[name])
-            if number is not None:
+            if name not in reader.values:
+                if not reader.broken(name):
+                    reader.fault(f"{path}.set.{name}", name, f"{name} written in its section too", "before the event it has no value")
+            elif number is not None:
                 reader.within(f"{path}.set.{name}", name, number)
                 sets[name] = number
     time = reader.values.get(f"{path}.time")

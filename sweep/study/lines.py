@@ -49,9 +49,12 @@ def lines_of(text: str) -> dict[str, int]:
 
 
 def line_of(found: dict[str, int], path: str) -> int:
-    """Return the line of a path, or of the nearest table around it; 1 where nothing of it stands."""
+    """Return the line of a path, of the first key in it, or of the nearest table around it; 1 where nothing of it stands."""
     while path:
         if path in found:
             return found[path]
+        inside = [line for key, line in found.items() if key.startswith(path + ".")]
+        if inside:
+            return min(inside)
         path = path.rpartition(".")[0]
     return 1

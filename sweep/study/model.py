@@ -131,8 +131,40 @@ class FailureSettings:
 
 
 @dataclass(frozen=True)
+class Bound:
+    """What a quantity may be (SI): at least, or above, `low`, and below `below`."""
+
+    low: float
+    strict: bool
+    below: float
+    because: str
+
+    def holds(self, value: float) -> bool:
+        """Tell whether a value is within."""
+        return (value > self.low if self.strict else value >= self.low) and value < self.below
+
+    @property
+    def words(self) -> str:
+        """What would be right."""
+        if self.below < float("inf"):
+            return f"between {self.low:g} and {self.below:g}"
+        return f"{'above' if self.strict else 'at least'} {self.low:g}"
+
+
+def unset(path: str) -> str:
+    """Return the quantity that an event's path sets ("events.0.set.vessel.U"), or the path itself."""
+    return path.partition(".set.")[2] or path
+
+
+def differs(path: str) -> bool:
+    """Tell whether a quantity may differ from point to point: what is of the batch, not of the question or of the method."""
+    of_the_batch = path.startswith(("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")) or path == "batch_time.longest"
+    return of_the_batch and not path.endswith(".molar_mass")
+
+
+@dataclass(frozen=True)
 class Study:
-    """A study file, understood. values: path -> SI; units: path -> unit as written; warnings: legal but doubtful."""
+    """A study file, understood. values: path -> SI; units: path -> unit as written; bounds: path -> what it may be; warnings: legal but doubtful."""
 
     name: str
     file: str
@@ -158,6 +190,7 @@ class Study:
     values: Mapping[str, float]
     units: Mapping[str, str]
     dimensions: Mapping[str, str]
+    bounds: Mapping[str, Bound]
     asks_failure: bool = False
     warnings: tuple[Fault, ...] = ()
 

@@ -4,8 +4,8 @@ import difflib
 from pathlib import Path
 from typing import Any
 
-from sweep.base.units import UnitFault, unit_of
-from sweep.study.model import SETTABLE, BatchTimeSettings, FailureSettings, Limit, Plan, Target, Variable, WindowSettings
+from sweep.base.units import UnitFault, kind_of, unit_of
+from sweep.study.model import BatchTimeSettings, FailureSettings, Limit, Plan, Species, Target, Variable, WindowSettings, differs
 from sweep.study.reader import Reader, converted
 
 _PLAIN = {
@@ -14,7 +14,11 @@ _PLAIN = {
     "mtt": ("_K", "temperature"), "tmr_ad": ("_s", "time"), "time_to_target": ("_s", "time"), "cycle_time": ("_s", "time"),
     "cooling_duty": ("_W", "power"), "heat_release": ("_W", "power"), "productivity": ("", "productivity"),
 }  # fmt: skip
-
+_BY_SPECIES = ("yield_", "per_product_", "fraction_")
+_TAKEN = frozenset(
+    (*_PLAIN, *(name + ending for name, (ending, _) in _PLAIN.items()), "status", "reason", "time_of_max_temperature_s", "mtsr_time_s",
+     "tmr_ad_time_s", "tmr_ad_censored", "highest_conversion", "most_productive_time_s", "most_productive_conversion", "energy_balance_error")
+)  # fmt: skip
 
 
 def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], brought: set[str]) -> Target | None:
@@ -33,7 +37,7 @@ def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], b
                 "no such species is written",
             )
             return None
-    if table["species"] not in brought:
+    if table["species"] not in brought and not reader.broken("recipe"):
         reader.fault(
             "target.species",
             table["species"],
@@ -43,18 +47,14 @@ def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], b
     if "conversion" in table:
         reader.quantity("target.conversion", table["conversion"], "dimensionless")
     reader.needed("target.conversion", "a target is a conversion to reach")
-    value = reader.values.get("target.conversion")
-    if value is not None and not 0.0 < value < 1.0:
-        reader.fault(
-            "target.conversion",
-            value,
-            "a number between 0 and 1",
-            "a conversion is a share, and complete conversion takes for ever",
-        )
+    reader.at_least("target.conversion", 0.0, True, "a conversion is a share, and complete conversion takes for ever", 1.0)
+    if table["species"] == table.get("product"):
+        reader.fault("target.product", table["product"], "another species", "what is converted is not its own product")
     return Target(table["species"], table.get("product"))
 
 
-def _response(reader: Reader, name: str, names: set[str], target: Target | None) -> tuple[str, str] | None:
+def _response(reader: Reader, name: str, counted: set[str], target: Target | None) -> tuple[str, str] | None:
+    """Return the column and the dimension of a response; `counted`: the species that are neither solvent nor gas."""
     if name == "productivity":
         mass = target is not None and f"species.{target.product}.molar_mass" in reader.values
         unit = "kg/m^3/s" if mass else "mol/m^3/s"
@@ -62,23 +62,25 @@ def _response(reader: Reader, name: str, names: set[str], target: Target | None)
     if name in _PLAIN:
         ending, dimension = _PLAIN[name]
         return name + ending, dimension
-    for prefix in ("yield_", "per_product_", "fraction_"):
-        if name.startswith(prefix) and name.removeprefix(prefix) in names:
-            return name, "dimensionless"
+    for prefix in _BY_SPECIES:
+        if name.startswith(prefix) and name.removeprefix(prefix) in counted:
+            of_itself = prefix == "per_product_" and target is not None and name.removeprefix(prefix) == target.product
+            return None if of_itself else (name, "dimensionless")
     return None
 
 
-def read_limits(reader: Reader, table: dict[str, Any], names: set[str], target: Target | None) -> tuple[Limit, ...]:
+def read_limits(reader: Reader, table: dict[str, Any], species: tuple[Species, ...], target: Target | None) -> tuple[Limit, ...]:
     """Return the limits, one record a bound."""
     result = []
+    counted = {s.name for s in species if s.role is None}
     for name, bounds in table.items():
         path = f"limits.{name}"
-        found = _response(reader, name, names, target)
+        found = _response(reader, name, counted, target)
         if found is None:
             if name == "max_pressure":
                 reader.fault(path, name, "a study without it", "not available yet")
                 continue
-            known = [*_PLAIN, *(p + s for p in ("yield_", "per_product_", "fraction_") for s in sorted(names))]
+            known = [*_PLAIN, *(p + s for p in _BY_SPECIES for s in sorted(counted) if _response(reader, p + s, counted, target))]
             near = difflib.get_close_matches(name, known, 1)
             reader.fault(path, name, near[0] if near else "one of " + ", ".join(_PLAIN), "no response has this name")
             continue
@@ -104,6 +106,9 @@ def read_variables(reader: Reader, table: dict[str, Any]) -> tuple[Variable, ...
     result = []
     for name, entry in reader.names(table, "variables").items():
         path = f"variables.{name}"
+        reader.named.add(name)
+        if name in _TAKEN or name.startswith(_BY_SPECIES):
+            reader.fault(path, name, "another name", "a response has this name")
         reader.only(entry, path, ("sets", "from", "to", "levels"))
         sets = entry.get("sets")
         sets = [sets] if isinstance(sets, str) else sets
@@ -118,11 +123,13 @@ def read_variables(reader: Reader, table: dict[str, Any]) -> tuple[Variable, ...
 
 
 def _settable(reader: Reader, place: str, path: str, name: str, owners: dict[str, str]) -> bool:
-    if path in reader.values and path.split(".")[0] not in SETTABLE:
+    if path not in reader.values and reader.broken(path):
+        return False  # it was faulted where it stands
+    if path in reader.values and not differs(path):
         reader.fault(place, path, "a quantity of the batch", "it belongs to the question and is the same for every point")
         return False
     if path not in reader.values:
-        near = difflib.get_close_matches(path, list(reader.values), 1)
+        near = difflib.get_close_matches(path, [known for known in reader.values if differs(known)], 1)
         reader.fault(place, path, near[0] if near else "a quantity that is written", "the variable sets nothing")
         return False
     if path in owners:
@@ -136,18 +143,18 @@ def _variable(reader: Reader, path: str, name: str, sets: list[str], entry: dict
     dimension = reader.dimensions[sets[0]]
     for other in sets[1:]:
         if reader.dimensions[other] != dimension:
-            reader.fault(f"{path}.sets", other, f"a {dimension}", f"{sets[0]} is a {dimension}")
+            reader.fault(f"{path}.sets", other, kind_of(dimension), f"{sets[0]} is {kind_of(dimension)}")
             return None
     ends = []
     for key in ("from", "to"):
         text = str(entry[key]) if isinstance(entry.get(key), (int, float)) and not isinstance(entry[key], bool) else entry.get(key)
         if not isinstance(text, str):
-            reader.fault(f"{path}.{key}", repr(text), f"a {dimension}", "a variable has a range")
+            reader.fault(f"{path}.{key}", repr(text), kind_of(dimension), "a variable has a range")
             continue
         try:
             value = converted(sets[0], text, dimension, reader.values)
         except UnitFault as error:
-            reader.fault(f"{path}.{key}", repr(text), error.expected, f"{sets[0]} is a {dimension}; {error.because}")
+            reader.fault(f"{path}.{key}", repr(text), error.expected, f"{sets[0]} is {kind_of(dimension)}; {error.because}")
             continue
         for one in sets:
             reader.within(f"{path}.{key}", one, value)
@@ -179,6 +186,9 @@ def read_plan(reader: Reader, table: dict[str, Any] | None, variables: tuple[Var
     reader.only(table, "plan", ("kind", "points", "file"))
     kind = reader.choice(table, "plan", "kind", ("factorial", "latin-hypercube", "sobol", "list"), "factorial")
     points, file = table.get("points"), table.get("file")
+    for key, kinds in (("points", ("latin-hypercube", "sobol")), ("file", ("list",))):
+        if key in table and kind not in kinds:
+            reader.fault(f"plan.{key}", key, f"no such key with kind {kind!r}", f"a plan of kind {kind} does not use it")
     if kind in ("latin-hypercube", "sobol") and (not isinstance(points, int) or isinstance(points, bool) or not 1 <= points <= 100_000_000):
         reader.fault("plan.points", repr(points), "a whole number of points", f"a plan of kind {kind} has a size")
         points = None
@@ -203,6 +213,8 @@ def read_window(reader: Reader, table: dict[str, Any] | None, variables: tuple[V
     reader.only(table, "window", ("axes", "at"))
     names = [v.name for v in variables]
     axes = table.get("axes")
+    if isinstance(axes, list) and any(isinstance(a, str) and a in reader.named and a not in names for a in axes):
+        return None  # the variable was faulted where it stands
     if not isinstance(axes, list) or len(axes) != 2 or axes[0] == axes[1] or not all(isinstance(a, str) and a in names for a in axes):
         reader.fault("window.axes", repr(axes), "two of " + (", ".join(names) or "[variables]"), "a window has two axes")
         return None
@@ -215,6 +227,8 @@ def read_window(reader: Reader, table: dict[str, Any] | None, variables: tuple[V
         value = reader.quantity(f"window.at.{name}", text, reader.dimensions[found.sets[0]])
         if value is not None:
             at[name] = value
+            for path in found.sets:
+                reader.within(f"window.at.{name}", path, value)
     return WindowSettings((axes[0], axes[1]), at)
 
 

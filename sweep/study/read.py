@@ -7,7 +7,7 @@ from typing import Any
 
 from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
-from sweep.study import batch, checks, equipment, question, substances
+from sweep.study import batch, checks, doubts, equipment, question, substances
 from sweep.study.lines import lines_of
 from sweep.study.model import FAILURE, Study
 from sweep.study.reader import Reader
@@ -84,7 +84,7 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     _accuracy(reader, part["accuracy"])
     failure = question.read_failure(reader, given("failure"))
     batch_time = question.read_batch_time(reader, given("batch_time"))
-    limits = question.read_limits(reader, part["limits"], names, target)
+    limits = question.read_limits(reader, part["limits"], species, target)
     variables = question.read_variables(reader, part["variables"])
     reader.swept = {path for v in variables for path in v.sets}
     plan = question.read_plan(reader, given("plan"), variables, folder)
@@ -95,16 +95,20 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     checks.check_thermal(reader, species, reactions, isothermal, why)
     checks.check_equilibria(reader, reactions)
     checks.check_limits(reader, limits, reactions, target)
-    checks.check_fill(reader, charge, feeds, variables)
+    checks.check_heat_capacities(reader, species, variables)
+    checks.check_fill(reader, charge, feeds, variables, target)
     if reader.faults:
         return None
-    checks.warn_ranges(reader, reactions, variables)
-    checks.warn_jacket(reader, kind, reactions, charge, feeds)
+    doubts.warn_ranges(reader, reactions, variables)
+    doubts.warn_jacket(reader, kind, reactions, charge, feeds)
+    doubts.warn_recipe(reader, events, feeds, to_target)
+    doubts.warn_heat_capacities(reader, species)
+    doubts.warn_rates(reader, reactions, not isothermal or "recipe.charge.temperature" in reader.swept)
     return Study(
         name=name, file=reader.file, folder=folder, text=text, digest=digest(document), title=title, seed=seed, species=species,
         reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=events, batch_to_target=to_target,
         target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
-        values=reader.values, units=reader.units, dimensions=reader.dimensions, asks_failure=asks_failure,
+        values=reader.values, units=reader.units, dimensions=reader.dimensions, bounds=reader.bounds, asks_failure=asks_failure,
         warnings=tuple(reader.warnings),
     )  # fmt: skip
 

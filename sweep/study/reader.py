@@ -7,8 +7,9 @@ from collections.abc import Iterable, Mapping
 from typing import Any
 
 from sweep.base.errors import Fault
-from sweep.base.units import UnitFault, to_si, unit_of
+from sweep.base.units import UnitFault, kind_of, to_si, unit_of
 from sweep.study.lines import line_of
+from sweep.study.model import Bound, unset
 
 _PLANNED = """
     uncertain correlations sensitivity risk ranges optimum scenarios deviations fit vessels
@@ -40,7 +41,7 @@ def converted(path: str, text: str, dimension: str, values: Mapping[str, float])
         density = values.get(f"species.{species}.density", 0.0) if other == "volume" else 1.0
         if mass <= 0.0 or density <= 0.0:
             missing = "molar_mass" if mass <= 0.0 else "density"
-            raise UnitFault(f"a {dimension} in mol", f"a {other} needs species.{species}.{missing}")
+            raise UnitFault(f"{kind_of(dimension)} in mol", f"a {other} needs species.{species}.{missing}")
         return value * mass if dimension == "molar heat capacity" else value * density / mass
     raise first
 
@@ -53,9 +54,10 @@ class Reader:
         self.values: dict[str, float] = {}
         self.units: dict[str, str] = {}
         self.dimensions: dict[str, str] = {}
-        self.bounds: dict[str, tuple[float, bool, str]] = {}
+        self.bounds: dict[str, Bound] = {}
         self.molar_masses: dict[str, float] = {}
         self.swept: set[str] = set()
+        self.named: set[str] = set()  # variables as written, those with faults too
         self.faults: list[Fault] = []
         self.warnings: list[Fault] = []
 
@@ -95,7 +97,7 @@ class Reader:
             return None
         if not isinstance(value, str):
             if dimension != "dimensionless":
-                self.fault(path, value, f"a {dimension} with its unit in quotes", "a bare number is dimensionless")
+                self.fault(path, value, f"{kind_of(dimension)} with its unit in quotes", "a bare number is dimensionless")
                 return None
             if not abs(value) <= _LARGEST:
                 self.fault(path, value, "a finite number", "nothing can be computed with it")
@@ -116,17 +118,21 @@ class Reader:
         self.values[path], self.units[path], self.dimensions[path] = value, unit, dimension
         return value
 
-    def at_least(self, path: str, bound: float, strict: bool, because: str) -> None:
-        """Refuse a kept quantity below a bound; the bound also holds for variables and events that set it."""
-        self.bounds[path] = (bound, strict, because)
+    def at_least(self, path: str, bound: float, strict: bool, because: str, below: float = math.inf) -> None:
+        """Refuse a kept quantity outside a bound; the bound also holds for variables, events and points that set it."""
+        self.bounds[path] = Bound(bound, strict, below, because)
         if path in self.values:
             self.within(path, path, self.values[path])
 
     def within(self, place: str, path: str, value: float) -> None:
         """Refuse a value that breaks the bound of a path."""
-        bound, strict, because = self.bounds.get(path, (-math.inf, False, ""))
-        if value < bound or (strict and value <= bound):
-            self.fault(place, f"{value:g} (SI)", f"{'above' if strict else 'at least'} {bound:g}", because)
+        bound = self.bounds.get(unset(path))
+        if bound is not None and not bound.holds(value):
+            self.fault(place, f"{value:g} (SI)", bound.words, bound.because)
+
+    def broken(self, start: str) -> bool:
+        """Tell whether something of a section was faulted already, so that what follows from it is not said again."""
+        return any(f.key == start or f.key.startswith(start + ".") for f in self.faults)
 
     def names(self, table: dict[str, Any], path: str) -> dict[str, dict[str, Any]]:
         """Return the sub-tables that carry a plain name; a fault for each of the others."""
@@ -151,9 +157,4 @@ class Reader:
     def needed(self, path: str, because: str) -> None:
         """Fault a quantity that is missing (and was not already faulted)."""
         if path not in self.values and not any(f.key == path for f in self.faults):
-            self.fault(path, "nothing", "a quantity", because)
-
-    def needed_if(self, missing: bool, path: str, because: str) -> None:
-        """Fault a missing quantity where a condition says that it is."""
-        if missing and not any(f.key.startswith(path) for f in self.faults):
             self.fault(path, "nothing", "a quantity", because)

@@ -183,6 +183,7 @@ def _constants(reader: Reader, path: str, table: dict[str, Any], reaction: React
             concentration_power(sum(reaction.stoichiometry.values()), False),
         )
         reader.needed(f"{path}.equilibrium_constant.value", "a reversible reaction has an equilibrium")
+        reader.at_least(f"{path}.equilibrium_constant.value", 0.0, True, "an equilibrium constant is positive")
         for s, nu in reaction.stoichiometry.items():
             if reaction.orders.get(s, 0.0) + nu < 0.0:
                 reader.fault(
