@@ -37,12 +37,13 @@ class Overview:
 def overlook(study: Study, kind: str, inputs: tuple[str, ...], tables: Iterable[pd.DataFrame]) -> Overview:
     """Count the points of a plan, a table at a time."""
     statuses: Counter[str] = Counter()
-    good, failed, total = 0, [], 0
+    good, total = 0, 0
+    failed: list[pd.DataFrame] = []
     for table in tables:
         total += len(table)
         statuses.update(table["status"].tolist())
         good += int(holds(margins(study, table)).sum())
-        if sum(map(len, failed)) < MOST_LISTED:
+        if sum(len(part) for part in failed) < MOST_LISTED:
             failed.append(table.loc[table["status"] != "done", [*inputs, "status", "reason"]])
     listed = pd.concat(failed).iloc[:MOST_LISTED] if failed else pd.DataFrame(columns=[*inputs, "status", "reason"])
     names = {name: name + suffix(si_unit(study.dimensions[study.paths_of(name)[0]])) for name in inputs}

@@ -49,7 +49,7 @@ def find_folder() -> Path | None:
 
 FOLDER = find_folder()
 if FOLDER is not None:
-    numba.config.CACHE_DIR = str(FOLDER)
+    numba.config.CACHE_DIR = str(FOLDER)  # type: ignore[attr-defined]
 
 
 def is_empty() -> bool:

@@ -203,7 +203,7 @@ def failure_figures(study: Study, plant: Charged, batch: Batch, process: Floats,
     known = hot >= 0
     found = {"mtsr_K": np.where(known, mtsr, np.nan), "mtsr_time_s": np.where(known, marched.time[hot], np.nan)}
     reasons: list[list[str]] = [[] for _ in range(count)]
-    for n in np.flatnonzero(~known):
+    for n in np.flatnonzero(~known).tolist():
         reasons[n].append("mtsr, tmr_ad, td24, criticality_class: no march after a cooling failure came to an end")
     _urgent(study, plant, marched, known, found, tolerance)
     _rises(study, plant, marched, hot, known, found)
@@ -228,7 +228,7 @@ def failure_figures(study: Study, plant: Charged, batch: Batch, process: Floats,
 def _urgent(study: Study, plant: Charged, marched: Moments, known: np.ndarray, found: dict[str, Floats], tolerance: float) -> None:
     """Add the least time to maximum rate, its closed form, and T_D24 of the same mixture."""
     count = plant.values.count
-    names = ("tmr_ad_s", "tmr_ad_censored", "tmr_ad_time_s", "tmr_ad_closed_form_s", "td24_K", "td24_censored")
+    names: tuple[str, ...] = ("tmr_ad_s", "tmr_ad_censored", "tmr_ad_time_s", "tmr_ad_closed_form_s", "td24_K", "td24_censored")
     found.update({name: np.full(count, np.nan) for name in names})
     decomposes = adiabatic.purposes(study, "decomposition")
     if not decomposes or not known.any():

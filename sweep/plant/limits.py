@@ -56,4 +56,4 @@ def margins(study: Study, table: pd.DataFrame) -> Floats:
 
 def holds(margin: Floats) -> np.ndarray:
     """Return where every limit holds, (N,), from margins (N, L)."""
-    return (margin >= 0.0).all(axis=1)
+    return np.asarray((margin >= 0.0).all(axis=1))

@@ -69,12 +69,6 @@ def _at(study: Study, values: Values, time: Floats) -> tuple[Values, NDKind]:
     return values.overlaid(sets), kind
 
 
-
-def _flat(array: Floats) -> Floats:
-    """Return (N, A, B) as (N, A B), for no points too."""
-    return array.reshape(array.shape[0], array.shape[1] * array.shape[2])
-
-
 def _cooling(block: Floats, values: Values, kind: NDKind, first: bool, was: NDKind, charge_T: Floats) -> None:
     """Fill in the cooling of one segment."""
     jacket, coolant, duty = kind == 4, kind == 3, kind == 2

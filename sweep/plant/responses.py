@@ -75,7 +75,7 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     tolerance = float(study.values.get("accuracy.relative", 1e-6))
     marched = march(plant.program, plant.blocks, plant.starts, plant.constants, times, tolerance)
     found = _respond(study, plant, marched, times, tolerance)
-    columns = {r.column: pd.array(found[r.column], dtype=_DTYPES[r.kind]) for r in responses(study)}
+    columns = {r.column: pd.Series(found[r.column], index=points.index, dtype=_DTYPES[r.kind]) for r in responses(study)}
     table = blank(values, pd.DataFrame(columns).set_axis(points.index))
     return pd.concat([points, table], axis=1)
 

@@ -57,10 +57,11 @@ def blank(values: Values, table: pd.DataFrame) -> pd.DataFrame:
     """Return responses with the refused points as failed rows: status, reason, and null for everything else."""
     if not values.refused:
         return table
-    rows, outcome = np.isin(np.arange(values.count), list(values.refused)), OUTCOMES[BAD_INPUT]
+    rows, outcome = sorted(values.refused), OUTCOMES[BAD_INPUT]
+    labels = table.index[rows]
     result = table.copy()
     for name in result.columns.drop(["status", "reason"]):
-        result.loc[rows, name] = np.nan if result[name].dtype.kind == "f" else pd.NA
-    result.loc[rows, "status"] = outcome.status
-    result.loc[rows, "reason"] = [f"{outcome.sentence}: {values.refused[n]}" for n in np.flatnonzero(rows)]
+        result.loc[labels, name] = np.nan if result[name].dtype.kind == "f" else pd.NA
+    result.loc[labels, "status"] = outcome.status
+    result.loc[labels, "reason"] = [f"{outcome.sentence}: {values.refused[n]}" for n in rows]
     return result

@@ -120,4 +120,4 @@ def _at_equilibrium(study: Study, plant: Charged, marched: Marched, consuming: l
     volume = plant.brought.volume + (plant.brought.feed_volume * plant.brought.share(final)).sum(axis=1)
     net = rates.flow(plant, block, plant.constants[:, at.DELTA], moles, state[:, nz], volume).rate
     forward = rates.flow(plant, block, plant.constants[:, at.DELTA], moles, state[:, nz], volume, forward_only=True).rate
-    return (np.abs(net[:, reversible]) < _BALANCED * np.abs(forward[:, reversible])).all(axis=1)
+    return np.asarray((np.abs(net[:, reversible]) < _BALANCED * np.abs(forward[:, reversible])).all(axis=1))

@@ -34,7 +34,7 @@ def inputs(results: Results) -> Section:
     if given is None:
         blocks.append(Words(("The inputs as understood are not listed: analyses/inputs.csv is missing or empty.",), look="warning"))
     else:
-        shown = given.rename(columns=lambda name: plain(str(name)).replace("si ", "SI ")).fillna("not given" if "source" in given else "")
+        shown = given.rename(columns=lambda name: plain(str(name)).replace("si ", "SI ")).astype(object).fillna("not given" if "source" in given else "")
         blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=len(given) > 60, digits=6))
     if text := str(results.manifest.get("study") or ""):
         blocks.append(Text("The study file as it was run", text))
@@ -62,7 +62,7 @@ def _failed(results: Results, given: pd.DataFrame) -> Table:
         numeric = pd.api.types.is_numeric_dtype(given[column])
         scale = variable_scale(results, name) if name in known else scale_for(unit, name, 0.0)
         label = f"{plain(name)} ({scale.unit})" if numeric and scale.unit else plain(name)
-        shown[label] = scale.of(given[column]) if numeric else given[column].fillna("").to_numpy()
+        shown[label] = scale.of(given[column]) if numeric else given[column].astype(object).fillna("").to_numpy()
     return table(pd.DataFrame(shown), "Points without a complete answer", "analyses/failed_points.csv", folded=False)
 
 

@@ -7,7 +7,6 @@ from pathlib import Path
 from sweep.base.errors import Fault, SweepError
 
 FAILURE = frozenset(("mtsr", "tmr_ad", "td24", "mtt", "criticality_class"))  # responses that need a cooling failure
-SETTABLE = frozenset(("species", "reactions", "vessel", "cooling", "recipe", "events", "failure"))  # sections whose quantities a point may set
 
 
 @dataclass(frozen=True)
@@ -158,7 +157,7 @@ def unset(path: str) -> str:
 
 def differs(path: str) -> bool:
     """Tell whether a quantity may differ from point to point: what is of the batch, not of the question or of the method."""
-    of_the_batch = path.startswith(("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")) or path == "batch_time.longest"
+    of_the_batch = path.startswith(("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")) or path in ("batch_time.longest", "failure.horizon", "failure.mtt", "failure.td24")
     return of_the_batch and not path.endswith(".molar_mass")
 
 
@@ -217,13 +216,11 @@ class Study:
         for variable in self.variables:
             if variable.name == name:
                 return variable.sets
-        if name in self.values and name.split(".")[0] in SETTABLE:
-            return (name,)
         if name in self.values:
-            raise SweepError(f"{name} belongs to the question, not to the batch: it is the same for every point; change it in the study")
+            return (name,)
         import difflib
 
-        known = [*(v.name for v in self.variables), *(path for path in self.values if path.split(".")[0] in SETTABLE)]
+        known = [*(v.name for v in self.variables), *(path for path in self.values if differs(path))]
         near = difflib.get_close_matches(name, known, 1)
         hint = f"; did you mean {near[0]}?" if near else ""
         raise SweepError(f"{name} is neither a variable nor a quantity of this study{hint}")

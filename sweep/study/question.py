@@ -126,7 +126,7 @@ def _settable(reader: Reader, place: str, path: str, name: str, owners: dict[str
     if path not in reader.values and reader.broken(path):
         return False  # it was faulted where it stands
     if path in reader.values and not differs(path):
-        reader.fault(place, path, "a quantity of the batch", "it belongs to the question and is the same for every point")
+        reader.fault(place, path, "a quantity of the batch", "it cannot differ from point to point")
         return False
     if path not in reader.values:
         near = difflib.get_close_matches(path, [known for known in reader.values if differs(known)], 1)

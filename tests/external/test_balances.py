@@ -8,7 +8,7 @@ import pytest
 from sweep.plant import profile
 from sweep.study import read_text
 
-TEXT = (Path(__file__).parents[2] / "studies" / "acylation.toml").read_text()
+TEXT = (Path(__file__).parent / "fed_batch.toml").read_text()
 START, END = TEXT.index("[cooling]"), TEXT.index("[recipe]")
 COOLING = {
     "adiabatic": 'kind = "adiabatic"',

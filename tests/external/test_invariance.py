@@ -11,7 +11,7 @@ from sweep.plant import evaluate
 from sweep.study import read_text
 from tests.external.test_stiff_sets import HIRES, study
 
-TEXT = (Path(__file__).parents[2] / "studies" / "acylation.toml").read_text()
+TEXT = (Path(__file__).parent / "fed_batch.toml").read_text()
 NAMES = {"amine": "zz", "anhydride": "b2", "solvent": "A_long_name", "amide": "_x", "acid": "M", "diamide": "a", "tar": "T"}
 POINTS = pd.DataFrame({"charge_temperature": [303.0, 318.15, 338.0], "dosing_time": [20000.0, 10800.0, 3700.0], "amine": [1250.0, 2200.0, 2700.0]})
 
