@@ -34,7 +34,8 @@ def inputs(results: Results) -> Section:
     if given is None:
         blocks.append(Words(("The inputs as understood are not listed: analyses/inputs.csv is missing or empty.",), look="warning"))
     else:
-        shown = given.rename(columns=lambda name: plain(str(name)).replace("si ", "SI ")).astype(object).fillna("not given" if "source" in given else "")
+        shown = given.rename(columns=lambda name: plain(str(name)).replace("si ", "SI ")).astype(object)
+        shown = shown.fillna("not given" if "source" in given else "")
         blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=len(given) > 60, digits=6))
     if text := str(results.manifest.get("study") or ""):
         blocks.append(Text("The study file as it was run", text))

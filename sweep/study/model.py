@@ -157,8 +157,9 @@ def unset(path: str) -> str:
 
 def differs(path: str) -> bool:
     """Tell whether a quantity may differ from point to point: what is of the batch, not of the question or of the method."""
-    of_the_batch = path.startswith(("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")) or path in ("batch_time.longest", "failure.horizon", "failure.mtt", "failure.td24")
-    return of_the_batch and not path.endswith(".molar_mass")
+    sections = ("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")
+    settings = ("batch_time.longest", "failure.horizon", "failure.mtt", "failure.td24")
+    return (path.startswith(sections) or path in settings) and not path.endswith(".molar_mass")
 
 
 @dataclass(frozen=True)
