@@ -2,7 +2,6 @@
 
 from typing import Any
 
-from sweep.base.units import show
 from sweep.cli.tell_batch import difference, in_words, limit_sentence, tell_failure
 from sweep.cli.terminal import Terminal
 from sweep.study.model import Study
@@ -19,7 +18,7 @@ def tell_run(found: Run, study: Study, terminal: Terminal) -> None:
     terminal.item(f"{points['planned']:,} points ({points['plan']}): {counts}{held}")
     terminal.heading("Set-point")
     for name, given in summary["set_point"]["inputs"].items():
-        terminal.item(f"{name}: {show(given['value'], given['written_unit'] or given['unit'])}")
+        terminal.item(f"{name}: {given['written']}")
     for line in summary["limits"]:
         terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}")))
     nearest = summary["nearest_limit"]

@@ -12,6 +12,7 @@ from sweep.kernel.engine import march
 from sweep.plant import adiabatic, rates, states
 from sweep.plant.failure import march_moments
 from sweep.plant.onward import march_on
+from sweep.plant.profile import batch_end
 from sweep.plant.recipe import Charged, charge_plant
 from sweep.plant.sense import one_point
 from sweep.plant.values import Floats
@@ -46,7 +47,7 @@ def failure_times(study: Study, point: Mapping[str, float] | None = None, times:
     """
     plant = _one(study, point)
     tolerance = float(study.values["accuracy.relative"])
-    end = _batch_end(plant, tolerance)
+    end = batch_end(plant, tolerance)
     wanted = np.asarray(times, dtype=np.float64) if times is not None else _drawn(plant, end)
     order = np.argsort(wanted, kind="stable")
     ascending = wanted[order][None, :]
@@ -71,15 +72,6 @@ def failure_times(study: Study, point: Mapping[str, float] | None = None, times:
     return table.iloc[back].reset_index(drop=True)
 
 
-def _batch_end(plant: Charged, tolerance: float) -> float:
-    """Return when the batch ends (s)."""
-    end = float(plant.constants[0, at.END_FIXED])
-    if np.isfinite(end):
-        return end
-    out = march(plant.program, plant.blocks, plant.starts, plant.constants, None, tolerance).out[0]
-    return float(out[at.OUT_END_TIME] if np.isfinite(out[at.OUT_END_TIME]) else out[at.OUT_TIME])
-
-
 def _drawn(plant: Charged, end: float) -> Floats:
     times = np.union1d(np.linspace(0.0, end, DRAWN), plant.boundaries[0])
     return times[times <= end]
@@ -90,7 +82,7 @@ def failure_path(study: Study, point: Mapping[str, float] | None, time: float, l
     plant = _one(study, point)
     tolerance = float(study.values["accuracy.relative"])
     nz = plant.program.structure.sources.shape[0]
-    when = np.array([[min(time, _batch_end(plant, tolerance))]])
+    when = np.array([[min(time, batch_end(plant, tolerance))]])
     state = march(plant.program, plant.blocks, plant.starts, plant.constants, when, tolerance).samples[:, 0]
     if not np.isfinite(state).all():
         raise SweepError(f"the batch does not reach {time:g} s, where its cooling was to fail")

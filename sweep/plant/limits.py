@@ -11,7 +11,7 @@ from sweep.study.model import Study
 
 @dataclass(frozen=True)
 class LimitRow:
-    """One bound on one response (SI): name as in the study, response (column), sense "at_most" or "at_least", unit of the response."""
+    """One bound on one response (SI): name as in the study, response (column), sense "at_most" or "at_least", unit of the response ("": none)."""
 
     name: str
     response: str
@@ -25,18 +25,18 @@ def limits(study: Study) -> tuple[LimitRow, ...]:
     """Return every bound of the study; the target counts as the limit `conversion`."""
     from sweep.plant.responses import responses
 
-    units = {r.column: r.unit for r in responses(study)}
+    units = {r.column: "" if r.unit == "1" else r.unit for r in responses(study)}
     both = {x.name for x in study.limits if sum(y.name == x.name for y in study.limits) > 1}
     rows = []
     if study.target is not None and "target.conversion" in study.values:
         label = "conversion at_least" if any(x.name == "conversion" and x.sense == "at_most" for x in study.limits) else "conversion"
-        rows.append(LimitRow("conversion", "conversion", "at_least", study.values["target.conversion"], "1", label))
+        rows.append(LimitRow("conversion", "conversion", "at_least", study.values["target.conversion"], "", label))
     for limit in study.limits:
         target = limit.name == "conversion" and limit.sense == "at_least"
         label = f"{limit.name} {limit.sense}" if limit.name in both or (limit.name == "conversion" and rows) else limit.name
         bound = study.values[f"limits.{limit.name}.{limit.sense}"]
         if target and rows and rows[0].name == "conversion":
-            rows[0] = LimitRow("conversion", "conversion", "at_least", max(bound, rows[0].bound), "1", rows[0].label)
+            rows[0] = LimitRow("conversion", "conversion", "at_least", max(bound, rows[0].bound), "", rows[0].label)
             continue
         rows.append(LimitRow(limit.name, limit.response, limit.sense, bound, units[limit.response], label))
     return tuple(rows)

@@ -7,7 +7,7 @@ import pandas as pd
 
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
-from sweep.plant import rates, states
+from sweep.plant import adiabatic, rates, states
 from sweep.plant.onward import segment_at
 from sweep.plant.recipe import Charged, charge_plant, has_heat_capacities
 from sweep.plant.sense import one_point
@@ -19,10 +19,12 @@ DRAWN = 401  # times that draw well
 
 
 def profile(study: Study, point: Mapping[str, float] | None = None, times: Sequence[float] | None = None) -> pd.DataFrame:
-    """Return a batch at times (s), in their order: time, temperatures, volume, amounts, conversion, accumulation; SI."""
+    """Return a batch at times (s), in their order, or at times that draw well up to its end; NaN beyond the march's end. SI.
+
+    Columns: time, temperatures, volume, amounts, conversion, heat release, cooling duty, accumulation, MTSR were cooling lost then.
+    """
     plant = charge_plant(study, one_point(study, point))
-    final = float(plant.constants[0, at.T_FINAL])
-    wanted = np.asarray(times, dtype=np.float64) if times is not None else np.union1d(np.linspace(0.0, final, DRAWN), plant.boundaries[0])
+    wanted = np.asarray(times, dtype=np.float64) if times is not None else drawn_times(plant, float(study.values["accuracy.relative"]))
     order = np.argsort(wanted, kind="stable")
     ascending = wanted[order][None, :]
     marched = march(plant.program, plant.blocks, plant.starts, plant.constants, ascending, float(study.values["accuracy.relative"]))
@@ -30,6 +32,22 @@ def profile(study: Study, point: Mapping[str, float] | None = None, times: Seque
     back = np.empty_like(order)
     back[order] = np.arange(order.size)
     return table.iloc[back].reset_index(drop=True)
+
+
+def drawn_times(plant: Charged, tolerance: float) -> Floats:
+    """Return times (s) that draw a batch well: even ones to its end, and the recipe's boundaries."""
+    end = batch_end(plant, tolerance)
+    times = np.union1d(np.linspace(0.0, end, DRAWN), plant.boundaries[0])
+    return times[times <= end]
+
+
+def batch_end(plant: Charged, tolerance: float) -> float:
+    """Return when the batch ends (s)."""
+    end = float(plant.constants[0, at.END_FIXED])
+    if np.isfinite(end):
+        return end
+    out = march(plant.program, plant.blocks, plant.starts, plant.constants, None, tolerance).out[0]
+    return float(out[at.OUT_END_TIME] if np.isfinite(out[at.OUT_END_TIME]) else out[at.OUT_TIME])
 
 
 def batch_longest(study: Study, point: Mapping[str, float]) -> tuple[float, float]:
@@ -71,7 +89,18 @@ def _lines(study: Study, plant: Charged, times: Floats, state: Floats) -> dict[s
     columns["cooling_duty_W"] = np.where(missing | (not has_heat_capacities(study, plant.values)), np.nan, duty)
     left = states.accumulation(study, plant, one, known, times)[0] if heated and study.reactions else np.full(count, np.nan)
     columns["accumulation"] = np.where(np.isnan(T), np.nan, left)
+    columns["mtsr_K"] = _mtsr(study, plant, times[0], state[0]) if study.asks_failure else np.full(count, np.nan)
     return columns
+
+
+def _mtsr(study: Study, plant: Charged, times: Floats, state: Floats) -> Floats:
+    """Return the highest temperature (K) of the synthesis were cooling lost at each time."""
+    known = np.flatnonzero(np.isfinite(state).all(axis=1))
+    rows, result = np.zeros(known.size, dtype=int), np.full(times.size, np.nan)
+    failed = adiabatic.fail(study, plant, rows, times[known], state[known])
+    found = adiabatic.run_synthesis(study, plant, failed, float(study.values["accuracy.relative"]))
+    result[known] = np.where(found.ok, found.temperature, np.nan)
+    return result
 
 
 def _conversion(study: Study, plant: Charged, share: Floats, moles: Floats) -> Floats:
