@@ -66,7 +66,8 @@ class SetPoint:
         inputs = {}
         for v in study.variables:
             unit = si_unit(study.dimensions[v.sets[0]])
-            inputs[v.name] = {"value": self.point[v.name], "unit": unit, "written": show(self.point[v.name], study.units.get(v.sets[0]) or v.unit or unit)}
+            own = study.units.get(v.sets[0]) or v.unit or unit
+            inputs[v.name] = {"value": self.point[v.name], "unit": unit, "written": show(self.point[v.name], own)}
         found = {r.column: _plain(self.row[r.column]) for r in responses(study) if r.column not in ("status", "reason")}
         block = {"inputs": inputs, "status": str(self.row["status"]), "reason": str(self.row["reason"]), "responses": found, "holds": self.holds}
         return {"set_point": block, "limits": self.limit_lines(), "nearest_limit": self.nearest()}
