@@ -36,7 +36,7 @@ def inputs(results: Results) -> Section:
     else:
         named = {"value_si": "SI value", "si_value": "SI value", "unit_si": "SI unit"}
         shown = given.rename(columns=lambda name: named.get(str(name), plain(str(name))))
-        blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=len(given) > 60, digits=6))
+        blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=False, digits=6))
     if text := str(results.manifest.get("study") or ""):
         blocks.append(Text("The study file as it was run", text))
     return Section("inputs", "Assumptions and inputs", tuple(blocks))
