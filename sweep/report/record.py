@@ -7,7 +7,7 @@ import pandas as pd
 from sweep.report.answers import setting
 from sweep.report.blocks import Block, Cell, Section, Signatures, Table, Text, Words, heads, row, table
 from sweep.report.curves import Absent, Prepared
-from sweep.report.display import scale_for
+from sweep.report.display import pretty, scale_for
 from sweep.report.prepare_window import variable_scale
 from sweep.report.results import Results
 from sweep.report.wording import plain, sentence, several, split_unit
@@ -35,6 +35,8 @@ def inputs(results: Results) -> Section:
         blocks.append(Words(("The inputs as understood are not listed: analyses/inputs.csv is missing or empty.",), look="warning"))
     else:
         named = {"value_si": "SI value", "si_value": "SI value", "unit_si": "SI unit"}
+        if "unit_si" in given:
+            given = given.assign(unit_si=given["unit_si"].map(lambda unit: "" if pd.isna(unit) else pretty(str(unit))))
         shown = given.rename(columns=lambda name: named.get(str(name), plain(str(name))))
         blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=False, digits=6))
     if text := str(results.manifest.get("study") or ""):

@@ -198,7 +198,7 @@ def tables() -> dict[str, pd.DataFrame]:
     inputs = pd.DataFrame({
         "path": ["reactions.acylation.rate_constant.value", "reactions.acylation.heat.value", "vessel.U", "recipe.charge.temperature"],
         "written": ["2.6e-3 L/mol/s", "-112 kJ/mol", "310 W/m2/K", "45 degC"], "value_si": [2.6e-6, -112000.0, 310.0, 318.15],
-        "source": ["runs 3 to 7", "", "", ""]})  # fmt: skip
+        "unit_si": ["mol**(-1)*m**(3)*s**(-1)", "J/mol", "W/m^2/K", "K"], "source": ["runs 3 to 7", "", "", ""]})  # fmt: skip
     return {
         "set_point_profile": profile_table(), "window_grid": grid_table(), "window_boundary": boundary_table(),
         **batch_time_tables(), **failure_tables(),

@@ -112,7 +112,7 @@ def test_the_answers_stand_with_their_units(whole: str) -> None:
         "Found with 1184 batches, the edge to within 0.5 % of each axis.", "gives away 7.45 percentage points of conversion",
         "8.50 K 53.50 °C highest temperature", "1.64 h 1.36 h MTSR",
         "MTT 110.0 °C 226.1 h (9.42 d)", "limit on highest temperature 70.0 °C 56.13 min",
-        "Adiabatic rise, synthesis 92.4 K", "99.3 °C TMRad is 24 h from here", "runs 3 to 7", "Pressure: no vapour pressure is given.",
+        "Adiabatic rise, synthesis 92.4 K", "99.3 °C TMRad is 24 h from here", "W/m²/K", "runs 3 to 7", "Pressure: no vapour pressure is given.",
         "This program screens; it does not approve.", "Emergency relief is not sized here.", "Version of numba 0.61.2", "3f9a" * 16,
         "Prepared by", "Reviewed by", "Approved by", "2025 points planned",
     ):  # fmt: skip

@@ -68,7 +68,7 @@ def test_a_batch_without_batch_times_ends_by_its_cycle_and_keeps_its_target(tmp_
         del summary["batch_time"]
         summary["set_point"]["responses"]["time_to_target_s"] = 15000.0
         summary["set_point"]["responses"]["cycle_time_s"] = 30600.0
-        tables["inputs"].loc[len(tables["inputs"])] = ["recipe.turnaround", "3.5 h", 12600.0, ""]
+        tables["inputs"].loc[len(tables["inputs"])] = ["recipe.turnaround", "3.5 h", 12600.0, "s", ""]
 
     found = curves(prepare_batch.profile(results(tmp_path, bare)))
     assert 5.0 == pytest.approx(found.x[-1], abs=0.02)
