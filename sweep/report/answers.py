@@ -91,11 +91,17 @@ def _run(results: Results) -> tuple[str, ...]:
     if batch.get("time_to_target_s") is not None:
         lines.append(f"target conversion of {conversion(target)} reached at {duration(batch['time_to_target_s'])}")
     elif batch.get("why_not"):
-        lines.append(f"target conversion of {conversion(target)} not reached: {batch['why_not']['sentence']}")
+        lines.append(f"target conversion of {conversion(target)} not reached: {why_not(batch['why_not'])}")
     best = next((o for o in batch.get("options") or () if o["name"] == "most productive" and o.get("time_s") is not None), None)
     if best is not None:
         lines.append(f"most productive at {duration(best['time_s'])}, with a conversion of {conversion(best.get('conversion'))}")
     return tuple(lines)
+
+
+def why_not(given: Mapping[str, Any]) -> str:
+    """Return why a target is not reached: the cause, and the sentence where it says more than the point's own record."""
+    cause, said = str(given.get("cause") or ""), str(given.get("sentence") or "")
+    return cause or said if "time_to_target:" in said or not said else f"{cause}: {said}"
 
 
 def _nearest(results: Results) -> tuple[str, ...]:
@@ -104,8 +110,9 @@ def _nearest(results: Results) -> tuple[str, ...]:
         return ("none can be named",)
     scale = limit_scale(near | {"bound": near.get("margin")})
     of = near.get("of") or "its spread over the plan's points"
-    said = f"{words(str(near['name']))} ({SENSES.get(near['sense'], near['sense'])})"
-    return (f"{said}: margin {scale.change(near.get('margin'), digits=3)}", f"that is {share(near.get('share'))} of {of}")
+    name = str(near.get("label") or near["name"]).removesuffix(" at most").removesuffix(" at least")
+    margin = f"{words(name)} ({SENSES.get(near['sense'], near['sense'])}): margin {scale.change(near.get('margin'), digits=3)}"
+    return margin, f"that is {share(near['share'])} of {of}" if near.get("share") is not None else "it has no value"
 
 
 def _window(results: Results) -> tuple[str, ...]:

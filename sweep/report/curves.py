@@ -42,6 +42,7 @@ class Panel:
     label: str
     lines: tuple[Line, ...]
     levels: tuple[Level, ...] = ()
+    top: float | None = None  # where the axis ends though a line runs on above it
 
 
 @dataclass(frozen=True)
@@ -88,6 +89,12 @@ class Ground:
     y: Array
     set_point: tuple[float, float] | None
     boundaries: tuple[Boundary, ...]
+
+
+def within(ground: Ground) -> bool:
+    """Return whether the set-point lies in the range mapped."""
+    at = ground.set_point
+    return at is not None and all(values.min() <= place <= values.max() for place, values in zip(at, (ground.x, ground.y), strict=True))
 
 
 @dataclass(frozen=True)

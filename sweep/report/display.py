@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from sweep.base.units import from_si, unit_of
+from sweep.base.units import from_si
 
 Array = NDArray[np.float64]
 ZERO_CELSIUS = 273.15  # K, exact by definition
@@ -50,9 +50,10 @@ PERCENT = Scale("%", 100.0, 0.0, "percentage points")
 KILOWATT = Scale("kW", 1e-3)
 SECONDS, MINUTES, HOURS, DAYS = Scale("s"), Scale("min", 1 / 60), Scale("h", 1 / 3600), Scale("d", 1 / 86400)
 _FIXED = {
-    "K": CELSIUS, "W": KILOWATT, "Pa": Scale("bar", 1e-5), "kg/m^3/s": Scale("kg/m³/h", 3600.0), "mol/m^3/s": Scale("mol/m³/h", 3600.0),
+    "W": KILOWATT, "Pa": Scale("bar", 1e-5), "kg/m^3/s": Scale("kg/m³/h", 3600.0), "mol/m^3/s": Scale("mol/m³/h", 3600.0),
 }  # fmt: skip
 _SHARES = ("conversion", "yield_", "accumulation")
+_TEMPERATURES = ("temperature", "mtsr", "td24", "mtt")  # what else is in K is a difference, such as an adiabatic rise
 
 
 def pretty(unit: str) -> str:
@@ -77,18 +78,20 @@ def axis_times(span: float) -> Scale:
 def scale_for(unit: str, name: str = "", reach: float = math.inf) -> Scale:
     """Return how a response in an SI unit is shown; times by how far they reach (s)."""
     plain = name.rsplit(".", 1)[-1]
+    unit = "" if unit == "1" else unit.replace("m3", "m^3")
     if unit == "s":
         return times(abs(reach))
-    if unit == "" and plain.startswith(_SHARES):
+    if unit == "K":
+        return CELSIUS if any(part in plain for part in _TEMPERATURES) else Scale("K")
+    if unit == "" and any(part in plain for part in _SHARES):
         return PERCENT
     return _FIXED.get(unit, Scale(pretty(unit)))
 
 
-def scale_as_written(written: str, unit: str) -> Scale:
-    """Return the study's own unit of a variable, from its written value such as "45 degC"; its SI unit where there is none."""
-    own = unit_of(written)
+def scale_as_written(own: str, unit: str) -> Scale:
+    """Return the study's own unit of a variable, such as "degC"; its SI unit where it is written in none."""
     if not own:
-        return Scale(pretty(unit))
+        return Scale("" if unit == "1" else pretty(unit))
     try:
         offset, far = from_si(0.0, own), from_si(1e4, own)
     except Exception:  # pint raises many kinds; a unit that cannot be read back is shown in SI

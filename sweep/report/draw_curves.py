@@ -17,10 +17,12 @@ def _limits(panel: Panel) -> tuple[float, float]:
     """Return the y range: all lines and levels, with air; per cent from zero to at least a hundred where near it."""
     values = np.concatenate([line.y[np.isfinite(line.y)] for line in panel.lines] + [np.array([level.value for level in panel.levels])])
     low, high = float(values.min()), float(values.max())
+    if panel.label.endswith("(%)") and low > 50.0:
+        return low - 0.07 * ((high - low) or 1.0), high + 0.07 * ((high - low) or 1.0)
     if panel.label.endswith("(%)") or panel.label.endswith("(kW)"):
         low = min(low, 0.0)
     air = 0.07 * ((high - low) or abs(high) or 1.0)
-    return (low - air if low < 0.0 or not panel.label.endswith(("(%)", "(kW)")) else 0.0), high + air
+    return (low - air if low < 0.0 or not panel.label.endswith(("(%)", "(kW)")) else 0.0), high + air if panel.top is None else panel.top
 
 
 def _draw_lines(axes: Axes, x: Array, panel: Panel, high: float) -> list[tuple[float, str, str]]:
@@ -54,7 +56,7 @@ def _label(axes: Axes, labels: list[tuple[float, str, str]], height: float) -> N
     low, high = axes.get_ylim()
     texts = [wrap(text, 27) for _, text, _ in labels]
     sizes = np.array([LINE * (text.count("\n") + 1) + 0.03 for text in texts])
-    places = np.array([(value - low) / (high - low) * height for value, _, _ in labels])
+    places = np.clip(np.array([(value - low) / (high - low) * height for value, _, _ in labels]), 0.0, height)
     centres = spread(places, sizes, -0.05, height + 0.05)
     inch = 1.0 / (WIDTH - LEFT - RIGHT)
     for (_, _, colour), text, place, centre in zip(labels, texts, places, centres, strict=True):
@@ -71,7 +73,7 @@ def _rows(moments: tuple[Moment, ...], places: Array, width: float) -> tuple[lis
 
     A label stands to the right of its line like a flag, the rightmost lowest, so that no line runs through another's label.
     """
-    lengths = np.array([0.066 * len(moment.name) + 0.1 for moment in moments])
+    lengths = np.array([0.07 * len(moment.name) + 0.1 for moment in moments])
     lefts = np.maximum(np.minimum(places - 0.03, width + RIGHT - 0.08 - lengths), 0.08 - LEFT)
     taken: list[list[tuple[float, float]]] = []
     rows = [0] * len(moments)

@@ -5,14 +5,20 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from sweep.report.curves import ContourMap, Field, Ground, WindowMap
+from sweep.report.curves import ContourMap, Field, Ground, WindowMap, within
 from sweep.report.draw import COLOURS, GREY, HATCHES, INK, STYLES, WIDTH, Axes, Figure, outline, plain_ticks, round_levels, sheet, wrap
 from sweep.report.region import FINE, HOLDS, NO_VALUE, Region, region
 from sweep.report.wording import words
 
 PAPER = "#f1f1f1"  # where some limit does not hold
 LABEL = 8.5
-ROOM = 0.05  # least share of the map in which a region is named on the map itself
+HALF = 0.0065  # half a sign's width as a share of the map
+ROOM = 0.08  # least share of the map in which a region is named on the map itself
+
+
+def colour_of(k: int) -> str:
+    """Return a limit's colour: after a round of all, the same hatches come with other colours."""
+    return COLOURS[(k + k // len(COLOURS)) % len(COLOURS)]
 
 
 def deepest(inside: NDArray[np.bool_]) -> tuple[int, int, float]:
@@ -41,7 +47,7 @@ def _regions(axes: Axes, window: WindowMap, found: Region) -> None:
     axes.set_facecolor(PAPER)
     for k in range(len(window.limits)):
         if (found.kind == k).any():
-            _fill(axes, found, found.kind == k, COLOURS[k % len(COLOURS)], HATCHES[k % len(HATCHES)])
+            _fill(axes, found, found.kind == k, colour_of(k), HATCHES[k % len(HATCHES)])
     if (found.kind == NO_VALUE).any():
         _fill(axes, found, found.kind == NO_VALUE, GREY, "oo")
     if (found.least >= 0.0).any():
@@ -64,9 +70,13 @@ def _name(axes: Axes, found: Region, kind: int, text: str, clear: NDArray[np.boo
     i, j, depth = deepest(inside & clear if kind == HOLDS else inside)
     if depth < ROOM * FINE:
         return False
-    place = (min(max(i, 0.17 * FINE), 0.83 * FINE), j)
+    place = (int(min(max(i, 0.17 * FINE), 0.83 * FINE)), j)
+    half = int(HALF * max(map(len, wrap(text, 22).split("\n"))) * FINE)
+    sides = np.clip([place[0] - half, place[0], place[0] + half], 0, FINE - 1)
+    if not inside[sides, j].all():
+        return False
     written = axes.text(
-        found.x[int(place[0])], found.y[int(place[1])], wrap(text, 22), ha="center", va="center", fontsize=LABEL, zorder=4, linespacing=1.1,
+        found.x[place[0]], found.y[place[1]], wrap(text, 22), ha="center", va="center", fontsize=LABEL, zorder=4, linespacing=1.1,
         bbox={"facecolor": "white", "edgecolor": "none", "alpha": 0.9, "pad": 2.0},
     )  # fmt: skip
     written.set_fontweight("bold" if kind == HOLDS else "normal")
@@ -76,7 +86,7 @@ def _name(axes: Axes, found: Region, kind: int, text: str, clear: NDArray[np.boo
 def _edge(axes: Axes, window: WindowMap) -> None:
     for piece in window.ground.boundaries:
         k = window.limits.index(piece.limit) if piece.limit in window.limits else len(window.limits)
-        axes.plot(piece.x, piece.y, color=COLOURS[k % len(COLOURS)], linestyle=STYLES[k % len(STYLES)], linewidth=2.4, zorder=3)
+        axes.plot(piece.x, piece.y, color=colour_of(k), linestyle=STYLES[k % len(STYLES)], linewidth=2.4, zorder=3)
 
 
 def _crossed_ring(axes: Axes, x: float, y: float, **where: Any) -> None:
@@ -85,13 +95,13 @@ def _crossed_ring(axes: Axes, x: float, y: float, **where: Any) -> None:
 
 
 def _set_point(axes: Axes, ground: Ground) -> None:
-    if ground.set_point is not None:
+    if ground.set_point is not None and within(ground):
         _crossed_ring(axes, *ground.set_point, zorder=6)
 
 
 def _arrows(axes: Axes, window: WindowMap) -> None:
     """Draw the distances from the set-point to the edge along both axes, each with its length."""
-    if window.ground.set_point is None:
+    if window.ground.set_point is None or not within(window.ground):
         return
     point, ends = window.ground.set_point, (axes.get_xlim(), axes.get_ylim())
     for reach in window.reaches:
@@ -124,8 +134,10 @@ def _length(axes: Axes, axis: int, up: bool, point: tuple[float, float], tip: li
 def _key(axes: Axes, window: WindowMap, present: list[int], unnamed: bool) -> None:
     """Write beside the map what hatches and lines stand for."""
     top = 0.98
-    entries = [(COLOURS[k % len(COLOURS)], STYLES[k % len(STYLES)], HATCHES[k % len(HATCHES)], words(window.limits[k])) for k in present]
-    if unnamed:
+    entries = [(colour_of(k), STYLES[k % len(STYLES)], HATCHES[k % len(HATCHES)], words(window.limits[k])) for k in present]
+    others = dict.fromkeys(piece.limit for piece in window.ground.boundaries if piece.limit not in window.limits)
+    entries += [(colour_of(len(window.limits)), STYLES[len(window.limits) % len(STYLES)], "oo", words(name)) for name in others]
+    if unnamed and not others:
         entries.append((GREY, "none", "oo", "no value: a point nearby could not be judged"))
     axes.text(1.04, top, "Edge and beyond, by limit", transform=axes.transAxes, fontsize=LABEL, va="top", fontweight="bold")
     top -= 0.08
@@ -141,7 +153,7 @@ def _key(axes: Axes, window: WindowMap, present: list[int], unnamed: bool) -> No
     plain[0].set(transform=axes.transAxes, clip_on=False)
     axes.text(1.15, top - 0.0275, "every limit holds", transform=axes.transAxes, fontsize=LABEL, va="center")
     top -= 0.09
-    if window.ground.set_point is not None:
+    if within(window.ground):
         _crossed_ring(axes, 1.085, top - 0.03, transform=axes.transAxes, clip_on=False)
         axes.text(1.15, top - 0.03, "set-point", transform=axes.transAxes, fontsize=LABEL, va="center")
 
@@ -185,15 +197,32 @@ def _contour(axes: Axes, ground: Ground, field: Field) -> None:
     finite = values[np.isfinite(values)]
     if np.isnan(values).any():
         _absent(axes, ground, field)
-    if float(np.ptp(finite)) > 1e-9 * max(abs(float(finite.max())), 1e-300) and np.isfinite(values).all(axis=1).any():
+    whole = np.isfinite(values)
+    cells = whole[1:, 1:] & whole[:-1, 1:] & whole[1:, :-1] & whole[:-1, :-1]
+    if float(np.ptp(finite)) <= 1e-9 * max(abs(float(finite.max())), 1e-300):
+        _remark(axes, f"the same everywhere: {finite[0]:.4g} {field.unit}")
+    elif not cells.any():
+        _remark(axes, "too few values for contours")
+    else:
         levels = round_levels(float(finite.min()), float(finite.max()))
         lines = axes.contour(ground.x, ground.y, np.ma.masked_invalid(values.T), levels=levels, colors=[COLOURS[0]], linewidths=1.3, zorder=3)
-        for text in axes.clabel(lines, fmt=lambda value: f"{value:.4g}", fontsize=LABEL, inline=False, colors=[INK]):
-            outline(text)
-            places = zip(text.get_position(), (axes.get_xlim(), axes.get_ylim()), strict=True)
-            text.set_visible(all(0.04 < (at - low) / (high - low) < 0.96 for at, (low, high) in places))
-    else:
-        axes.text(0.5, 0.05, f"the same everywhere: {finite[0]:.4g} {field.unit}", ha="center", transform=axes.transAxes, fontsize=LABEL)
+        _thin(axes, axes.clabel(lines, fmt=lambda value: f"{value:.4g}", fontsize=LABEL, inline=False, colors=[INK]))
+
+
+def _thin(axes: Axes, labels: list[Any]) -> None:
+    """Leave of the contours' labels those that stand clear of the frame and of each other."""
+    (left, right), (low, high) = axes.get_xlim(), axes.get_ylim()
+    kept: list[tuple[float, float]] = []
+    for text in labels:
+        outline(text)
+        x, y = ((text.get_position()[0] - left) / (right - left), (text.get_position()[1] - low) / (high - low))
+        clear = 0.04 < x < 0.96 and 0.04 < y < 0.96 and all(abs(x - a) > 0.12 or abs(y - b) > 0.07 for a, b in kept)
+        text.set_visible(clear)
+        kept += [(x, y)] if clear else []
+
+
+def _remark(axes: Axes, text: str) -> None:
+    outline(axes.text(0.5, 0.05, text, ha="center", transform=axes.transAxes, fontsize=LABEL, zorder=4))
 
 
 def _absent(axes: Axes, ground: Ground, field: Field) -> None:

@@ -3,10 +3,10 @@
 from collections.abc import Mapping
 from typing import Any
 
-from sweep.report.answers import limit_scale, responses_table
+from sweep.report.answers import limit_scale, responses_table, why_not
 from sweep.report.blocks import Block, Cell, Section, Table, Words, figure, heads, row
 from sweep.report.display import NONE, PERCENT, conversion, decimals_for, duration, kelvins, number, reach, scale_for, share, temperature
-from sweep.report.prepare_failure import reach_name
+from sweep.report.prepare_failure import feeds, reach_name
 from sweep.report.prepare_window import variable_scale
 from sweep.report.results import Results
 from sweep.report.wording import pieces, plain, sentence, several, words
@@ -30,7 +30,9 @@ def trade(batch: Mapping[str, Any]) -> tuple[str, ...]:
     lost, missed = given.get("productivity_lost_by_target"), given.get("conversion_lost_by_most_productive")
     lines = []
     if lost is not None:
-        lines.append(f"Running to the target gives away {share(lost)} of the highest productivity.")
+        longer = given.get("longer_to_target_s")
+        later = f" and takes {duration(longer)} longer" if longer is not None and longer > 0.0 else ""
+        lines.append(f"Running to the target gives away {share(lost)} of the highest productivity{later}.")
     if missed is not None:
         lines.append(f"Stopping at the most productive time gives away {PERCENT.change(missed, digits=3)} of conversion against the target.")
     return tuple(lines)
@@ -43,8 +45,7 @@ def batch_time(results: Results, pictures: list[Block]) -> Section:
         blocks.append(_not_assessed(why))
     else:
         if batch.get("why_not"):
-            reason = batch["why_not"]
-            blocks.append(Words((sentence(f"The target is not reached ({reason['cause']}): {reason['sentence']}"),), look="bad"))
+            blocks.append(Words((sentence(f"The target is not reached: {why_not(batch['why_not'])}"),), look="bad"))
         head = heads("Choice", "Batch time", "Cycle time", "Conversion", "Productivity")
         rows = tuple(_option_row(option) for option in batch.get("options") or ())
         turnaround = duration(batch.get("turnaround_s"))
@@ -99,9 +100,16 @@ def window(results: Results, pictures: list[Block]) -> Section:
     lines.append("The set-point lies inside." if inside else "The set-point lies outside: at least one limit does not hold there.")
     if found.get("pieces") is not None:
         lines.append(pieces(found))
-    if found.get("resolution") is not None and found.get("marches") is not None:
-        lines.append(f"Found with {several(found['marches'], 'batch', 'batches')}, {found['resolution']} levels an axis.")
+    lines += [resolved(found)] if found.get("resolution") and found.get("marches") else []
+    if note := (found.get("set_point") or {}).get("reason"):
+        lines.append(sentence(str(note)))
     return Section("window", "Operating window", (Words((" ".join(lines),), look="" if inside else "bad"), *_window_tables(results), *pictures))
+
+
+def resolved(found: Mapping[str, Any]) -> str:
+    """Return how finely the window was traced: the edge's place as a share of an axis, or the levels of a grid."""
+    fine, marched = found["resolution"], several(found["marches"], "batch", "batches")
+    return f"Found with {marched}, the edge to within {share(fine)} of each axis." if fine < 1 else f"Found with {marched}, {fine} levels an axis."
 
 
 def _failure_rows(failure: Mapping[str, Any]) -> tuple[tuple[Cell, ...], ...]:
@@ -137,9 +145,9 @@ def failure(results: Results, pictures: list[Block]) -> Section:
     reason = sentence(str(found["class_reason"])) if found.get("class_reason") else ""
     said = "Criticality class: none given." if number_ is None else f"Criticality class {number(number_)}."
     blocks: list[Block] = [Words((f"{said} {reason}".strip(),))]
-    feeds = f"Feeds at the failure: {found['feeds']}. " if found.get("feeds") else ""
     head = (Cell("Quantity"), figure("Value"), Cell("Note"))
-    blocks.append(Table("Were cooling lost at the worst moment", head, _failure_rows(found), feeds + "Adiabatic from the failure on."))
+    note = f"{feeds(found)} Adiabatic from the failure on.".strip()
+    blocks.append(Table("Were cooling lost at the worst moment", head, _failure_rows(found), note))
     path = found.get("path") or {}
     if path.get("reaches"):
         caption = f"Times to act, failure at {duration(path.get('failure_time_s'))}"

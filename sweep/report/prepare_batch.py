@@ -12,6 +12,7 @@ from sweep.report.results import Results
 from sweep.report.wording import words
 
 PROFILE = ("batch_profile", "The batch at its set-point")
+FAR = 2.0  # the productivity is drawn up to so many times the latest choice
 PRODUCTIVITY = ("batch_time", "Conversion and productivity against batch time")
 
 
@@ -39,14 +40,27 @@ def _panel(table: pd.DataFrame, label: str, columns: Mapping[str, str], scale: S
     return Panel(f"{label} ({scale.unit})", tuple(found), levels) if found else None
 
 
+def batch_end(results: Results) -> float | None:
+    """Return when the batch ends (s); from its cycle and turnaround where batch times were not asked for; None where it is not known."""
+    if results.block("batch_time").get("batch_time_s") is not None:
+        return float(results.block("batch_time")["batch_time_s"])
+    cycle, inputs = (results.block("set_point").get("responses") or {}).get("cycle_time_s"), results.table("inputs")
+    if cycle is None or inputs is None or not {"path", "value_si"} <= set(inputs.columns):
+        return None
+    turnaround = inputs.loc[inputs["path"] == "recipe.turnaround", "value_si"]
+    return float(cycle) - float(turnaround.iloc[0]) if len(turnaround) == 1 else None
+
+
 def _target(results: Results) -> tuple[Level, ...]:
-    bound = results.block("batch_time").get("conversion_target")
+    limits = [limit["bound"] for limit in results.summary.get("limits") or () if limit["name"] == "conversion" and limit["sense"] == "at_least"]
+    bound = results.block("batch_time").get("conversion_target", limits[0] if limits else None)
     return () if bound is None else (Level(f"target {conversion(bound)}", PERCENT.one(bound), limit=False),)
 
 
 def _moments(results: Results, scale: Scale, end: float) -> tuple[Moment, ...]:
     batch = results.block("batch_time")
-    named = (("target reached", batch.get("time_to_target_s")), ("batch ends", batch.get("batch_time_s")))
+    crossing = batch.get("time_to_target_s", (results.block("set_point").get("responses") or {}).get("time_to_target_s"))
+    named = (("target reached", crossing), ("batch ends", batch_end(results)))
     return tuple(Moment(f"{name}, {scale.text(at, digits=3)}", scale.one(at)) for name, at in named if at is not None and at <= end * (1 + 1e-9))
 
 
@@ -75,16 +89,19 @@ def profile(results: Results) -> Curves | Absent:
     table = results.table("set_point_profile")
     if table is None:
         return Absent(*PROFILE, "analyses/set_point_profile.csv is missing or empty")
+    last, end = float(table["time_s"].iloc[-1]), batch_end(results)
+    if end is not None and end < last:  # what the march computes beyond the batch's end is no part of the batch
+        table, last = table[table["time_s"] <= end * (1 + 1e-9)], end
     seconds = table["time_s"].to_numpy(dtype=np.float64)
     scale = axis_times(float(seconds[-1] - seconds[0]))
     panels = _profile_panels(results, table)
     if not panels:
         return Absent(*PROFILE, "analyses/set_point_profile.csv holds none of the quantities drawn")
     shown = ", ".join(panel.label.rsplit(" (", 1)[0].lower() for panel in panels)
-    caption = f"Batch at the set-point: {shown} over time. Limits are the long-dashed lines." + _late_target(results, float(seconds[-1]))
+    caption = f"Batch at the set-point: {shown} over time. Limits are the long-dashed lines." + _late_target(results, last)
     description = f"{len(panels)} panels over time, one above the other: {shown}."
     x = scale.of(seconds)
-    moments = _moments(results, scale, float(seconds[-1]))
+    moments = _moments(results, scale, last)
     numbers = _numbers(f"time ({scale.unit})", x, panels)
     return Curves(*PROFILE, caption, description, f"Time since the start of the batch ({scale.unit})", x, tuple(panels), moments, numbers)
 
@@ -105,6 +122,8 @@ def productivity(results: Results) -> Curves | Absent:
     why = results.why_not("batch_time")
     if why or table is None:
         return Absent(*PRODUCTIVITY, why or "analyses/batch_time.csv is missing or empty")
+    latest = max((float(option["time_s"]) for option in options(results)), default=np.inf)
+    table = table[table["time_s"] <= max(FAR * latest, float(table["time_s"].iloc[0]))]
     seconds = table["time_s"].to_numpy(dtype=np.float64)
     scale = axis_times(float(seconds[-1]))
     panels = [_panel(table, "Conversion", {"conversion": "conversion"}, PERCENT, _target(results)), _made(table)]

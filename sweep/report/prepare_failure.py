@@ -6,14 +6,16 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from sweep.report.curves import Absent, Curves, Level, Line, Moment, Panel
-from sweep.report.display import CELSIUS, HOURS, Scale, axis_times, duration, temperature, times
+from sweep.report.curves import Absent, Array, Curves, Level, Line, Moment, Panel
+from sweep.report.display import CELSIUS, HOURS, Scale, axis_times, duration, number, temperature, times, with_unit
 from sweep.report.prepare_batch import limit_levels
 from sweep.report.results import Results
 from sweep.report.wording import words
 
 DIAGRAM = ("failure_diagram", "Were cooling lost: temperatures against the time of failure")
 PATH = ("failure_path", "After the worst failure: temperature against time")
+STILL = 0.05  # K below its highest: the path has come to rest
+ABOVE = 20.0  # K of the path drawn above all that is marked
 LIMITED = ("max_temperature", "mtsr")
 
 
@@ -31,11 +33,14 @@ def _levels(results: Results) -> tuple[Level, ...]:
 
 
 def _near(levels: tuple[Level, ...], lines: tuple[Line, ...]) -> tuple[tuple[Level, ...], str]:
-    """Return the levels that leave the curves room, and a sentence about those far above."""
+    """Return the levels that leave the curves room, and a sentence about those far off."""
     drawn = np.concatenate([line.y[np.isfinite(line.y)] for line in lines])
-    top = drawn.max() + 2.0 * max(float(np.ptp(drawn)), 20.0)
-    far = [level.name for level in levels if level.value > top]
-    return tuple(level for level in levels if level.value <= top), f" Above the figure: {'; '.join(far)}." if far else ""
+    top = drawn.max() + 3.0 * max(float(np.ptp(drawn)), 20.0)
+    low = drawn.min() - 0.5 * max(float(np.ptp(drawn)), 20.0)
+    above = [level.name for level in levels if level.value > top]
+    below = [level.name for level in levels if level.value < low]
+    said = (f" Above the figure: {'; '.join(above)}." if above else "") + (f" Below it: {'; '.join(below)}." if below else "")
+    return tuple(level for level in levels if low <= level.value <= top), said
 
 
 def _worst(failure: Mapping[str, Any], scale: Scale) -> tuple[Moment, ...]:
@@ -70,6 +75,8 @@ def diagram(results: Results) -> Curves | Absent:
     x = scale.of(seconds)
     numbers = table.rename(columns={"accumulation": "accumulation (1)"}).copy()
     numbers["time_s"] = x
+    if "tmr_ad_censored" in numbers:
+        numbers["tmr_ad_censored"] = numbers["tmr_ad_censored"].map({1.0: "yes", 0.0: "no"}).fillna("")
     shown = {"time_s": f"time of failure ({scale.unit})", "temperature_K": "in normal operation (°C)", "mtsr_K": "MTSR (°C)", "tmr_ad_s": "TMRad (h)",
              "tmr_ad_censored": "TMRad is a lower bound"}  # fmt: skip
     for column, converted in (("temperature_K", CELSIUS), ("mtsr_K", CELSIUS), ("tmr_ad_s", HOURS)):
@@ -110,25 +117,52 @@ def path(results: Results) -> Curves | Absent:
         return Absent(*PATH, why or "analyses/failure_path.csv is missing or empty")
     failure = results.block("failure")
     seconds, kelvin = table["time_after_failure_s"].to_numpy(dtype=np.float64), table["temperature_K"].to_numpy(dtype=np.float64)
-    positive = seconds[seconds > 0]
+    drawn = slice(0, 1 + int(np.argmax(kelvin >= kelvin.max() - STILL)))
+    positive = seconds[drawn][seconds[drawn] > 0]
     logarithmic = bool(positive.size > 2 and positive[-1] > 50.0 * positive[0])
-    scale = HOURS if logarithmic else times(float(seconds[-1]))
+    scale = HOURS if logarithmic else times(float(seconds[drawn][-1]))
     stage = table["stage"].astype(str).to_numpy() if "stage" in table else np.full(len(table), "temperature")
-    named = {"synthesis": "synthesis runs on", "decomposition": "decomposition"}
-    lines = tuple(Line(named.get(key, key), np.where(_joined(stage, key), CELSIUS.of(kelvin), np.nan)) for key in dict.fromkeys(stage.tolist()))
+    lines = _stages(np.append(stage[drawn][:-1], stage[drawn][-2:-1]), CELSIUS.of(kelvin[drawn]))  # at rest nothing leads
     x = scale.of(seconds)
     moments = _reached(failure, scale, float(positive[0]) if logarithmic else 0.0)
-    when = (failure.get("path") or {}).get("failure_time_s")
-    lost = "at the worst moment" if when is None else f"{duration(when, digits=3)} after the start, the worst moment"
-    caption = f"Cooling lost {lost}; no heat leaves the vessel."
-    caption += f" Feeds: {failure['feeds']} at the failure." if failure.get("feeds") else ""
-    caption += " Time is on a logarithmic scale." if logarithmic else ""
     levels, beyond = _near(_levels(results), lines)
+    top, ends = _top(levels, moments, CELSIUS.one(float(kelvin.max())))
     numbers = pd.DataFrame({f"time after failure ({scale.unit})": x, "temperature (°C)": CELSIUS.of(kelvin), "stage": stage})
-    panel = Panel("Temperature (°C)", lines, levels)
+    caption = _path_caption(failure) + (" Time is on a logarithmic scale." if logarithmic else "") + ends + beyond
     description = "Temperature rising over the time after the failure, with the moments marked at which levels are reached."
     label = "Time after the failure" + ("" if logarithmic else f" ({scale.unit})")
-    return Curves(*PATH, caption + beyond, description, label, x, (panel,), moments, numbers, logarithmic)
+    panel = Panel("Temperature (°C)", lines, levels, top)
+    return Curves(*PATH, caption, description, label, x[drawn], (panel,), moments, numbers, logarithmic)
+
+
+def _stages(stage: np.ndarray[Any, Any], celsius: Array) -> tuple[Line, ...]:
+    """Return a line for each kind of reaction that leads."""
+    named = {"synthesis": "synthesis leads", "decomposition": "decomposition leads"}
+    return tuple(Line(named.get(key, key), np.where(_joined(stage, key), celsius, np.nan)) for key in dict.fromkeys(stage.tolist()))
+
+
+def _top(levels: tuple[Level, ...], moments: tuple[Moment, ...], end: float) -> tuple[float | None, str]:
+    """Return where the temperature axis ends (°C), above all that is marked, and a sentence where the path runs on above."""
+    marked = [level.value for level in levels] + [moment.y for moment in moments if moment.y is not None]
+    if not marked or end <= max(marked) + ABOVE:
+        return None, ""
+    return max(marked) + ABOVE, f" The path runs on above the figure, to {with_unit(number(end, 1), '°C')}."
+
+
+def _path_caption(failure: Mapping[str, Any]) -> str:
+    when = (failure.get("path") or {}).get("failure_time_s")
+    lost = "at the worst moment" if when is None else f"{duration(when, digits=3)} after the start, the worst moment"
+    return f"Cooling lost {lost}; no heat leaves the vessel, every reaction runs. {feeds(failure)}".strip()
+
+
+def feeds(failure: Mapping[str, Any]) -> str:
+    """Return what the feeds do when cooling fails."""
+    if not failure.get("feeds"):
+        return ""
+    if failure["feeds"] == "stop":
+        later = failure.get("feeds_stop_after_s") or 0.0
+        return f"Feeds stop {duration(later)} after the failure." if later else "Feeds stop at the failure."
+    return f"Feeds {failure['feeds']} at the failure."
 
 
 def _joined(stage: np.ndarray[Any, Any], key: str) -> np.ndarray[Any, Any]:

@@ -7,7 +7,8 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from sweep.report.curves import Absent, Array, Boundary, ContourMap, Field, Ground, Reach, WindowMap
+from sweep.base.units import unit_of
+from sweep.report.curves import Absent, Array, Boundary, ContourMap, Field, Ground, Reach, WindowMap, within
 from sweep.report.display import Scale, scale_as_written, scale_for, times
 from sweep.report.results import Results
 from sweep.report.wording import plain, words
@@ -22,7 +23,8 @@ def variable_scale(results: Results, name: str, unit: str = "") -> Scale:
     given = (results.block("set_point").get("inputs") or {}).get(name)
     if not given:
         return scale_for(unit) if unit and unit != "s" else Scale(unit or "SI")
-    return scale_as_written(str(given.get("written") or ""), str(given.get("unit") or ""))
+    own = given.get("written_unit") or unit_of(str(given.get("written") or ""))
+    return scale_as_written(str(own or ""), str(given.get("unit") or ""))
 
 
 def axis_label(results: Results, name: str) -> str:
@@ -143,9 +145,7 @@ def window(results: Results) -> WindowMap | Absent:
 def _caption(drawn: Ground) -> str:
     text = "Plain: every limit holds. Hatched: at least one limit does not, by the one that is crossed first."
     text += " Arrows: from the set-point to the edge along each axis, the rest unchanged."
-    at = drawn.set_point
-    within = at is not None and all(values.min() <= place <= values.max() for place, values in zip(at, (drawn.x, drawn.y), strict=True))
-    return text + ("" if within else " The set-point lies outside the range mapped.") + " Between the points computed the map is interpolated."
+    return text + ("" if within(drawn) else " The set-point lies outside the range mapped.") + " Between the points computed the map is interpolated."
 
 
 def _grid_numbers(
@@ -164,6 +164,8 @@ def _grid_numbers(
 
 def limit_label(limit: Mapping[str, Any], results: Results) -> str:
     """Return a limit's label: its name, and its sense where the study limits it both ways."""
+    if limit.get("label"):
+        return str(limit["label"])
     both = sum(other["name"] == limit["name"] for other in results.summary.get("limits") or ()) > 1
     return f"{limit['name']} {str(limit['sense']).replace('_', ' ')}" if both else str(limit["name"])
 

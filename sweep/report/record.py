@@ -7,7 +7,7 @@ import pandas as pd
 from sweep.report.answers import setting
 from sweep.report.blocks import Block, Cell, Section, Signatures, Table, Text, Words, heads, row, table
 from sweep.report.curves import Absent, Prepared
-from sweep.report.display import scale_for
+from sweep.report.display import pretty, scale_for
 from sweep.report.prepare_window import variable_scale
 from sweep.report.results import Results
 from sweep.report.wording import plain, sentence, several, split_unit
@@ -26,30 +26,37 @@ def inputs(results: Results) -> Section:
     blocks = list[Block]()
     if assumptions := results.summary.get("assumptions"):
         blocks += [Words(("What the model assumes:", *map(sentence, assumptions)), listed=True)]
-    named = results.block("set_point").get("inputs") or {}
-    rows = tuple(row(plain(name), setting(results, name), str((named[name] or {}).get("written") or "")) for name in named)
+    variables = results.block("set_point").get("inputs") or {}
+    rows = tuple(row(plain(name), setting(results, name)) for name in variables)
     if rows:
-        blocks.append(Table("Variables at the set-point", heads("Variable", "Value", "As written"), rows))
+        blocks.append(Table("Variables at the set-point", heads("Variable", "Value"), rows))
     given = results.table("inputs")
     if given is None:
         blocks.append(Words(("The inputs as understood are not listed: analyses/inputs.csv is missing or empty.",), look="warning"))
     else:
-        shown = given.rename(columns=lambda name: plain(str(name)).replace("si ", "SI ")).astype(object)
-        shown = shown.fillna("not given" if "source" in given else "")
-        blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=len(given) > 60, digits=6))
+        named = {"value_si": "SI value", "si_value": "SI value", "unit_si": "SI unit"}
+        if "unit_si" in given:
+            given = given.assign(unit_si=given["unit_si"].map(lambda unit: "" if pd.isna(unit) else pretty(str(unit))))
+        shown = given.rename(columns=lambda name: named.get(str(name), plain(str(name))))
+        blocks.append(table(shown, "Inputs as understood, with their sources", "analyses/inputs.csv", INPUTS, folded=False, digits=6))
     if text := str(results.manifest.get("study") or ""):
         blocks.append(Text("The study file as it was run", text))
     return Section("inputs", "Assumptions and inputs", tuple(blocks))
+
+
+def _said(text: str, lines: list[str]) -> bool:
+    return any(text.lower() in line.lower() for line in lines)
 
 
 def not_assessed(results: Results, drawn: list[Prepared]) -> Section:
     """Return what was not assessed, and the figures that are missing for it."""
     lines = [sentence(text) for text in results.summary.get("not_assessed") or ()]
     named = (("batch_time", "Batch time"), ("window", "Operating window"), ("failure", "Cooling failure"))
-    lines += [line for name, said in named if (why := results.why_not(name)) and (line := sentence(f"{said}: {why}")) not in lines]
+    lines += [line for name, said in named if (why := results.why_not(name)) and not _said(why, lines) and (line := sentence(f"{said}: {why}"))]
     left_out = "Left out by the model: mass transfer between phases, solids, imperfect mixing, heat of crystallisation. Emergency relief: not sized."
     figures = [sentence(f"{figure.title}: {figure.why}") for figure in drawn if isinstance(figure, Absent)]
-    blocks: list[Block] = [Words((*lines, left_out), listed=True, look="warning")]
+    lines += [] if _said("Left out by the model", lines) else [left_out]
+    blocks: list[Block] = [Words(tuple(lines), listed=True, look="warning")]
     if figures:
         blocks.append(Words(("Figures not drawn, and why:", *figures), listed=True))
     return Section("not-assessed", "What was not assessed", tuple(blocks))
@@ -84,8 +91,9 @@ def points(results: Results) -> Section:
 
 def cautions(results: Results) -> Section:
     """Return what the reader must bear in mind."""
-    own = [said for said in map(sentence, results.summary.get("cautions") or ()) if said not in SCREENS]
-    return Section("cautions", "Cautions", (Words((*SCREENS, *own), listed=True, look="warning"),))
+    own = tuple(map(sentence, results.summary.get("cautions") or ()))
+    standing = () if any("does not approve" in said for said in own) else SCREENS
+    return Section("cautions", "Cautions", (Words((*standing, *own), listed=True, look="warning"),))
 
 
 def versions(results: Results) -> Section:

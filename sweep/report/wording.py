@@ -10,6 +10,11 @@ _WORDS = {
     "productivity": "productivity", "max_pressure": "highest pressure", "criticality_class": "criticality class",
     "time_of_max_temperature": "time of the highest temperature", "energy_balance_error": "energy balance error",
     "mtsr_time": "time of the highest MTSR", "tmr_ad_time": "time of the shortest TMRad", "tmr_ad_censored": "TMRad is a lower bound",
+    "td24_censored": "T_D24 is a lower bound", "tmr_ad_closed_form": "TMRad by the closed form",
+    "adiabatic_rise_synthesis": "adiabatic rise of the synthesis", "adiabatic_rise_decomposition": "adiabatic rise of the decomposition",
+    "highest_conversion": "highest conversion within the time marched", "at_target": "productivity at the target",
+    "most_productive": "highest productivity", "most_productive_time": "most productive batch time",
+    "most_productive_conversion": "conversion at the most productive time",
 }  # fmt: skip
 _PARTS = (("yield_", "yield of "), ("fraction_", "mole fraction of "))
 UNITS = (

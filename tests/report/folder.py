@@ -10,9 +10,9 @@ import pandas as pd
 
 STUDY = '# Invented data for a demonstration; not for any real vessel.\n[study]\ntitle = "Fed-batch acylation in vessel K-310"\nseed = 310\n'
 SET = {
-    "charge_temperature": {"value": 318.15, "unit": "K", "written": "45 degC"},
-    "dosing_time": {"value": 10800.0, "unit": "s", "written": "3 h"},
-    "amine": {"value": 2200.0, "unit": "mol/m^3", "written": "2.2 mol/L"},
+    "charge_temperature": {"value": 318.15, "unit": "K", "written_unit": "degC"},
+    "dosing_time": {"value": 10800.0, "unit": "s", "written_unit": "h"},
+    "amine": {"value": 2200.0, "unit": "mol/m^3", "written_unit": "mol/L"},
 }
 BINDING = ("mtsr", "cooling_duty", "conversion", "per_product_diamide", "tmr_ad")
 
@@ -20,7 +20,17 @@ BINDING = ("mtsr", "cooling_duty", "conversion", "per_product_diamide", "tmr_ad"
 def _limit(name: str, sense: str, bound: float, value: float | None, unit: str, reason: str = "") -> dict[str, Any]:
     margin = None if value is None else (bound - value if sense == "at_most" else value - bound)
     holds = margin is not None and margin >= 0
-    return {"name": name, "sense": sense, "bound": bound, "value": value, "margin": margin, "unit": unit, "holds": holds, "reason": reason}
+    return {
+        "name": name,
+        "sense": sense,
+        "bound": bound,
+        "value": value,
+        "margin": margin,
+        "unit": unit,
+        "holds": holds,
+        "reason": reason,
+        "label": name,
+    }
 
 
 LIMITS = [
@@ -28,23 +38,23 @@ LIMITS = [
     _limit("mtsr", "at_most", 353.15, 345.26, "K"),
     _limit("tmr_ad", "at_least", 86400.0, 1.02e6, "s"),
     _limit("cooling_duty", "at_most", 120e3, 61.4e3, "W"),
-    _limit("per_product_diamide", "at_most", 0.004, 0.00162, ""),
-    _limit("conversion", "at_least", 0.985, 0.9893, ""),
+    _limit("per_product_diamide", "at_most", 0.004, 0.00162, "1"),
+    _limit("conversion", "at_least", 0.985, 0.9893, "1"),
 ]
 BATCH_TIME = {
     "time_to_target_s": 20150.0, "why_not": None, "highest_conversion": 0.9997, "conversion_target": 0.985, "batch_time_s": 21600.0,
     "cycle_time_s": 34200.0, "turnaround_s": 12600.0,
     "options": [
         {"name": name, "time_s": time, "cycle_time_s": time + 12600.0, "conversion": conversion, "productivity": made,
-         "productivity_unit": "kg/m^3/s"}
+         "productivity_unit": "kg/m3/s"}
         for name, time, conversion, made in (
             ("as written", 21600.0, 0.9893, 0.004747), ("to target", 20150.0, 0.985, 0.004935), ("most productive", 12100.0, 0.9105, 0.006049),
         )
     ],
-    "trade": {"productivity_lost_by_target": 0.1842, "conversion_lost_by_most_productive": 0.0745},
+    "trade": {"productivity_lost_by_target": 0.1842, "conversion_lost_by_most_productive": 0.0745, "longer_to_target_s": 8050.0},
 }  # fmt: skip
 WINDOW = {
-    "axes": ["charge_temperature", "dosing_time"], "at": {"amine": 2200.0}, "safe_share": 0.4127, "marches": 1184, "resolution": 15,
+    "axes": ["charge_temperature", "dosing_time"], "at": {"amine": 2200.0}, "safe_share": 0.4127, "marches": 1184, "resolution": 0.005,
     "limits_binding": [{"name": "conversion", "share": 0.41}, {"name": "mtsr", "share": 0.27}, {"name": "max_temperature", "share": 0.21},
         {"name": "per_product_diamide", "share": 0.11}],
     "set_point": {
@@ -76,9 +86,10 @@ SUMMARY: dict[str, Any] = {
     "set_point": {"inputs": SET, "status": "done", "reason": "", "responses": {
         "conversion": 0.9893, "max_temperature_K": 333.62, "time_of_max_temperature_s": 16800.0, "cooling_duty_W": 61.4e3, "heat_release_W": 48.9e3,
         "accumulation": 0.312, "yield_amide": 0.9871, "per_product_diamide": 0.00162, "energy_balance_error": 3.1e-7, "cycle_time_s": 34200.0,
-        "productivity_kg_per_m3_s": 0.004747, "criticality_class": 2, "tmr_ad_censored": False, "mtsr_K": 345.26}},
+        "productivity_kg_per_m3_s": 0.004747, "criticality_class": 2, "tmr_ad_censored": False, "mtsr_K": 345.26,
+        "adiabatic_rise_synthesis_K": 92.4}},
     "limits": LIMITS,
-    "nearest_limit": {"name": "conversion", "sense": "at_least", "margin": 0.0043, "unit": "", "share": 0.018,
+    "nearest_limit": {"name": "conversion", "sense": "at_least", "margin": 0.0043, "unit": "1", "label": "conversion", "share": 0.018,
         "of": "the spread of conversion over the plan's points"},
     "batch_time": BATCH_TIME, "window": WINDOW, "failure": FAILURE,
     "points": {"planned": 2025, "done": 2025, "runaway": 0, "failed": 0, "all_hold": 611},
@@ -176,7 +187,7 @@ def failure_tables() -> dict[str, pd.DataFrame]:
     return {
         "failure_times": pd.DataFrame({
             "time_s": table["time_s"], "temperature_K": table["temperature_K"], "mtsr_K": mtsr, "tmr_ad_s": np.minimum(reach, 2592000.0),
-            "tmr_ad_censored": reach >= 2592000.0, "accumulation": table["accumulation"]}),
+            "tmr_ad_censored": (reach >= 2592000.0).astype(float), "accumulation": table["accumulation"]}),
         "failure_path": pd.DataFrame({
             "time_after_failure_s": time, "temperature_K": np.concatenate([synthesis, decomposition]),
             "stage": ["synthesis"] * 40 + ["decomposition"] * 120}),
@@ -186,8 +197,8 @@ def failure_tables() -> dict[str, pd.DataFrame]:
 def tables() -> dict[str, pd.DataFrame]:
     inputs = pd.DataFrame({
         "path": ["reactions.acylation.rate_constant.value", "reactions.acylation.heat.value", "vessel.U", "recipe.charge.temperature"],
-        "value": ["2.6e-3 L/mol/s", "-112 kJ/mol", "310 W/m2/K", "45 degC"], "si_value": [2.6e-6, -112000.0, 310.0, 318.15],
-        "source": ["runs 3 to 7", "", "", ""]})  # fmt: skip
+        "written": ["2.6e-3 L/mol/s", "-112 kJ/mol", "310 W/m2/K", "45 degC"], "value_si": [2.6e-6, -112000.0, 310.0, 318.15],
+        "unit_si": ["mol**(-1)*m**(3)*s**(-1)", "J/mol", "W/m^2/K", "K"], "source": ["runs 3 to 7", "", "", ""]})  # fmt: skip
     return {
         "set_point_profile": profile_table(), "window_grid": grid_table(), "window_boundary": boundary_table(),
         **batch_time_tables(), **failure_tables(),
@@ -245,7 +256,7 @@ def not_reached() -> tuple[dict[str, Any], dict[str, Any], dict[str, pd.DataFram
     batch["why_not"] = {"cause": "not enough reactant", "sentence": "The feed brings 0.95 equivalents; at most 95.1 % of the amine can be converted."}
     batch["options"][0] |= {"conversion": 0.951, "cycle_time_s": None, "productivity": None}
     batch["options"][1] |= {"time_s": None, "cycle_time_s": None, "conversion": None, "productivity": None}
-    summary["limits"][-1] = _limit("conversion", "at_least", 0.985, 0.951, "")
+    summary["limits"][-1] = _limit("conversion", "at_least", 0.985, 0.951, "1")
     summary["limits"][2] = _limit("tmr_ad", "at_least", 86400.0, None, "s", "no decomposition reaction is given")
     summary["nearest_limit"] = None
     summary["window"]["set_point"] |= {"holds": False, "distances": []}
@@ -282,7 +293,7 @@ def hostile() -> tuple[dict[str, Any], dict[str, Any], dict[str, pd.DataFrame]]:
     manifest["study"] = f'title = "{HOSTILE}"'
     for name in ("window_grid", "window_boundary", "batch_time_map"):
         found[name] = found[name].rename(columns={"charge_temperature_K": f"{HOSTILE}_K"})
-    summary["limits"].append(_limit(f"per_product_{HOSTILE}", "at_most", 1.0, 0.5, ""))
+    summary["limits"].append(_limit(f"per_product_{HOSTILE}", "at_most", 1.0, 0.5, "1"))
     summary["window"]["limits_binding"].append({"name": f"per_product_{HOSTILE}", "share": 0.1})
     found["inputs"].loc[0, "source"] = HOSTILE
     return summary, manifest, found

@@ -66,15 +66,15 @@ def test_a_long_time_to_act_stands_in_hours_with_days_beside() -> None:
 
 
 @pytest.mark.parametrize(
-    ("text", "change", "written", "unit", "value"),
+    ("text", "change", "own", "unit", "value"),
     [
-        ("45 °C", "5 K", "45 degC", "K", 318.15), ("318.1 K", "5 K", "318.15 K", "K", 318.15), ("3 h", "0.001389 h", "3 h", "s", 10800.0),
-        ("2.2 mol/L", "0.005 mol/L", "2.2 mol/L", "mol/m^3", 2200.0), ("113 °F", "9 °F (difference)", "113 degF", "K", 318.15),
-        ("1.06", "5", "1.06", "", 1.06), ("12 %", "500 %", "12 %", "", 0.12), ("7 furlongish", "5 furlongish", "1 nonsense", "furlongish", 7.0),
+        ("45 °C", "5 K", "degC", "K", 318.15), ("318.1 K", "5 K", "K", "K", 318.15), ("3 h", "0.001389 h", "h", "s", 10800.0),
+        ("2.2 mol/L", "0.005 mol/L", "mol/L", "mol/m^3", 2200.0), ("113 °F", "9 °F (difference)", "degF", "K", 318.15),
+        ("1.06", "5", "", "1", 1.06), ("12 %", "500 %", "%", "1", 0.12), ("7 furlongish", "5 furlongish", "nonsense", "furlongish", 7.0),
     ],
 )  # fmt: skip
-def test_a_variable_is_shown_in_the_unit_it_was_written_in(text: str, change: str, written: str, unit: str, value: float) -> None:
-    scale = scale_as_written(written, unit)
+def test_a_variable_is_shown_in_the_unit_it_was_written_in(text: str, change: str, own: str, unit: str, value: float) -> None:
+    scale = scale_as_written(own, unit)
     assert (text.replace(" ", SPACE, 1), change.replace(" ", SPACE, 1)) == (scale.text(value), scale.change(5.0))
 
 
@@ -82,7 +82,10 @@ def test_responses_take_the_units_of_the_trade() -> None:
     assert KILOWATT == scale_for("W", "cooling_duty")
     assert PERCENT == scale_for("", "coolant_lost.conversion")
     assert Scale("kg/m³/h", 3600.0) == scale_for("kg/m^3/s", "productivity")
-    assert "" == scale_for("", "per_product_tar").unit
+    assert "" == scale_for("1", "per_product_tar").unit
+    assert PERCENT == scale_for("1", "conversion") == scale_for("", "highest_conversion")
+    assert Scale("kg/m³/h", 3600.0) == scale_for("kg/m3/s")
+    assert CELSIUS == scale_for("K", "coolant_lost.max_temperature")
     assert "h" == scale_for("s", "tmr_ad", 86400.0).unit
     assert "kg/m³" == pretty("kg/m^3")
 
@@ -106,3 +109,7 @@ def test_sentences_and_lists() -> None:
     assert ("per_product_tar", "") == split_unit("per_product_tar")
     assert "The window is in 2 separate pieces, with 1 hole." == pieces({"pieces": 2, "holes": 1})
     assert "There is no window." == pieces({"pieces": 0, "holes": 0})
+
+
+def test_a_difference_in_kelvin_is_never_shown_as_a_temperature() -> None:
+    assert f"92.4{SPACE}K" == scale_for("K", "adiabatic_rise_synthesis").text(92.4)

@@ -5,6 +5,7 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+import pandas as pd
 import pytest
 
 from sweep.report import prepare_batch, prepare_failure, prepare_window
@@ -41,8 +42,9 @@ def test_the_profile_stands_in_hours_degrees_and_kilowatt(tmp_path: Path) -> Non
 
 
 def test_a_short_batch_stands_in_minutes(tmp_path: Path) -> None:
-    def shorten(_: dict[str, Any], tables: dict[str, Any]) -> None:
+    def shorten(summary: dict[str, Any], tables: dict[str, Any]) -> None:
         tables["set_point_profile"]["time_s"] /= 4.0
+        summary["batch_time"] |= {"batch_time_s": 5400.0, "time_to_target_s": 5000.0}
 
     found = curves(prepare_batch.profile(results(tmp_path, shorten)))
     assert 90.0 == pytest.approx(found.x[-1])
@@ -53,6 +55,25 @@ def test_a_target_reached_after_the_end_is_said_and_not_marked(tmp_path: Path) -
     found = curves(prepare_batch.profile(results(tmp_path, lambda summary, _: summary["batch_time"].update(time_to_target_s=30000.0))))
     assert ["batch ends, 6\u00a0h"] == [moment.name for moment in found.moments]
     assert "after the batch's end, at 8.333\u00a0h" in found.caption
+
+
+def test_what_was_marched_beyond_the_batchs_end_is_not_drawn(tmp_path: Path) -> None:
+    found = curves(prepare_batch.profile(results(tmp_path, lambda summary, _: summary["batch_time"].update(batch_time_s=18000.0))))
+    assert 5.0 == pytest.approx(found.x[-1], abs=0.02)
+    assert found.numbers.iloc[-1, 0] <= 5.0
+
+
+def test_a_batch_without_batch_times_ends_by_its_cycle_and_keeps_its_target(tmp_path: Path) -> None:
+    def bare(summary: dict[str, Any], tables: dict[str, Any]) -> None:
+        del summary["batch_time"]
+        summary["set_point"]["responses"]["time_to_target_s"] = 15000.0
+        summary["set_point"]["responses"]["cycle_time_s"] = 30600.0
+        tables["inputs"].loc[len(tables["inputs"])] = ["recipe.turnaround", "3.5 h", 12600.0, "s", ""]
+
+    found = curves(prepare_batch.profile(results(tmp_path, bare)))
+    assert 5.0 == pytest.approx(found.x[-1], abs=0.02)
+    assert ["target reached, 4.17\u00a0h", "batch ends, 5\u00a0h"] == [moment.name for moment in found.moments]
+    assert [98.5] == pytest.approx([level.value for level in found.panels[1].levels])
 
 
 def test_a_quantity_that_is_missing_takes_only_its_panel_away(tmp_path: Path) -> None:
@@ -79,6 +100,7 @@ def test_the_diagram_marks_the_worst_moment_and_the_levels(tmp_path: Path) -> No
     assert "worst moment 3.12\u00a0h: MTSR 72.1\u00a0°C" == found.moments[0].name
     assert [70.0, 80.0, 110.0, 99.27] == pytest.approx([level.value for level in found.panels[0].levels])
     assert 283.3 == pytest.approx(found.numbers["TMRad (h)"].min(), rel=1e-2)
+    assert {"yes", "no"} == set(found.numbers["TMRad is a lower bound"])
 
 
 def test_a_level_far_above_the_curves_is_named_instead_of_drawn(tmp_path: Path) -> None:
@@ -92,6 +114,18 @@ def test_a_censored_tmrad_is_a_bound_and_has_no_moment(tmp_path: Path) -> None:
     found = curves(prepare_failure.diagram(results(tmp_path, lambda summary, _: summary["failure"].update(change))))
     assert 1 == len(found.moments)
     assert "TMRad is at least 30\u00a0d" in found.caption
+
+
+def test_a_path_far_above_all_marks_runs_out_of_the_figure_and_says_so(tmp_path: Path) -> None:
+    def hot(_: dict[str, Any], tables: dict[str, Any]) -> None:
+        end = tables["failure_path"].iloc[[-1, -1, -1]].assign(time_after_failure_s=[1.03e6, 1.04e6, 1.05e6], temperature_K=[623.15] * 3)
+        tables["failure_path"] = pd.concat([tables["failure_path"], end.assign(stage="synthesis")])
+
+    found = curves(prepare_failure.path(results(tmp_path, hot)))
+    assert 170.15 == pytest.approx(found.panels[0].top)
+    assert "The path runs on above the figure, to 350.0\u00a0°C." in found.caption
+    assert 1.03e6 / 3600.0 == pytest.approx(found.x[-1])  # at rest afterwards
+    assert not np.isfinite(found.panels[0].lines[0].y[50:]).any()  # where nothing is left to react, nothing leads
 
 
 def test_the_path_is_logarithmic_in_hours_and_its_stages_join(tmp_path: Path) -> None:
