@@ -11,6 +11,8 @@ from sweep.study.reader import Reader
 _MORE = {"vessel.U": "heat transfer coefficient", "vessel.stirrer_power": "power", "vessel.heat_loss.ambient": "temperature",
          "vessel.heat_loss.UA": "heat loss"}  # fmt: skip
 _SETTABLE = {**COOLING, **_MORE}
+_SHORTEST = 1e-3  # s; a feed shorter than this cannot be told from none beside a start of some years
+_LATEST = 1e9  # s
 
 
 def read_recipe(reader: Reader, table: dict[str, Any], names: set[str]) -> tuple[Charge, tuple[Feed, ...], bool]:
@@ -97,9 +99,9 @@ def _feed(reader: Reader, name: str, table: dict[str, Any], names: set[str]) -> 
             reader.quantity(f"{path}.{key}", table[key], dimension)
     if "start" not in table:
         reader.keep(f"{path}.start", 0.0, "s", "time")
-    reader.at_least(f"{path}.start", 0.0, False, "a batch begins at zero")
+    reader.at_least(f"{path}.start", 0.0, False, "a batch begins at zero, and ends", _LATEST)
     reader.needed(f"{path}.duration", "a feed takes time")
-    reader.at_least(f"{path}.duration", 0.0, True, "a feed takes time; what comes at once belongs to the charge")
+    reader.at_least(f"{path}.duration", _SHORTEST, False, "a feed takes time; what comes at once belongs to the charge", _LATEST)
     amount = reader.table(table, "amount", f"{path}.amount")
     fed = _species(reader, amount, f"{path}.amount", names)
     if not amount:

@@ -127,7 +127,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "variables.amine.sets",
         "accuracy.relative",
         "a quantity of the batch",
-        "cannot differ from point to point",
+        "the same for every point",
     ),
     "variable of the question": (
         AMINE,
@@ -136,7 +136,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "variables.amine.sets",
         "limits.mtsr.at_most",
         "a quantity of the batch",
-        "cannot differ from point to point",
+        "the same for every point",
     ),
     "variable of a molar mass": (
         AMINE,
@@ -145,7 +145,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "variables.amine.sets",
         "species.amide.molar_mass",
         "a quantity of the batch",
-        "cannot differ from point to point",
+        "the same for every point",
     ),
     "variable below absolute zero": (
         'from = "30 degC"',
@@ -162,7 +162,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "dosing_time  ",
         "variables.dosing_time.from",
         "-3600 (SI)",
-        "above 0",
+        "between 0.001 and 1e+09",
         "a feed takes time",
     ),
     "two dimensions in one variable": (
