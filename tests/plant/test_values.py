@@ -82,6 +82,13 @@ def test_no_columns_is_the_set_point_once_per_row():
     assert "done" == table.loc["a", "status"]
 
 
+def test_labels_may_repeat():
+    """Rows are told apart by their place: a failed point does not take its namesake along."""
+    table = evaluate(STUDY, pd.DataFrame({"dosing_time": [7200.0, -1.0, 7200.0]}, index=[3, 3, 3]))
+    assert ["done", "failed", "done"] == table["status"].tolist()
+    assert table["conversion"].isna().tolist() == [False, True, False]
+
+
 def test_no_rows():
     table = evaluate(STUDY, pd.DataFrame({"dosing_time": np.zeros(0)}))
     assert 0 == len(table)

@@ -291,6 +291,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "between -2e+06 and 2e+06",
         "no reaction",
     ),
+    "area upside down": ('"8.2 m2"', '"1.2 m2"', "area  ", "vessel.area.full", "1.2 m2", "at least the bottom, 1.5 m2", "more liquid wets more wall"),
     "endless batch": ('batch_time = "6 h"', 'batch_time = "6e20 h"', "6e20", "recipe.batch_time", "(SI)", "between 0 and 1e+12", "and ends"),
     "heat capacity of zero": ('"205 J/mol/K"', '"0 J/mol/K"', "0 J/mol/K", "species.amine.heat_capacity", "0 (SI)", "above 0", "positive"),
     "density of zero": ('"0.98 kg/L"', '"0 kg/L"', '"0 kg/L"', "species.amine.density", "0 (SI)", "above 0", "a density"),
