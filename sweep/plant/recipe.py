@@ -161,6 +161,11 @@ def charge_plant(study: Study, values: Values) -> Charged:
     return Charged(study, values, program, brought, blocks, starts, constants, cp, heats, extents, bounds)
 
 
+def _flat(table: Floats) -> Floats:
+    """Return (N, a, b) as (N, a b), for no points too."""
+    return table.reshape(table.shape[0], table.shape[1] * table.shape[2])
+
+
 def has_heat_capacities(study: Study, values: Values) -> bool:
     """Tell whether every species has a heat capacity."""
     return all(s.heat_capacity is not None or values.has(f"species.{s.name}.heat_capacity") for s in study.species)

@@ -1,13 +1,16 @@
 """Responses without a value are null with their reason, and a point's value is its own whatever its neighbours are."""
 
+from pathlib import Path
+
 import numpy as np
 import pandas as pd
 import pytest
 
 from sweep.plant import evaluate
 from sweep.study import read_text
-from tests.texts import fed_batch, isothermal
+from tests.texts import isothermal
 
+FED_BATCH = Path(__file__).parents[1] / "external" / "fed_batch.toml"
 SERIES = "A -> R | 1e-3 1/s\nR -> S | 1e-3 1/s"
 
 
@@ -23,7 +26,7 @@ def test_a_product_that_is_not_there_gives_no_ratio(set_point):
 
 def test_order_of_completion_is_each_points_own():
     """Which reaction completes first follows the heats of the point, not those of the company it is marched in."""
-    study = read_text(fed_batch())
+    study = read_text(FED_BATCH.read_text())
     heats = {"reactions.acylation.heat.value": [-112e3, -20e3, -112e3], "reactions.overacylation.heat.value": [-70e3, -300e3, -71e3]}
     points = pd.DataFrame(heats)
     whole = evaluate(study, points)["accumulation"]

@@ -26,10 +26,10 @@ STUDY = read_study(Path(__file__).parents[2] / "studies" / "acylation.toml")
         ({"dosing_time": [None]}, "points: dosing_time is nan in row 0"),
         ({"dosing_time": [1.0], "recipe.feeds.anhydride.duration": [1.0]}, "dosing_time and recipe.feeds.anhydride.duration both set"),
         ({"charge_temperature": [320.0], "cooling.start": [320.0]}, "points: columns charge_temperature and cooling.start both set cooling.start"),
-        ({"target.conversion": [0.9]}, "target.conversion belongs to the question, not to the batch"),
-        ({"accuracy.relative": [1e-9]}, "accuracy.relative belongs to the question, not to the batch"),
-        ({"limits.max_temperature.at_most": [350.0]}, "limits.max_temperature.at_most belongs to the question"),
-        ({"species.amide.molar_mass": [0.15]}, "species.amide.molar_mass belongs to the question"),
+        ({"target.conversion": [0.9]}, "points: target.conversion cannot differ from point to point"),
+        ({"accuracy.relative": [1e-9]}, "points: accuracy.relative cannot differ from point to point"),
+        ({"limits.max_temperature.at_most": [350.0]}, "points: limits.max_temperature.at_most cannot differ from point to point"),
+        ({"species.amide.molar_mass": [0.15]}, "points: species.amide.molar_mass cannot differ from point to point"),
     ],
 )
 def test_refused_whole(points, reason):

@@ -127,7 +127,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "variables.amine.sets",
         "accuracy.relative",
         "a quantity of the batch",
-        "the same for every point",
+        "cannot differ from point to point",
     ),
     "variable of the question": (
         AMINE,
@@ -136,7 +136,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "variables.amine.sets",
         "limits.mtsr.at_most",
         "a quantity of the batch",
-        "the same for every point",
+        "cannot differ from point to point",
     ),
     "variable of a molar mass": (
         AMINE,
@@ -145,7 +145,7 @@ CASES = {  # old, new, then the fault: the line's text, key, found, expected, be
         "variables.amine.sets",
         "species.amide.molar_mass",
         "a quantity of the batch",
-        "the same for every point",
+        "cannot differ from point to point",
     ),
     "variable below absolute zero": (
         'from = "30 degC"',
