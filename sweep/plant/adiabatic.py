@@ -108,7 +108,7 @@ def fail(study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Fl
 def feeding_time(study: Study, plant: Charged, rows: np.ndarray, time: Floats) -> Floats:
     """Return for how long (s) feeds run on after a failure, (M,)."""
     settings = study.failure
-    left = np.maximum(plant.brought.last_feed()[rows] - time, 0.0)
+    left: Floats = np.maximum(plant.brought.last_feed()[rows] - time, 0.0)
     if settings is None:
         return np.zeros_like(left)
     return left if settings.feeds == "run on" else np.minimum(left, settings.feeds_stop_after)

@@ -108,7 +108,8 @@ def _coarse(batch: Batch, found: list[Floats], tops: list[np.ndarray]) -> np.nda
     columns = [np.where(stretch == part, e, -np.inf).argmax(axis=1) for e in found for part in range(WINDOWS)]
     columns += [np.clip(top + d, 0, last) for top in tops for d in (-1, 1)]
     pairs = np.unique(np.stack([np.tile(rows, len(columns)), np.concatenate(columns)], axis=1), axis=0)
-    return pairs[batch.inside[tuple(pairs.T)]]
+    kept: np.ndarray = pairs[batch.inside[tuple(pairs.T)]]
+    return kept
 
 
 def _score(marched: Moments, which: int) -> Floats:
@@ -213,9 +214,9 @@ def failure_figures(study: Study, plant: Charged, batch: Batch, process: Floats,
         found["td24_K"], found["td24_censored"] = np.where(known, td24, np.nan), np.zeros(count)
     found["mtt_K"] = np.array(mtt)
     found["criticality_class"], why = classify(process, found["mtsr_K"], mtt, found["td24_K"])
-    for n, text in enumerate(why):
+    for text, reason in zip(why, reasons, strict=True):
         if text:
-            reasons[n].append(f"criticality_class: {text}")
+            reason.append(f"criticality_class: {text}")
     if not plant.values.has("failure.mtt"):
         for reason in reasons:
             reason.append("mtt: not given in [failure]")

@@ -1,6 +1,7 @@
 """Marching on from a state inside a batch: the recipe's segments cut to a stretch of time, with time counted from its start."""
 
 import numpy as np
+from numpy.typing import NDArray
 
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched, march
@@ -10,11 +11,12 @@ from sweep.plant.values import Floats
 _SAME = 1e-12  # relative; two times closer than this are one
 
 
-def segment_at(plant: Charged, rows: np.ndarray, time: Floats) -> np.ndarray:
+def segment_at(plant: Charged, rows: NDArray[np.int_], time: Floats) -> NDArray[np.int_]:
     """Return in which segment a time lies, (M,); a boundary belongs to the segment that begins there."""
     ends = plant.boundaries[rows]
     inside = ends > time[:, None] * (1.0 + _SAME)
-    return np.where(inside.any(axis=1), inside.argmax(axis=1), ends.shape[1] - 1)
+    place: NDArray[np.int_] = np.where(inside.any(axis=1), inside.argmax(axis=1), ends.shape[1] - 1)
+    return place
 
 
 def cut_segments(plant: Charged, rows: np.ndarray, start: Floats, stop: Floats) -> Floats:
@@ -22,7 +24,7 @@ def cut_segments(plant: Charged, rows: np.ndarray, start: Floats, stop: Floats) 
     total = plant.boundaries.shape[1]
     first = segment_at(plant, rows, start)
     order = np.minimum(first[:, None] + np.arange(total), total - 1)
-    blocks = plant.blocks[rows[:, None], order]
+    blocks: Floats = plant.blocks[rows[:, None], order]
     begins = blocks[:, :, at.T_START].copy()
     blocks[:, :, at.T_START] -= start[:, None]
     ends = np.where(order == total - 1, np.inf, blocks[:, :, at.T_END])
@@ -45,7 +47,7 @@ def states_at(plant: Charged, rows: np.ndarray, start: Floats, state: Floats, ti
 
 def passive_constants(plant: Charged, rows: np.ndarray, span: Floats) -> Floats:
     """Return constants (M, 8) of a march that seeks no target and ends after `span` (M,) s."""
-    constants = plant.constants[rows].copy()
+    constants: Floats = plant.constants[rows].copy()
     constants[:, at.END_FIXED] = constants[:, at.T_FINAL] = span
     constants[:, at.END_EARLIEST] = np.inf
     constants[:, at.TARGET_AMOUNT] = np.inf

@@ -9,9 +9,9 @@ from sweep.kernel.program import Program, compile_tables
 from sweep.plant import chemistry
 from sweep.plant.charge import Brought, brought_in
 from sweep.plant.values import Floats, Values
-from sweep.study.model import Study
+from sweep.study.model import HOTTEST, Study
 
-TOO_HOT = 1500.0  # K; above it a point is a runaway
+TOO_HOT = HOTTEST  # K; above it a point is a runaway
 HOLD_TIME = 1.0  # s; how fast the ideal hold of a set-point closes what is left of the gap
 NDKind = np.ndarray
 KINDS = ("adiabatic", "isothermal", "duty", "coolant", "jacket")

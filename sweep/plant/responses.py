@@ -18,6 +18,7 @@ from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 ACCUMULATION_TIMES = 65  # evenly over the march, beside the recipe's own boundaries
+_TRACE = 1e-12  # of all that is brought in; less of a product than this is none
 BALANCE = 1e-3  # an energy balance worse than this is a failed point
 
 
@@ -165,7 +166,9 @@ def _by_species(study: Study, plant: Charged, moles: Floats, found: dict[str, Fl
             if study.target is not None:
                 found[f"yield_{s}"] = (moles[:, index[s]] - brought[:, index[s]]) / brought[:, index[study.target.species]]
                 if study.target.product not in (None, s):
-                    found[f"per_product_{s}"] = moles[:, index[s]] / moles[:, index[str(study.target.product)]]
+                    product = moles[:, index[study.target.product]]
+                    made = product > _TRACE * brought.sum(axis=1)
+                    found[f"per_product_{s}"] = np.where(made, moles[:, index[s]] / product, np.nan)
 
 
 def _missing(found: dict[str, Floats | list[str]], reasons: list[list[str]], causes: np.ndarray, heated: bool, full: bool) -> None:
@@ -177,6 +180,9 @@ def _missing(found: dict[str, Floats | list[str]], reasons: list[list[str]], cau
             reasons[n].append("time_to_target, conversion: the study has no target")
         else:
             reasons[n].append(f"time_to_target: never reached, {CAUSES[causes[n]]}; the highest conversion is {np.asarray(highest)[n]:.6g}")
+    shares = [name for name in found if name.startswith("per_product_")]
+    for n in np.flatnonzero(np.isnan(np.asarray(found[shares[0]], dtype=np.float64))) if shares else ():
+        reasons[n].append("per_product: there is no product")
     if not heated:
         for reason in reasons:
             reason.append("heat_release, accumulation: heats of reaction are not given")

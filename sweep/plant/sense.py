@@ -57,11 +57,9 @@ def blank(values: Values, table: pd.DataFrame) -> pd.DataFrame:
     """Return responses with the refused points as failed rows: status, reason, and null for everything else."""
     if not values.refused:
         return table
-    rows, outcome = sorted(values.refused), OUTCOMES[BAD_INPUT]
-    labels = table.index[rows]
-    result = table.copy()
-    for name in result.columns.drop(["status", "reason"]):
-        result.loc[labels, name] = np.nan if result[name].dtype.kind == "f" else pd.NA
-    result.loc[labels, "status"] = outcome.status
-    result.loc[labels, "reason"] = [f"{outcome.sentence}: {values.refused[n]}" for n in rows]
+    outcome, refused = OUTCOMES[BAD_INPUT], pd.Series(np.isin(np.arange(values.count), list(values.refused)), index=table.index)
+    result = table.mask(refused)
+    why = [f"{outcome.sentence}: {values.refused[n]}" if n in values.refused else "" for n in range(values.count)]
+    result["status"] = table["status"].mask(refused, outcome.status)
+    result["reason"] = table["reason"].mask(refused, pd.Series(why, index=table.index))
     return result

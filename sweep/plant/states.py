@@ -19,7 +19,8 @@ def enthalpy(plant: Charged, moles: Floats, T: Floats) -> Floats:
     powers = np.arange(1, 5)
     rise = (T[:, None] ** powers - REFERENCE**powers) / powers
     per_mole = np.einsum("nik,nk->ni", plant.cp, rise)
-    return (moles * per_mole).sum(axis=1) + plant.values.get("vessel.heat_capacity") * (T - REFERENCE)
+    contents: Floats = (moles * per_mole).sum(axis=1)
+    return contents + plant.values.get("vessel.heat_capacity") * (T - REFERENCE)
 
 
 def reference_heats(study: Study, plant: Charged) -> Floats:
@@ -88,7 +89,8 @@ def accumulation(study: Study, plant: Charged, rows: np.ndarray, state: Floats, 
 def share_at(plant: Charged, rows: np.ndarray, time: Floats) -> Floats:
     """Return which share of each feed is in at times (M, K) of points `rows`: (M, F, K)."""
     start, end = plant.brought.start[rows][:, :, None], plant.brought.end[rows][:, :, None]
-    return np.clip((time[:, None, :] - start) / (end - start), 0.0, 1.0)
+    share: Floats = np.clip((time[:, None, :] - start) / (end - start), 0.0, 1.0)
+    return share
 
 
 def amounts_at(plant: Charged, rows: np.ndarray, state: Floats, time: Floats) -> Floats:
@@ -97,4 +99,5 @@ def amounts_at(plant: Charged, rows: np.ndarray, state: Floats, time: Floats) ->
     nz = structure.sources.shape[0]
     fed = np.einsum("mfk,mfi->mki", share_at(plant, rows, time), plant.brought.fed[rows])
     base = plant.brought.charged[rows][:, None, :] if plant.extents else 0.0
-    return fed + base + state[..., :nz] @ structure.amounts.T
+    moles: Floats = fed + base + state[..., :nz] @ structure.amounts.T
+    return moles

@@ -30,7 +30,8 @@ def _solve_closed(study: Study, plant: Charged, rows: np.ndarray, block: Floats,
         middle = 0.5 * (low + high)
         slow = _closed(study, plant, rows, block, state, middle) > wanted
         low, high = np.where(slow, middle, low), np.where(slow, high, middle)
-    return 0.5 * (low + high)
+    solved: Floats = 0.5 * (low + high)
+    return solved
 
 
 def find_td24(study: Study, plant: Charged, rows: np.ndarray, block: Floats, state: Floats, tolerance: float) -> tuple[Floats, Floats]:

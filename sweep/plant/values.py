@@ -87,7 +87,7 @@ def _numbers(column: pd.Series, name: str) -> Floats:
 def _sensible(study: Study, path: str, array: Floats, refused: dict[int, str]) -> Floats:
     """Return a column with the written value where its own breaks the quantity's bound; note those points and why."""
     bound = study.bounds.get(unset(path))
-    if study.dimensions.get(path) == "temperature":
+    if bound is None and study.dimensions.get(path) == "temperature":
         bound = Bound(0.0, True, np.inf, "absolute zero is never reached")
     if bound is None:
         return array

@@ -45,4 +45,5 @@ def from_file(path: Path) -> pd.DataFrame:
         table = pq.read_table(path, page_checksum_verification=True)
     except (OSError, pa.ArrowException) as error:
         raise SurroundingsError(f"{path} is damaged: {error}; `sweep run` computes it again") from None
-    return table.to_pandas(types_mapper={pa.int64(): pd.Int64Dtype(), pa.bool_(): pd.BooleanDtype()}.get).set_index("index")
+    frame: pd.DataFrame = table.to_pandas(types_mapper={pa.int64(): pd.Int64Dtype(), pa.bool_(): pd.BooleanDtype()}.get).set_index("index")
+    return frame

@@ -5,12 +5,13 @@ from typing import Any
 from sweep.base.units import UnitFault, to_si
 from sweep.study.equipment import _DIMENSIONS as COOLING
 from sweep.study.equipment import KINDS
-from sweep.study.model import Charge, Event, Feed
+from sweep.study.model import LATEST, Charge, Event, Feed
 from sweep.study.reader import Reader
 
 _MORE = {"vessel.U": "heat transfer coefficient", "vessel.stirrer_power": "power", "vessel.heat_loss.ambient": "temperature",
          "vessel.heat_loss.UA": "heat loss"}  # fmt: skip
 _SETTABLE = {**COOLING, **_MORE}
+_SHORTEST = 1e-3  # s; what is shorter cannot be told from none beside the latest start
 
 
 def read_recipe(reader: Reader, table: dict[str, Any], names: set[str]) -> tuple[Charge, tuple[Feed, ...], bool]:
@@ -21,12 +22,12 @@ def read_recipe(reader: Reader, table: dict[str, Any], names: set[str]) -> tuple
         if "batch_time" in table:
             reader.quantity("recipe.batch_time", table["batch_time"], "time")
         reader.needed("recipe.batch_time", 'a batch has a time, or runs "to target"')
-        reader.at_least("recipe.batch_time", 0.0, True, "a batch takes time")
+        reader.at_least("recipe.batch_time", 0.0, True, "a batch takes time, and ends", LATEST)
     if "turnaround" in table:
         reader.quantity("recipe.turnaround", table["turnaround"], "time")
     else:
         reader.keep("recipe.turnaround", 0.0, "s", "time")
-    reader.at_least("recipe.turnaround", 0.0, False, "a turnaround is not negative")
+    reader.at_least("recipe.turnaround", 0.0, False, "a turnaround is not negative, and ends", LATEST)
     charge = _charge(reader, reader.table(table, "charge", "recipe.charge"), names)
     written = reader.names(reader.table(table, "feeds", "recipe.feeds"), "recipe.feeds")
     feeds = tuple(_feed(reader, name, feed, names) for name, feed in written.items())
@@ -97,9 +98,9 @@ def _feed(reader: Reader, name: str, table: dict[str, Any], names: set[str]) -> 
             reader.quantity(f"{path}.{key}", table[key], dimension)
     if "start" not in table:
         reader.keep(f"{path}.start", 0.0, "s", "time")
-    reader.at_least(f"{path}.start", 0.0, False, "a batch begins at zero")
+    reader.at_least(f"{path}.start", 0.0, False, "a batch begins at zero, and ends", LATEST)
     reader.needed(f"{path}.duration", "a feed takes time")
-    reader.at_least(f"{path}.duration", 0.0, True, "a feed takes time; what comes at once belongs to the charge")
+    reader.at_least(f"{path}.duration", _SHORTEST, False, "a feed takes time; what comes at once belongs to the charge", LATEST)
     amount = reader.table(table, "amount", f"{path}.amount")
     fed = _species(reader, amount, f"{path}.amount", names)
     if not amount:
@@ -170,7 +171,7 @@ def _event(reader: Reader, path: str, entry: object) -> Event | None:
         reader.quantity(f"{path}.time", entry["time"], "time")
     if "when" not in entry:
         reader.needed(f"{path}.time", "an event happens at a time")
-    reader.at_least(f"{path}.time", 0.0, False, "a batch begins at zero")
+    reader.at_least(f"{path}.time", 0.0, False, "a batch begins at zero, and ends", LATEST)
     sets: dict[str, float | str] = {}
     table = reader.table(entry, "set", f"{path}.set")
     reader.only(table, f"{path}.set", ("cooling.kind", *_SETTABLE))

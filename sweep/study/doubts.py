@@ -1,10 +1,8 @@
 """What is legal and doubtful: warnings, each with its reason."""
 
 from sweep.study.checks import brought
-from sweep.study.model import Charge, Event, Feed, Reaction, Species, Variable
+from sweep.study.model import HOTTEST, Charge, Event, Feed, Reaction, Species, Variable
 from sweep.study.reader import Reader
-
-_TOO_HOT = 1500.0  # K; beyond it no march goes
 
 
 def warn_ranges(reader: Reader, reactions: tuple[Reaction, ...], variables: tuple[Variable, ...]) -> None:
@@ -85,10 +83,10 @@ def warn_heat_capacities(reader: Reader, species: tuple[Species, ...]) -> None:
     """Warn where a heat capacity falls to zero beyond the temperatures named, but where a runaway still goes."""
     for one in species:
         a, b, c, d = one.heat_capacity or (1.0, 0.0, 0.0, 0.0)
-        bad = next((T for T in range(298, int(_TOO_HOT) + 1) if a + T * (b + T * (c + T * d)) <= 0.0), None)
+        bad = next((T for T in range(298, int(HOTTEST) + 1) if a + T * (b + T * (c + T * d)) <= 0.0), None)
         if bad is not None:
             path = f"species.{one.name}.heat_capacity"
-            reader.warn(path, f"zero near {bad} K", f"above 0 up to {_TOO_HOT:g} K", "a runaway that gets there is computed wrongly")
+            reader.warn(path, f"zero near {bad} K", f"above 0 up to {HOTTEST:g} K", "a runaway that gets there is computed wrongly")
 
 
 def warn_rates(reader: Reader, reactions: tuple[Reaction, ...], moves: bool) -> None:

@@ -49,6 +49,9 @@ def read_vessel(reader: Reader, table: dict[str, Any]) -> None:
                 reader.at_least(f"vessel.area.{key}", 0.0, key != "bottom", "an area, and the volume that wets it, are positive")
         for key in ("full", "at_volume"):
             reader.needed(f"vessel.area.{key}", "the wetted area runs from bottom to full at a volume")
+        bottom, full = (reader.values.get(f"vessel.area.{key}", 0.0) for key in ("bottom", "full"))
+        if bottom > full > 0.0:
+            reader.fault("vessel.area.full", f"{full:g} m2", f"at least the bottom, {bottom:g} m2", "more liquid wets more wall")
     elif area is not None:
         reader.quantity("vessel.area", area, "area")
         reader.at_least("vessel.area", 0.0, False, "an area is not negative")

@@ -8,6 +8,9 @@ from sweep.base.errors import Fault, SweepError
 
 FAILURE = frozenset(("mtsr", "tmr_ad", "td24", "mtt", "criticality_class"))  # responses that need a cooling failure
 
+HOTTEST = 1500.0  # K; the model's range ends here
+LATEST = 1e12  # s; no batch is longer, and a feed of a millisecond can still be told from none
+
 
 @dataclass(frozen=True)
 class Species:

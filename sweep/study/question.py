@@ -5,7 +5,7 @@ from pathlib import Path
 from typing import Any
 
 from sweep.base.units import UnitFault, kind_of, unit_of
-from sweep.study.model import BatchTimeSettings, FailureSettings, Limit, Plan, Species, Target, Variable, WindowSettings, differs
+from sweep.study.model import LATEST, BatchTimeSettings, FailureSettings, Limit, Plan, Species, Target, Variable, WindowSettings, differs
 from sweep.study.reader import Reader, converted
 
 _PLAIN = {
@@ -239,7 +239,7 @@ def read_batch_time(reader: Reader, table: dict[str, Any] | None) -> BatchTimeSe
     reader.only(table, "batch_time", ("longest",))
     if "longest" in table:
         reader.quantity("batch_time.longest", table["longest"], "time")
-        reader.at_least("batch_time.longest", 0.0, True, "a batch takes time")
+        reader.at_least("batch_time.longest", 0.0, True, "a batch takes time, and ends", LATEST)
     return BatchTimeSettings(reader.values.get("batch_time.longest"))
 
 
@@ -257,8 +257,8 @@ def read_failure(reader: Reader, table: dict[str, Any] | None) -> FailureSetting
     ):
         if key in table:
             reader.quantity(f"failure.{key}", table[key], dimension)
-    reader.at_least("failure.horizon", 0.0, True, "a horizon lies ahead")
-    reader.at_least("failure.feeds_stop_after", 0.0, False, "feeds stop with the cooling or later")
+    reader.at_least("failure.horizon", 0.0, True, "a horizon lies ahead", LATEST)
+    reader.at_least("failure.feeds_stop_after", 0.0, False, "feeds stop with the cooling or later", LATEST)
     wall = table.get("wall", False)
     if not isinstance(wall, bool):
         reader.fault("failure.wall", repr(wall), "true or false", "the wall counts or it does not")

@@ -9,7 +9,7 @@ from typing import Any
 from sweep.base.errors import Fault
 from sweep.base.units import UnitFault, kind_of, to_si, unit_of
 from sweep.study.lines import line_of
-from sweep.study.model import Bound, unset
+from sweep.study.model import HOTTEST, Bound, unset
 
 _PLANNED = """
     uncertain correlations sensitivity risk ranges optimum scenarios deviations fit vessels
@@ -116,6 +116,8 @@ class Reader:
     def keep(self, path: str, value: float, unit: str, dimension: str) -> float:
         """Keep a quantity."""
         self.values[path], self.units[path], self.dimensions[path] = value, unit, dimension
+        if dimension == "temperature" and path.startswith(("recipe.", "cooling.", "vessel.", "events.")):
+            self.at_least(path, 0.0, True, "beyond that the model does not hold: a batch that gets there is a runaway", HOTTEST)
         return value
 
     def at_least(self, path: str, bound: float, strict: bool, because: str, below: float = math.inf) -> None:

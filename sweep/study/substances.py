@@ -7,6 +7,7 @@ from sweep.study.equation import parse
 from sweep.study.model import Reaction, Species
 from sweep.study.reader import Reader
 
+_HIGHEST_BARRIER = 2e6  # J/mol; several times the strongest bond
 _BALANCE = 1e-3  # relative; molar masses are rarely written with more digits
 
 
@@ -162,6 +163,7 @@ def _constants(reader: Reader, path: str, table: dict[str, Any], reaction: React
     reader.at_least(f"{path}.rate_constant.value", 0.0, False, "a rate constant is not negative")
     if "activation_energy" in constant:
         reader.quantity(f"{path}.rate_constant.activation_energy", constant["activation_energy"], "energy per amount")
+        reader.at_least(f"{path}.rate_constant.activation_energy", -_HIGHEST_BARRIER, False, "no reaction has such a barrier", _HIGHEST_BARRIER)
         reader.needed(f"{path}.rate_constant.at", "a rate constant that moves with temperature needs its own")
     heat = reader.table(table, "heat", f"{path}.heat")
     reader.only(heat, f"{path}.heat", ("value", "at"))
