@@ -22,7 +22,7 @@ def next_step(lanes, wrong, fine, h):  # type: ignore[no-untyped-def]
     factor = SAFETY / root(root(where(wrong > 1e-8, wrong, 1e-8)))
     factor = where(factor > GROW, GROW, factor)
     factor = where(factor >= SHRINK, factor, SHRINK)
-    shorter = where(factor > 0.5, 0.5, factor)
+    shorter = where(factor > 0.9, 0.9, factor)
     again = where(load(lanes, at.L_FAILED_LAST) > 0.5, where(factor > 1.0, 1.0, factor), factor)
     return h * where(fine, again, shorter)
 

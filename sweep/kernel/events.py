@@ -52,6 +52,7 @@ def follow_product(s, f, w, lanes, good, time, h):  # type: ignore[no-untyped-de
     start, end = time + turnaround, time + h + turnaround
     turns = counted & (time >= earliest) & ((rise + p) * start > h * y0) & ((rise - p - q) * end < h * y1)
     flags = bits(turns)
+    any_turns = flags != 0
     store(lanes, at.L_THETA, 1.0)
     while flags != 0:
         shift = 8 * lowest(flags)
@@ -66,9 +67,11 @@ def follow_product(s, f, w, lanes, good, time, h):  # type: ignore[no-untyped-de
     if bits(better) != 0:
         store(lanes, at.L_BEST, where(better, value, load(lanes, at.L_BEST)))
         store(lanes, at.L_BEST_TIME, where(better, when, load(lanes, at.L_BEST_TIME)))
-        best, y, new, ps, qs = row(s, w, at.W_BEST), row(s, w, at.W_Y), row(s, w, at.W_NEW), row(s, w, at.W_P), row(s, w, at.W_Q)
+        best, new = row(s, w, at.W_BEST), row(s, w, at.W_NEW)
         for i in range(entry(s, at.N_ROWS)):
-            state = on_cubic((load(y, i), load(new, i), load(ps, i), load(qs, i)), theta)
+            state = load(new, i)
+            if any_turns:
+                state = on_cubic((load(row(s, w, at.W_Y), i), state, load(row(s, w, at.W_P), i), load(row(s, w, at.W_Q), i)), theta)
             store(best, i, where(better, state, load(best, i)))
 
 

@@ -53,20 +53,21 @@ def error_of_step(s, f, w, tolerance):  # type: ignore[no-untyped-def]
     block, amounts, atol = row(s, w, at.W_BLOCK), row(s, w, at.W_N), load(row(s, w, at.W_LANE), at.L_ATOL)
     error = row(s, w, at.W_K) + (STAGES - 1) * n * STRIDE
     opened = _OPENING * load(block, at.GAIN) * load(block, at.RESET_INVERSE)
-    worst = opened * size(load(error, nz + 2))
+    worst, allowed = opened * size(load(error, nz + 2)), spread(1.0)  # as a fraction, so that only one division is needed
     sound = worst
     for i in range(nz, nz + 2):
-        ratio = size(load(error, i)) * _KELVIN_INVERSE
-        worst, sound = where(ratio <= worst, worst, ratio), sound + ratio
+        wrong = size(load(error, i)) * _KELVIN_INVERSE
+        worst, sound = where(wrong > worst, wrong, worst), sound + wrong
     for i in range(entry(s, at.N_SPECIES)):
         wrong = spread(0.0)
         end = p + 1 + entry(s, p)
         for q in range(p + 1, end):
             wrong = wrong + coefficient(f, q) * load(error, entry(s, q))
         p = end
-        ratio = size(wrong) / (size(load(amounts, i)) + atol)
-        worst, sound = where(ratio <= worst, worst, ratio), sound + ratio
-    return where(sound <= _LARGEST, worst * (1.0 / tolerance), math.inf)
+        wrong, scale = size(wrong), size(load(amounts, i)) + atol
+        worse = wrong * allowed > worst * scale
+        worst, allowed, sound = where(worse, wrong, worst), where(worse, scale, allowed), sound + wrong
+    return where(sound <= _LARGEST, worst / (allowed * tolerance), math.inf)
 
 
 @compiled
