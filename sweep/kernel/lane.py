@@ -35,12 +35,12 @@ def references(s, w, shift):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def begin_segment(s, w, lane, blocks, point, first, segments):  # type: ignore[no-untyped-def]
-    """Load the first segment, from `first` on, that lasts beyond the lane's time; return 1 where there is none."""
+def begin_segment(s, w, lane, blocks, point, segments):  # type: ignore[no-untyped-def]
+    """Load the next segment that lasts beyond the lane's time; return 1 where there is none."""
     shift, length = 8 * lane, entry(s, at.BLOCK_LENGTH)
     place, target = row(s, w, at.W_LANE) + shift, row(s, w, at.W_BLOCK) + shift
     time = of_lane(place, at.L_TIME)
-    for segment in range(first, segments):
+    for segment in range(int(of_lane(place, at.L_SEGMENT)) + 1, segments):
         source = blocks + 8 * length * (point * segments + segment)
         end = number(source, at.T_END)
         if number(source, at.JACKET_SET) > 0.5:
@@ -74,6 +74,7 @@ def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, times
         keep(place, name, 0.0)
     for k in range(at.N_CONSTANTS):
         keep(place, at.CONSTANTS + k, number(constants, point * at.N_CONSTANTS + k))
+    keep(place, at.L_SEGMENT, -1.0)
     keep(place, at.L_T_MAX, of_lane(y, nz))
     keep(place, at.L_REACTED_MAX, reacted)
     keep(place, at.L_HEAT_MAX, -_NEVER)
@@ -86,7 +87,7 @@ def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, times
     end = of_lane(place, at.L_END_FIXED)
     keep(place, at.L_BATCH_END, of_lane(place, at.L_FINAL) if math.isnan(end) else end)
     keep(place, at.L_SAMPLE_TIME, number(times, point * n_times) if n_times > 0 else math.inf)
-    return begin_segment(s, w, lane, blocks, point, 0, segments)
+    return begin_segment(s, w, lane, blocks, point, segments)
 
 
 @compiled
@@ -115,9 +116,9 @@ def capture(s, w, shift, target, theta):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def state_place(s, out, out_length, point, which):  # type: ignore[no-untyped-def]
-    """Return where one of the four states of a point is left."""
-    return out + 8 * (point * out_length + at.OUT_STATES + which * entry(s, at.N_ROWS))
+def states_left(s, out, out_length, point):  # type: ignore[no-untyped-def]
+    """Return where the four states of a point are left, and the bytes of each."""
+    return out + 8 * (point * out_length + at.OUT_STATES), 8 * entry(s, at.N_ROWS)
 
 
 @compiled
@@ -128,7 +129,8 @@ def note_crossing(s, f, w, lane, out, out_length, whose):  # type: ignore[no-unt
     theta = crossing(cubic_of_sum(s, f, w, shift, entry(s, at.AT_TARGET)), of_lane(place, at.L_TARGET))
     when = of_lane(place, at.L_TIME) + theta * of_lane(place, at.L_STEP)
     keep(place, at.L_CROSSED, when)
-    capture(s, w, shift, state_place(s, out, out_length, integer(whose, lane), AT_CROSSING), theta)
+    left, each = states_left(s, out, out_length, integer(whose, lane))
+    capture(s, w, shift, left + AT_CROSSING * each, theta)
     if math.isnan(of_lane(place, at.L_END_FIXED)):
         keep(place, at.L_BATCH_END, min(max(when, of_lane(place, at.L_EARLIEST)), of_lane(place, at.L_FINAL)))
 
@@ -137,7 +139,8 @@ def note_crossing(s, f, w, lane, out, out_length, whose):  # type: ignore[no-unt
 def end_batch(s, w, lane, out, out_length, whose):  # type: ignore[no-untyped-def]
     """Note the batch's end inside the step just made, at the fraction left in L_THETA."""
     place = row(s, w, at.W_LANE) + 8 * lane
-    capture(s, w, 8 * lane, state_place(s, out, out_length, integer(whose, lane), AT_END), of_lane(place, at.L_THETA))
+    left, each = states_left(s, out, out_length, integer(whose, lane))
+    capture(s, w, 8 * lane, left + AT_END * each, of_lane(place, at.L_THETA))
     keep(place, at.L_BATCH_OVER, 1.0)
     keep(place, at.L_END_TIME, of_lane(place, at.L_BATCH_END))
 
@@ -165,7 +168,7 @@ def settle(s, w, lane, blocks, point, segments, hot, landed, short, most_steps):
     if hot:
         keep(place, at.L_STATUS, 1.0 * RUNAWAY)
         return 1
-    if landed and begin_segment(s, w, lane, blocks, point, int(of_lane(place, at.L_SEGMENT)) + 1, segments) == 1:
+    if landed and begin_segment(s, w, lane, blocks, point, segments) == 1:
         return 1
     if of_lane(place, at.L_STEPS) + of_lane(place, at.L_REJECTED) >= most_steps:
         keep(place, at.L_STATUS, 1.0 * TOO_MANY_STEPS)
@@ -184,8 +187,8 @@ def leave(s, w, lane, out, out_length, whose):  # type: ignore[no-untyped-def]
     for k in range(at.LEFT):
         value = of_lane(place, k)
         put(target, k, math.nan if value <= -_NEVER else value)
-    best, last = state_place(s, out, out_length, point, AT_BEST), state_place(s, out, out_length, point, AT_LAST)
+    left, each = states_left(s, out, out_length, point)
     for i in range(entry(s, at.N_ROWS)):
-        put(last, i, of_lane(row(s, w, at.W_Y) + shift, i))
+        put(left + AT_LAST * each, i, of_lane(row(s, w, at.W_Y) + shift, i))
         if not math.isnan(of_lane(place, at.L_BEST_TIME)):
-            put(best, i, of_lane(row(s, w, at.W_BEST) + shift, i))
+            put(left + AT_BEST * each, i, of_lane(row(s, w, at.W_BEST) + shift, i))

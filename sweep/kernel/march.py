@@ -11,10 +11,10 @@ from sweep.kernel.lane import begin_point, leave, settle
 from sweep.kernel.linear import factorise
 from sweep.kernel.memory import entry, integer, load, row, store
 from sweep.kernel.step import GAMMA_INVERSE, dense_output, error_of_step, stages
-from sweep.kernel.vector import LANES, bits, compiled, lowest, mask_of, where
+from sweep.kernel.vector import LANES, bits, compiled_and_kept, lowest, mask_of, where
 
 
-@compiled
+@compiled_and_kept
 def march(s, f, blocks, starts, constants, points, segments, times, n_times, out, out_length, samples, w, whose, tolerance, most_steps):  # type: ignore[no-untyped-def]
     """March every point through its segments; write `out` and `samples`.
 
@@ -26,7 +26,7 @@ def march(s, f, blocks, starts, constants, points, segments, times, n_times, out
     n, nz = entry(s, at.N_ROWS), entry(s, at.N_STATES)
     for lane in range(LANES):
         begin_point(s, f, w, lane, points - 1, blocks, starts, constants, segments, times, n_times, whose)
-    following, running, free = 0, 0, (1 << LANES) - 1
+    following, running, free = 0 * points, 0, (1 << LANES) - 1  # a plain 0 would be a type of its own and compile `begin_point` twice
     while True:
         while free != 0 and following < points:
             lane = lowest(free)

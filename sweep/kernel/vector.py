@@ -26,12 +26,17 @@ _LONGS = ir.VectorType(LONG, LANES)
 _BITS = ir.VectorType(ir.IntType(1), LANES)
 _FLAGS = ("contract", "nsz")  # never nnan or reassoc: they break the guards and the exponent tricks
 
-OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "nsz"}, "cache": FOLDER is not None}
+OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "nsz"}}
 
 
 def compiled(function: Any) -> Any:
-    """Compile a kernel function with the options every kernel function shares."""
+    """Compile a kernel function with the options every kernel function shares; it is kept only within what calls it."""
     return numba.njit(**OPTIONS)(function)
+
+
+def compiled_and_kept(function: Any) -> Any:
+    """Compile a function that Python calls, and keep it between processes: alone, since machine code of each part costs time too."""
+    return numba.njit(**OPTIONS, cache=FOLDER is not None)(function)
 
 
 class VectorType(types.Type):  # type: ignore[misc]
