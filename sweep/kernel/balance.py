@@ -160,7 +160,7 @@ def temperature_slope(s, block, T, through_wall, gained, capacity):  # type: ign
 
 @compiled
 def balances(s, f, w, y, T, volume, result):  # type: ignore[no-untyped-def]
-    """Write dy/dt from the rates that stand in scratch memory; note heat release and cooling duty (W); return capacity (J/K), gain (W)."""
+    """Write dy/dt from the rates that stand in scratch memory; note heat release, duty (W), dT/dt; return capacity (J/K), gain (W)."""
     block, r, lanes = row(s, w, at.W_BLOCK), row(s, w, at.W_R), row(s, w, at.W_LANE)
     nz, p = entry(s, at.N_STATES), entry(s, at.AT_SOURCES)
     for k in range(nz):
@@ -187,6 +187,7 @@ def balances(s, f, w, y, T, volume, result):  # type: ignore[no-untyped-def]
     store(result, nz + 3, others - duty + at_reference + load(lanes, at.L_BROUGHT))
     store(lanes, at.L_HEAT_NOW, heat)
     store(lanes, at.L_DUTY_NOW, duty)
+    store(lanes, at.L_RATE_NOW, slope)
     return capacity, gained
 
 

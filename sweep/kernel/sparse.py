@@ -23,7 +23,7 @@ class Operations(NamedTuple):
     backward: list[int]
 
 
-def _order(pattern: NDArray[np.bool_]) -> list[int]:
+def elimination_order(pattern: NDArray[np.bool_]) -> list[int]:
     """Return the order of elimination: chemical states by Markowitz's count, then integral, jacket, temperature, energy."""
     nz = pattern.shape[0] - 4
     left, order, work = list(range(nz)), [], pattern.copy()
@@ -48,7 +48,7 @@ def _filled(pattern: NDArray[np.bool_], order: list[int]) -> NDArray[np.bool_]:
 
 def operations(pattern: NDArray[np.bool_]) -> Operations:
     """Return the LU of a matrix with this pattern, (rows, rows), as operations."""
-    order = _order(pattern)
+    order = elimination_order(pattern)
     filled = _filled(pattern, order)
     slots = np.full(pattern.shape, -1, dtype=np.int64)
     slots[filled] = np.arange(filled.sum())
