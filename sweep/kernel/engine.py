@@ -10,6 +10,8 @@ from sweep.kernel.program import Floats, Program
 from sweep.kernel.vector import LANES, STRIDE
 
 MOST_STEPS = 20_000
+_GUARD = -7.77e77
+_GUARD_ROWS = 4
 
 
 @dataclass(frozen=True)
@@ -28,11 +30,23 @@ class Marched:
     samples: Floats
 
 
-def _scratch(program: Program) -> tuple[np.ndarray, int]:
-    """Return zeroed scratch memory and the address of its first whole vector."""
-    rows = int(program.integers[at.W_END]) + 2
-    memory = np.zeros(rows * LANES + LANES)
-    return memory, (memory.ctypes.data + STRIDE - 1) // STRIDE * STRIDE
+class Scratch:
+    """Zeroed scratch memory between guard words; `address` is its first whole vector."""
+
+    def __init__(self, program: Program) -> None:
+        rows = int(program.integers[at.W_END])
+        self.memory = np.zeros((rows + 2 * _GUARD_ROWS + 1) * LANES)
+        start = self.memory.ctypes.data
+        skipped = (-start) % STRIDE // 8
+        self.address = start + 8 * (skipped + _GUARD_ROWS * LANES)
+        first, last = skipped + _GUARD_ROWS * LANES, skipped + (_GUARD_ROWS + rows) * LANES
+        self._guards = (self.memory[:first], self.memory[last:])
+        for guard in self._guards:
+            guard[:] = _GUARD
+
+    def is_sound(self) -> bool:
+        """Tell whether every guard word still stands."""
+        return all(bool((guard == _GUARD).all()) for guard in self._guards)
 
 
 def march(
@@ -59,14 +73,15 @@ def march(
     blocks, starts, constants, times = (np.require(a, np.float64, ["C", "A"]) for a in (blocks, starts, constants, times))
     out = np.full((n, at.OUT_STATES + 4 * rows), np.nan)
     samples = np.full((n, times.shape[1], rows), np.nan)
-    memory, scratch = _scratch(program)
+    scratch = Scratch(program)
     whose = np.zeros(LANES, dtype=np.int64)
     if n:
         _march(
             program.integers.ctypes.data, program.floats.ctypes.data, blocks.ctypes.data, starts.ctypes.data, constants.ctypes.data,
-            n, segments, times.ctypes.data, times.shape[1], out.ctypes.data, out.shape[1], samples.ctypes.data, scratch,
+            n, segments, times.ctypes.data, times.shape[1], out.ctypes.data, out.shape[1], samples.ctypes.data, scratch.address,
             whose.ctypes.data, float(tolerance), most_steps,
         )  # fmt: skip
-    del memory
+    if not scratch.is_sound():
+        raise RuntimeError("the kernel wrote outside its scratch memory: its tables do not fit it; nothing of this march can be trusted")
     ends = [out[:, at.OUT_STATES + k * rows : at.OUT_STATES + (k + 1) * rows] for k in range(4)]
     return Marched(out[:, : at.OUT_STATES], ends[0], ends[1], ends[2], ends[3], samples)

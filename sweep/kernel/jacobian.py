@@ -1,284 +1,243 @@
 """Exact derivatives of the balances: the Jacobian into the slots of the sparse LU, and the derivative with time.
 
-Must follow `right_side` at the same state: it reads the amounts, rates, heats and heat capacities that it left.
+One pass at the start of a step: the right-hand side and its derivatives share composition, exponentials, heats and capacities.
 """
 
 from sweep.kernel import layout as at
-from sweep.kernel.balance import (
-    _BAND,
-    feed_heat,
-    opening,
-    polynomial,
-    polynomial_slope,
-    rate_constant,
-    rate_constant_slope,
-    row,
-)
+from sweep.kernel.balance import BAND, balances, beyond, composition, fractional, opening, rate_constant
 from sweep.kernel.functions import exp, log
-from sweep.kernel.vector import STRIDE, compiled, integer, load, number, size, spread, store, where
-
-(N_SPECIES, N_STATES, N_REACTIONS, N_ROWS, N_SLOTS, AT_REACTIONS, AT_SOURCES, AT_AMOUNTS, AT_SLOTS, HEAT_TERMS, CP_TERMS, RATE_TERMS) = (
-    at.N_SPECIES, at.N_STATES, at.N_REACTIONS, at.N_ROWS, at.N_SLOTS, at.AT_REACTIONS, at.AT_SOURCES, at.AT_AMOUNTS, at.AT_SLOTS,
-    at.HEAT_TERMS, at.CP_TERMS, at.RATE_TERMS,
-)  # fmt: skip
-(BLOCK_FEED, BLOCK_RATE, BLOCK_HEAT, BLOCK_CP, W_BLOCK, W_N, W_C, W_CP, W_R, W_R_T, W_R_TIME, W_HEAT, W_D, W_SLOTS, W_SLOPE, W_LANE) = (
-    at.BLOCK_FEED, at.BLOCK_RATE, at.BLOCK_HEAT, at.BLOCK_CP, at.W_BLOCK, at.W_N, at.W_C, at.W_CP, at.W_R, at.W_R_T, at.W_R_TIME,
-    at.W_HEAT, at.W_D, at.W_SLOTS, at.W_SLOPE, at.W_LANE,
-)  # fmt: skip
-(VOLUME, VOLUME_RATE, UA_CONSTANT, UA_PER_VOLUME, FREE, DUTY_ON, DUTY, SET_POINT, HOLD_RATE, HAS_DUTY, FEED_CP, LOSS, INLET) = (
-    at.VOLUME, at.VOLUME_RATE, at.UA_CONSTANT, at.UA_PER_VOLUME, at.FREE, at.DUTY_ON, at.DUTY, at.SET_POINT, at.HOLD_RATE, at.HAS_DUTY,
-    at.FEED_CP, at.LOSS, at.INLET,
-)  # fmt: skip
-(JACKET_CAPACITY_INVERSE, JACKET_RENEWAL, GAIN, RESET_INVERSE, L_DELTA, L_HEAT_SLOPE, L_DUTY_SLOPE, L_HEAT_NOW, STIRRER, AMBIENT, L_RATE,
-    L_RATE_SLOPE) = (
-    at.JACKET_CAPACITY_INVERSE, at.JACKET_RENEWAL, at.GAIN, at.RESET_INVERSE, at.L_DELTA, at.L_HEAT_SLOPE, at.L_DUTY_SLOPE,
-    at.L_HEAT_NOW, at.STIRRER, at.AMBIENT, at.L_RATE, at.L_RATE_SLOPE,
-)  # fmt: skip
+from sweep.kernel.memory import coefficient, entry, load, row, store
+from sweep.kernel.vector import compiled, size, spread, where
 
 
 @compiled
-def factor_slope(f, s, c, p, count, m, k, delta):  # type: ignore[no-untyped-def]
-    """Return d(k prod c^power)/dc of factor m, where k holds the rate constant and the fractional parts."""
-    q = p + 2 * m
-    x, power, extra = load(c + integer(s + 8 * q) * STRIDE), integer(s + 8 * (q + 1)), number(f + 8 * (q + 1))
+def rate_constant_slope(s, block, terms, T, inverse_T):  # type: ignore[no-untyped-def]
+    """Return d ln k / dT of a term."""
+    value = -load(block, terms + 1) * inverse_T * inverse_T
+    if entry(s, at.RATE_TERMS) == 6:
+        poly = load(block, terms + 3) + T * (2.0 * load(block, terms + 4) + 3.0 * T * load(block, terms + 5))
+        value = value + load(block, terms + 2) * inverse_T + poly
+    return value
+
+
+@compiled
+def factor_slope(s, f, c, p, end, q, k, delta):  # type: ignore[no-untyped-def]
+    """Return d(k prod c^power)/dc of the factor at q of those from p to end, where k holds rate constant and fractional parts."""
+    x, power, extra = load(c, entry(s, q)), entry(s, q + 1), coefficient(f, q + 1)
     slope = k * (1.0 * power)
     if extra != 0.0:
         slope = k * (1.0 * power + extra * size(x) / (size(x) + delta))
     for _ in range(power - 1):
         slope = slope * x
-    for other in range(count):
-        if other != m:
-            q = p + 2 * other
-            x = load(c + integer(s + 8 * q) * STRIDE)
-            for _ in range(integer(s + 8 * (q + 1))):
+    for other in range(p, end, 3):
+        if other != q:
+            x = load(c, entry(s, other))
+            for _ in range(entry(s, other + 1)):
                 slope = slope * x
     return slope
 
 
 @compiled
-def rate_derivatives(s, f, w, T, volume):  # type: ignore[no-untyped-def]
-    """Write d(V r_j)/dT, d(V r_j)/dt and d(V r_j)/dz_l."""
+def rates_with_slopes(s, f, w, T, volume):  # type: ignore[no-untyped-def]
+    """Write V r_j (mol/s) and its derivatives by T, by time and by z; equal to `rates` in the rates themselves."""
+    block, c, d, result = row(s, w, at.W_BLOCK), row(s, w, at.W_C), row(s, w, at.W_D), row(s, w, at.W_R)
     inverse_T, log_T = 1.0 / T, T
-    if integer(s + 8 * RATE_TERMS) == 6:
+    if entry(s, at.RATE_TERMS) == 6:
         log_T = log(where(T > 1.0, T, 1.0))
-    block, c, d = row(s, w, W_BLOCK), row(s, w, W_C), row(s, w, W_D)
-    feed = block + integer(s + 8 * BLOCK_FEED) * STRIDE
-    terms = block + integer(s + 8 * BLOCK_RATE) * STRIDE
-    grow, delta = load(block + VOLUME_RATE * STRIDE), load(row(s, w, W_LANE) + L_DELTA * STRIDE)
-    nz, p, amounts = integer(s + 8 * N_STATES), integer(s + 8 * AT_REACTIONS), integer(s + 8 * AT_AMOUNTS)
-    for j in range(integer(s + 8 * N_REACTIONS)):
-        by_T, by_time = spread(0.0), spread(0.0)
-        dj = d + j * nz * STRIDE
-        for l in range(nz):
-            store(dj + l * STRIDE, spread(0.0))
-        directions = integer(s + 8 * p)
+    grow, delta = load(block, at.VOLUME_RATE), load(row(s, w, at.W_LANE), at.L_DELTA)
+    feed, nz = entry(s, at.BLOCK_FEED), entry(s, at.N_STATES)
+    terms, p = entry(s, at.BLOCK_RATE), entry(s, at.AT_REACTIONS)
+    for j in range(entry(s, at.N_REACTIONS)):
+        total, by_T, by_time = spread(0.0), spread(0.0), spread(0.0)
+        dj = j * nz
+        for l in range(dj, dj + nz):
+            store(d, l, 0.0)
+        directions = entry(s, p)
         p += 1
         for _ in range(directions):
-            count, sign, logs = integer(s + 8 * p), number(f + 8 * p), integer(s + 8 * (p + 1))
+            count, sign, logs = entry(s, p), coefficient(f, p), entry(s, p + 1)
             p += 2
-            log_k = rate_constant(s, terms, T, inverse_T, log_T)
+            log_k = rate_constant(s, block, terms, T, inverse_T, log_T)
             if logs == 1:
-                for m in range(count):
-                    q = p + 2 * m
-                    log_k = log_k + number(f + 8 * (q + 1)) * log(size(load(c + integer(s + 8 * q) * STRIDE)) + delta)
+                log_k = log_k + fractional(s, f, c, p, count, delta)
             k = exp(log_k)
-            rate, lowest = k, spread(1.0)
-            for m in range(count):
-                q = p + 2 * m
-                x = load(c + integer(s + 8 * q) * STRIDE)
-                lowest = where(x < lowest, x, lowest)
-                for _m in range(integer(s + 8 * (q + 1))):
+            rate, least = k, spread(1.0)
+            end = p + 3 * count
+            for q in range(p, end, 3):
+                x = load(c, entry(s, q))
+                least = where(x < least, x, least)
+                rate = rate * x
+                for _more in range(1, entry(s, q + 1)):
                     rate = rate * x
-            odd = where(lowest < 0.0, where(rate > 0.0, -1.0, 1.0), 1.0) * sign
-            rate = odd * rate
-            by_T = by_T + rate * rate_constant_slope(s, terms, T, inverse_T)
-            by_time = by_time + rate * grow
-            for m in range(count):
-                i = integer(s + 8 * (p + 2 * m))
-                slope = odd * factor_slope(f, s, c, p, count, m, k, delta)
-                by_time = by_time + slope * (load(feed + i * STRIDE) - load(c + i * STRIDE) * grow)
-                a = amounts
-                for _i in range(i):
-                    a += 1 + integer(s + 8 * a)
-                for e in range(integer(s + 8 * a)):
-                    target = dj + integer(s + 8 * (a + 1 + e)) * STRIDE
-                    store(target, load(target) + slope * number(f + 8 * (a + 1 + e)))
-            p += 2 * count
-            terms += integer(s + 8 * RATE_TERMS) * STRIDE
-        store(row(s, w, W_R_T) + j * STRIDE, by_T * volume)
-        store(row(s, w, W_R_TIME) + j * STRIDE, by_time)
-
-
-@compiled
-def slot(s, w, i, j):  # type: ignore[no-untyped-def]
-    """Return the address of an entry of the matrix."""
-    n = integer(s + 8 * N_ROWS)
-    return row(s, w, W_SLOTS) + integer(s + 8 * (integer(s + 8 * AT_SLOTS) + i * n + j)) * STRIDE
+            odd = sign * where(least < 0.0, where(rate > 0.0, -1.0, 1.0), 1.0)
+            total = total + odd * rate
+            by_T = by_T + odd * rate * rate_constant_slope(s, block, terms, T, inverse_T)
+            by_time = by_time + odd * rate * grow
+            for q in range(p, end, 3):
+                i = entry(s, q)
+                slope = odd * factor_slope(s, f, c, p, end, q, k, delta)
+                by_time = by_time + slope * (load(block, feed + i) - load(c, i) * grow)
+                a = entry(s, q + 2)
+                for e in range(a + 1, a + 1 + entry(s, a)):
+                    l = dj + entry(s, e)
+                    store(d, l, load(d, l) + slope * coefficient(f, e))
+            p = end
+            terms += entry(s, at.RATE_TERMS)
+        store(result, j, total * volume)
+        store(row(s, w, at.W_R_T), j, by_T * volume)
+        store(row(s, w, at.W_R_TIME), j, by_time)
 
 
 @compiled
 def chemical_rows(s, f, w):  # type: ignore[no-untyped-def]
     """Write the rows of z: columns z and T, and the derivative with time."""
-    nz, p = integer(s + 8 * N_STATES), integer(s + 8 * AT_SOURCES)
-    d, by_T, by_time, slope = row(s, w, W_D), row(s, w, W_R_T), row(s, w, W_R_TIME), row(s, w, W_SLOPE)
-    slots, n = integer(s + 8 * AT_SLOTS), integer(s + 8 * N_ROWS)
-    for k in range(nz):
-        count = integer(s + 8 * p)
-        p += 1
+    slots, d, by_T, by_time = row(s, w, at.W_SLOTS), row(s, w, at.W_D), row(s, w, at.W_R_T), row(s, w, at.W_R_TIME)
+    p, r = entry(s, at.AT_CHEMICAL), entry(s, at.AT_SOURCES)
+    for k in range(entry(s, at.N_STATES)):
         at_T, at_time = spread(0.0), spread(0.0)
-        for e in range(count):
-            j, weight = integer(s + 8 * (p + e)), number(f + 8 * (p + e))
-            at_T = at_T + weight * load(by_T + j * STRIDE)
-            at_time = at_time + weight * load(by_time + j * STRIDE)
-        store(slot(s, w, k, nz), at_T)
-        store(slope + k * STRIDE, at_time)
-        for l in range(nz):
-            if integer(s + 8 * (slots + k * n + l)) >= 0:
-                total = spread(0.0)
-                for e in range(count):
-                    total = total + number(f + 8 * (p + e)) * load(d + (integer(s + 8 * (p + e)) * nz + l) * STRIDE)
-                store(slot(s, w, k, l), total)
-        p += count
+        end = r + 1 + entry(s, r)
+        for q in range(r + 1, end):
+            at_T = at_T + coefficient(f, q) * load(by_T, entry(s, q))
+            at_time = at_time + coefficient(f, q) * load(by_time, entry(s, q))
+        r = end
+        store(slots, entry(s, p), at_T)
+        store(row(s, w, at.W_SLOPE), k, at_time)
+        columns = entry(s, p + 1)
+        p += 2
+        for _ in range(columns):
+            total, place = spread(0.0), entry(s, p)
+            end = p + 2 + entry(s, p + 1)
+            for q in range(p + 2, end):
+                total = total + coefficient(f, q) * load(d, entry(s, q))
+            p = end
+            store(slots, place, total)
 
 
 @compiled
-def capacity_slope(s, w, T):  # type: ignore[no-untyped-def]
-    """Return d(heat capacity)/dT (J/K2) at constant amounts."""
-    terms = integer(s + 8 * CP_TERMS)
-    total = spread(0.0)
-    if terms > 1:
-        address = row(s, w, W_BLOCK) + integer(s + 8 * BLOCK_CP) * STRIDE
-        for i in range(integer(s + 8 * N_SPECIES)):
-            total = total + load(row(s, w, W_N) + i * STRIDE) * polynomial_slope(address + i * terms * STRIDE, terms, T)
-    return total
-
-
-@compiled
-def heat_by_state(s, w, l):  # type: ignore[no-untyped-def]
-    """Return d(heat given off)/dz_l (W per unit of z)."""
-    nz, total = integer(s + 8 * N_STATES), spread(0.0)
-    for j in range(integer(s + 8 * N_REACTIONS)):
-        total = total - load(row(s, w, W_HEAT) + j * STRIDE) * load(row(s, w, W_D) + (j * nz + l) * STRIDE)
-    return total
-
-
-@compiled
-def reference_row(s, w, l):  # type: ignore[no-untyped-def]
-    """Return the derivative of the heat of reaction at the common reference temperature: by z_l, or by T where l is -1."""
-    nz, terms = integer(s + 8 * N_STATES), integer(s + 8 * HEAT_TERMS)
-    address = row(s, w, W_BLOCK) + integer(s + 8 * BLOCK_HEAT) * STRIDE
-    total, reference = spread(0.0), spread(298.15)
-    for j in range(integer(s + 8 * N_REACTIONS)):
-        by = row(s, w, W_R_T) + j * STRIDE
-        if l >= 0:
-            by = row(s, w, W_D) + (j * nz + l) * STRIDE
-        if l == -2:
-            by = row(s, w, W_R_TIME) + j * STRIDE
-        total = total - polynomial(address + j * terms * STRIDE, terms, reference) * load(by)
-    return total
-
-
-@compiled
-def heat_by_temperature(s, w, T):  # type: ignore[no-untyped-def]
-    """Return d(heat given off)/dT (W/K)."""
-    terms = integer(s + 8 * HEAT_TERMS)
-    address = row(s, w, W_BLOCK) + integer(s + 8 * BLOCK_HEAT) * STRIDE
-    total = spread(0.0)
-    for j in range(integer(s + 8 * N_REACTIONS)):
-        total = total - load(row(s, w, W_HEAT) + j * STRIDE) * load(row(s, w, W_R_T) + j * STRIDE)
-        total = total - polynomial_slope(address + j * terms * STRIDE, terms, T) * load(row(s, w, W_R) + j * STRIDE)
-    return total
-
-
-@compiled
-def heat_by_time(s, w):  # type: ignore[no-untyped-def]
-    """Return d(heat given off)/dt at a constant state (W/s)."""
-    total = spread(0.0)
-    for j in range(integer(s + 8 * N_REACTIONS)):
-        total = total - load(row(s, w, W_HEAT) + j * STRIDE) * load(row(s, w, W_R_TIME) + j * STRIDE)
-    return total
-
-
-@compiled
-def jacobian(s, f, w, y, slope_now, volume, capacity):  # type: ignore[no-untyped-def]
-    """Write the Jacobian into its slots and df/dt beside it; note how heat release and duty (W/s) and dT/dt (K/s2) change."""
-    block, lane, slope = row(s, w, W_BLOCK), row(s, w, W_LANE), row(s, w, W_SLOPE)
-    nz = integer(s + 8 * N_STATES)
-    T, jacket, integral = load(y + nz * STRIDE), load(y + (nz + 1) * STRIDE), load(y + (nz + 2) * STRIDE)
-    for k in range(integer(s + 8 * N_SLOTS)):
-        store(row(s, w, W_SLOTS) + k * STRIDE, spread(0.0))
-    rate_derivatives(s, f, w, T, volume)
-    chemical_rows(s, f, w)
-    ua_slope = load(block + UA_PER_VOLUME * STRIDE) * load(block + VOLUME_RATE * STRIDE)
-    ua = load(block + UA_CONSTANT * STRIDE) + load(block + UA_PER_VOLUME * STRIDE) * volume
-    cp_feed = load(block + FEED_CP * STRIDE) + T * (
-        load(block + (FEED_CP + 1) * STRIDE) + T * (load(block + (FEED_CP + 2) * STRIDE) + T * load(block + (FEED_CP + 3) * STRIDE))
-    )
-    free = load(block + FREE * STRIDE)
-    heat_T, heat_t = heat_by_temperature(s, w, T), heat_by_time(s, w)
-    gained_T = heat_T - load(block + LOSS * STRIDE) - cp_feed
-    dT = load(slope_now + nz * STRIDE)
-    wall_on, keep, hold, kept = spread(1.0), free, spread(0.0), spread(0.0)
-    drift = dT
-    if integer(s + 8 * HAS_DUTY) == 1:
-        loss = load(block + LOSS * STRIDE) * (T - load(block + AMBIENT * STRIDE))
-        off = (load(lane + L_HEAT_NOW * STRIDE) + load(block + STIRRER * STRIDE) - loss - feed_heat(block, T)) / capacity
-        held = (load(block + SET_POINT * STRIDE) - T) * load(block + HOLD_RATE * STRIDE)
-        on = load(block + DUTY_ON * STRIDE) > 0.5
-        holding = on & (held < off) & (held > off - load(block + DUTY * STRIDE) / capacity)
-        keep = where(holding, 0.0, free)
-        hold = where(holding, -load(block + HOLD_RATE * STRIDE), 0.0)
-        wall_on = where(on, 0.0, wall_on)
-        kept = where(holding, 1.0, 0.0)
-    inverse = keep / capacity
-    heat_slope, capacity_T = heat_t + heat_T * dT, capacity_slope(s, w, T)
+def heat_slopes(s, f, w, T):  # type: ignore[no-untyped-def]
+    """Write by z: of capacity (J/K), of heat given off at T and at the reference (W); return the latter two by T and by time, and
+    capacity by T (J/K2)."""
+    block, d, heats, reference = row(s, w, at.W_BLOCK), row(s, w, at.W_D), row(s, w, at.W_HEAT), row(s, w, at.W_REFERENCE)
+    by_z, reference_z, cp_z = row(s, w, at.W_HEAT_Z), row(s, w, at.W_REFERENCE_Z), row(s, w, at.W_CP_Z)
+    nz, p = entry(s, at.N_STATES), entry(s, at.AT_COLUMNS)
     for l in range(nz):
-        by_z, cp_z = heat_by_state(s, w, l), spread(0.0)
-        p = integer(s + 8 * AT_AMOUNTS)
-        for i in range(integer(s + 8 * N_SPECIES)):
-            count = integer(s + 8 * p)
-            p += 1
-            for _ in range(count):
-                if integer(s + 8 * p) == l:
-                    cp_z = cp_z + number(f + 8 * p) * load(row(s, w, W_CP) + i * STRIDE)
-                p += 1
-        heat_slope = heat_slope + by_z * load(slope_now + l * STRIDE)
-        store(slot(s, w, nz, l), (by_z - drift * cp_z) * inverse)
-        duty_z = where(free > 0.5, kept * (by_z - drift * cp_z), by_z)
-        store(slot(s, w, nz + 3, l), reference_row(s, w, l) - duty_z)
-    store(slot(s, w, nz, nz), (gained_T - wall_on * ua - drift * capacity_T) * inverse + hold)
-    store(slot(s, w, nz, nz + 1), wall_on * ua * inverse)
-    through = ua_slope * (T - jacket)
-    store(slope + nz * STRIDE, (heat_t - wall_on * through - drift * cp_feed) * inverse)
-    u = opening(block, T, integral)
-    inside = where(u > 0.0, where(u < 1.0, 1.0, 0.0), 0.0)
-    clipped = where(u > 1.0, 1.0, where(u < 0.0, 0.0, u))
-    renewal, cooler = load(block + JACKET_RENEWAL * STRIDE), load(block + INLET * STRIDE) - jacket
-    to_jacket, gain = load(block + JACKET_CAPACITY_INVERSE * STRIDE), load(block + GAIN * STRIDE)
-    store(slot(s, w, nz + 1, nz), renewal * cooler * gain * inside + to_jacket * ua)
-    store(slot(s, w, nz + 1, nz + 1), -renewal * clipped - to_jacket * ua)
-    store(slot(s, w, nz + 1, nz + 2), renewal * cooler * gain * load(block + RESET_INVERSE * STRIDE) * inside)
-    store(slope + (nz + 1) * STRIDE, to_jacket * through)
-    reset = load(block + RESET_INVERSE * STRIDE)
-    outside = where(u > 1.0, u - 1.0, where(u < 0.0, -u, 0.0)) * (1.0 / _BAND)
+        total = spread(0.0)
+        end = p + 1 + entry(s, p)
+        for q in range(p + 1, end):
+            total = total + coefficient(f, q) * load(row(s, w, at.W_CP), entry(s, q))
+        p = end
+        store(cp_z, l, total)
+        store(by_z, l, 0.0)
+        store(reference_z, l, 0.0)
+    heat_T, heat_t, reference_T, reference_t = spread(0.0), spread(0.0), spread(0.0), spread(0.0)
+    terms, first, p = entry(s, at.HEAT_TERMS), entry(s, at.BLOCK_HEAT), entry(s, at.AT_TOUCHED)
+    for j in range(entry(s, at.N_REACTIONS)):
+        heat, at_reference = load(heats, j), load(reference, j)
+        by_T, by_time = load(row(s, w, at.W_R_T), j), load(row(s, w, at.W_R_TIME), j)
+        heat_T = heat_T - heat * by_T - polynomial_slope(block, first + j * terms, terms, T) * load(row(s, w, at.W_R), j)
+        heat_t = heat_t - heat * by_time
+        reference_T, reference_t = reference_T - at_reference * by_T, reference_t - at_reference * by_time
+        end = p + 1 + entry(s, p)
+        for q in range(p + 1, end):
+            l = entry(s, q)
+            slope = load(d, j * nz + l)
+            store(by_z, l, load(by_z, l) - heat * slope)
+            store(reference_z, l, load(reference_z, l) - at_reference * slope)
+        p = end
+    capacity_T = spread(0.0)
+    terms, first = entry(s, at.CP_TERMS), entry(s, at.BLOCK_CP)
+    if terms > 1:
+        for i in range(entry(s, at.N_SPECIES)):
+            capacity_T = capacity_T + load(row(s, w, at.W_N), i) * polynomial_slope(block, first + i * terms, terms, T)
+    return heat_T, heat_t, reference_T, reference_t, capacity_T
+
+
+@compiled
+def polynomial_slope(block, first, terms, T):  # type: ignore[no-untyped-def]
+    """Return the derivative of the polynomial whose coefficients begin at block[first]."""
+    value = spread(0.0)
+    for k in range(terms - 1, 0, -1):
+        value = value * T + (1.0 * k) * load(block, first + k)
+    return value
+
+
+@compiled
+def jacket_rows(s, w, y, T, ua, through_t):  # type: ignore[no-untyped-def]
+    """Write the rows of jacket temperature and controller integral, and their derivatives with time."""
+    block, slots, slope = row(s, w, at.W_BLOCK), row(s, w, at.W_SLOTS), row(s, w, at.W_SLOPE)
+    nz, n = entry(s, at.N_STATES), entry(s, at.N_ROWS)
+    at_jacket = entry(s, at.AT_SLOTS) + (nz + 1) * n + nz
+    at_integral = at_jacket + n
+    gain, reset, to_jacket = load(block, at.GAIN), load(block, at.RESET_INVERSE), load(block, at.JACKET_CAPACITY_INVERSE)
+    u = opening(block, T, load(y, nz + 2))
+    renewal, steeper = load(block, at.JACKET_RENEWAL), load(block, at.INLET) - load(y, nz + 1)
+    by_opening = renewal * steeper * gain * where(u > 0.0, where(u < 1.0, 1.0, 0.0), 0.0)
+    store(slots, entry(s, at_jacket), by_opening + to_jacket * ua)
+    store(slots, entry(s, at_jacket + 1), -renewal * where(u > 1.0, 1.0, where(u < 0.0, 0.0, u)) - to_jacket * ua)
+    store(slots, entry(s, at_jacket + 2), by_opening * reset)
+    store(slope, nz + 1, to_jacket * through_t)
+    outside, active = beyond(u), where(reset > 0.0, 1.0, 0.0)
     share = where(outside < 1.0, 1.0 - outside, 0.0)
-    side = where(outside < 1.0, where(u > 1.0, -1.0 / _BAND, where(u < 0.0, 1.0 / _BAND, 0.0)), 0.0)
-    error, active = T - load(block + SET_POINT * STRIDE), where(reset > 0.0, 1.0, 0.0)
-    store(slot(s, w, nz + 2, nz), active * (share + error * side * gain))
-    store(slot(s, w, nz + 2, nz + 2), active * error * side * gain * reset)
-    store(slope + (nz + 2) * STRIDE, spread(0.0))
-    wall_duty = where(free > 0.5, ua * wall_on + kept * (gained_T - drift * capacity_T - capacity * hold), gained_T)
-    loss_T = load(block + LOSS * STRIDE)
-    store(slot(s, w, nz + 3, nz), reference_row(s, w, -1) - loss_T - wall_duty)
-    store(slot(s, w, nz + 3, nz + 1), where(free > 0.5, ua * wall_on, 0.0))
-    store(slope + (nz + 3) * STRIDE, reference_row(s, w, -2) - where(free > 0.5, through * wall_on + kept * (heat_t - drift * cp_feed), heat_t))
-    store(lane + L_HEAT_SLOPE * STRIDE, heat_slope)
-    wall_slope = through + ua * (dT - load(slope_now + (nz + 1) * STRIDE))
-    needed = heat_slope - (loss_T + cp_feed) * dT
-    pinned = where(wall_on > 0.5, where(free > 0.5, wall_slope, needed), where(hold < 0.0, needed, 0.0))
-    store(lane + L_DUTY_SLOPE * STRIDE, pinned)
-    heating_slope = load(slope + nz * STRIDE)
-    for l in range(nz + 2):
-        heating_slope = heating_slope + load(slot(s, w, nz, l)) * load(slope_now + l * STRIDE)
-    store(lane + L_RATE * STRIDE, dT)
-    store(lane + L_RATE_SLOPE * STRIDE, heating_slope)
+    side = where(outside < 1.0, where(u > 1.0, -1.0 / BAND, where(u < 0.0, 1.0 / BAND, 0.0)), 0.0)
+    by_error = active * side * gain * (T - load(block, at.SET_POINT))
+    store(slots, entry(s, at_integral), active * share + by_error)
+    store(slots, entry(s, at_integral + 2), by_error * reset)
+    store(slope, nz + 2, 0.0)
+
+
+@compiled
+def start_of_step(s, f, w, time):  # type: ignore[no-untyped-def]
+    """Write dy/dt at the state, the Jacobian into its slots and df/dt; note how heat release and duty (W, W/s) and dT/dt (K/s,
+    K/s2) stand and change along the solution."""
+    block, lanes, slope, slots = row(s, w, at.W_BLOCK), row(s, w, at.W_LANE), row(s, w, at.W_SLOPE), row(s, w, at.W_SLOTS)
+    y, now = row(s, w, at.W_Y), row(s, w, at.W_F)
+    nz, n = entry(s, at.N_STATES), entry(s, at.N_ROWS)
+    T, jacket = load(y, nz), load(y, nz + 1)
+    volume = composition(s, f, w, y, time)
+    rates_with_slopes(s, f, w, T, volume)
+    capacity, gained = balances(s, f, w, y, T, volume, now)
+    for k in range(entry(s, at.N_SLOTS)):
+        store(slots, k, 0.0)
+    chemical_rows(s, f, w)
+    heat_T, heat_t, reference_T, reference_t, capacity_T = heat_slopes(s, f, w, T)
+    ua = load(block, at.UA_CONSTANT) + load(block, at.UA_PER_VOLUME) * volume
+    through_t = load(block, at.UA_PER_VOLUME) * load(block, at.VOLUME_RATE) * (T - jacket)
+    jacket_rows(s, w, y, T, ua, through_t)
+    cp_feed = load(block, at.FEED_CP) + T * (load(block, at.FEED_CP + 1) + T * (load(block, at.FEED_CP + 2) + T * load(block, at.FEED_CP + 3)))
+    free, loss, drift = load(block, at.FREE), load(block, at.LOSS), load(now, nz)
+    gained_T = heat_T - loss - cp_feed
+    wall_on, hold, held, open_slope = spread(1.0), spread(0.0), spread(0.0), free
+    if entry(s, at.HAS_DUTY) == 1:
+        off, set_slope = gained / capacity, (load(block, at.SET_POINT) - T) * load(block, at.HOLD_RATE)
+        on = load(block, at.DUTY_ON) > 0.5
+        holding = on & (set_slope < off) & (set_slope > off - load(block, at.DUTY) / capacity)
+        open_slope, hold = where(holding, 0.0, free), where(holding, -load(block, at.HOLD_RATE), 0.0)
+        wall_on, held = where(on, 0.0, 1.0), where(holding, 1.0, 0.0)
+    inverse, is_free = open_slope / capacity, free > 0.5
+    at_T = entry(s, at.AT_SLOTS) + nz * n
+    at_energy = at_T + 3 * n
+    heat_slope, rate_slope = heat_t + heat_T * drift, spread(0.0)
+    for l in range(nz):
+        by_z, along = load(row(s, w, at.W_HEAT_Z), l), load(now, l)
+        net = by_z - drift * load(row(s, w, at.W_CP_Z), l)
+        heat_slope = heat_slope + by_z * along
+        rate_slope = rate_slope + net * inverse * along
+        store(slots, entry(s, at_T + l), net * inverse)
+        store(slots, entry(s, at_energy + l), load(row(s, w, at.W_REFERENCE_Z), l) - where(is_free, held * net, by_z))
+    T_T, T_jacket = (gained_T - wall_on * ua - drift * capacity_T) * inverse + hold, wall_on * ua * inverse
+    T_t = (heat_t - wall_on * through_t - drift * cp_feed) * inverse
+    store(slots, entry(s, at_T + nz), T_T)
+    store(slots, entry(s, at_T + nz + 1), T_jacket)
+    store(slope, nz, T_t)
+    duty_T = where(is_free, ua * wall_on + held * (gained_T - drift * capacity_T - capacity * hold), gained_T)
+    store(slots, entry(s, at_energy + nz), reference_T - loss - duty_T)
+    store(slots, entry(s, at_energy + nz + 1), where(is_free, ua * wall_on, 0.0))
+    store(slope, nz + 3, reference_t - where(is_free, through_t * wall_on + held * (heat_t - drift * cp_feed), heat_t))
+    needed = heat_slope - (loss + cp_feed) * drift
+    through_slope = through_t + ua * (drift - load(now, nz + 1))
+    store(lanes, at.L_HEAT, load(lanes, at.L_HEAT_NOW))
+    store(lanes, at.L_DUTY, load(lanes, at.L_DUTY_NOW))
+    store(lanes, at.L_HEAT_SLOPE, heat_slope)
+    store(lanes, at.L_DUTY_SLOPE, where(wall_on > 0.5, where(is_free, through_slope, needed), where(hold < 0.0, needed, 0.0)))
+    store(lanes, at.L_RATE, drift)
+    store(lanes, at.L_RATE_SLOPE, T_t + rate_slope + T_T * drift + T_jacket * load(now, nz + 1))

@@ -6,18 +6,18 @@ coefficient share a position. Names, units and shapes stand here once; the kerne
 
 # header of the integer table --------------------------------------------------------------------------------------------
 N_SPECIES, N_STATES, N_REACTIONS, N_ROWS = 0, 1, 2, 3  # species, chemical states z, reactions, all states
-ROW_T, ROW_JACKET, ROW_INTEGRAL, ROW_ENERGY = 4, 5, 6, 7  # their rows in the state; always present
-AT_REACTIONS, AT_SOURCES, AT_AMOUNTS, AT_SLOTS = 8, 9, 10, 11  # streams: rate terms, dz/dt, amounts from z, slot of (row, column)
-AT_FACTOR, AT_FORWARD, AT_BACKWARD, N_SLOTS = 12, 13, 14, 15  # the sparse LU: operations of the factorisation and of the solves
-HEAT_TERMS, CP_TERMS, RATE_TERMS = 16, 17, 18  # coefficients per heat of reaction, per heat capacity, per rate term (2 or 6)
-BLOCK_FEED, BLOCK_BASE, BLOCK_RATE, BLOCK_HEAT, BLOCK_CP, BLOCK_LENGTH = 19, 20, 21, 22, 23, 24
-AT_TARGET, AT_PRODUCT = 25, 26  # weights over z in the float table: moles of target consumed, of product formed
-LU_FACTORS, N_LU_FORWARD, N_LU_BACKWARD = 27, 28, 29
-HAS_DUTY = 30
-# rows of scratch memory, each one vector (see `scratch_rows`)
+# rows of the state after z: temperature, jacket, controller integral, energy over the boundary; always present, in this order
+HEAT_TERMS, CP_TERMS, RATE_TERMS, HAS_DUTY = 4, 5, 6, 7  # coefficients per heat of reaction, heat capacity, rate term (2 or 6)
+BLOCK_FEED, BLOCK_BASE, BLOCK_RATE, BLOCK_HEAT, BLOCK_CP, BLOCK_LENGTH = range(8, 14)
+# streams, written by `program` (their form is described there)
+AT_REACTIONS, AT_SOURCES, AT_AMOUNTS, AT_COLUMNS, AT_TOUCHED, AT_CHEMICAL, AT_SLOTS, AT_FACTOR, AT_FORWARD, AT_BACKWARD = range(14, 24)
+AT_TARGET, AT_PRODUCT, AT_METHOD = 24, 25, 26  # in the float table: moles of target consumed, of product formed; the tableau
+N_SLOTS = 27
+# rows of scratch memory, each one vector (laid out by `program`)
 (
-    W_BLOCK, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_X, W_SLOTS, W_N, W_C, W_CP, W_R, W_R_T, W_R_TIME, W_HEAT, W_D, W_LANE, W_END,
-) = range(32, 50)  # fmt: skip
+    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME, W_D,
+    W_CP_Z, W_HEAT_Z, W_REFERENCE_Z, W_BLOCK, W_END,
+) = range(32, 56)  # fmt: skip
 HEADER = 56
 
 # block of one segment of one point: the fixed part (SI) --------------------------------------------------------------------
@@ -44,13 +44,21 @@ N_CONSTANTS = 8
 ) = range(17)  # fmt: skip
 OUT_STATES = 18  # then four states: at the batch's end, at the target, at the most productive time, at the last moment
 
-# rows of one lane's own numbers, from W_LANE on -----------------------------------------------------------------------------
+# rows of W_LANE: a lane's own numbers. The first stand in the order of OUT_*, and `leave` copies them out --------------------
 (
-    L_TIME, L_STEP, L_DONE, L_BATCH_OVER, L_HEAT, L_HEAT_SLOPE, L_DUTY, L_DUTY_SLOPE, L_HEAT_NOW, L_DUTY_NOW, L_ABS_HEAT, L_ABS_BOUNDARY,
-    L_T_MAX, L_T_MAX_TIME, L_HEAT_MAX, L_DUTY_MAX, L_TARGET, L_TURNAROUND, L_ATOL, L_TOO_HOT, L_DELTA, L_END, L_NEXT_SAMPLE,
-    L_REACTED_MAX, L_OLD_STEP, L_FAILED_LAST, L_CAP, L_CROSSED, L_BEST, L_BEST_TIME, L_END_FIXED, L_EARLIEST, L_SUM_HEAT,
-    L_SUM_BOUNDARY, L_PEND_HEAT, L_PEND_HEAT_SLOPE, L_PEND_DUTY, L_PEND_DUTY_SLOPE, L_PENDING, L_END_TIME,
-    L_SEGMENT, L_STEPS, L_REJECTED, L_STATUS, L_PEND_STEP, L_TFINAL, L_SEG_END, L_RATE, L_RATE_SLOPE, L_PEND_RATE, L_PEND_RATE_SLOPE,
-    L_RATE_MAX, L_RATE_MAX_TIME,
-) = range(53)  # fmt: skip
-LANE_ROWS = 53
+    L_STATUS, L_STEPS, L_REJECTED, L_TIME, L_CROSSED, L_T_MAX, L_T_MAX_TIME, L_HEAT_MAX, L_DUTY_MAX,
+    L_BEST, L_BEST_TIME, L_REACTED_MAX, L_SUM_HEAT, L_SUM_BOUNDARY, L_END_TIME, L_RATE_MAX, L_RATE_MAX_TIME,
+) = range(17)  # fmt: skip
+LEFT = 17
+CONSTANTS = 17  # then the point's constants, in their order
+(L_END_FIXED, L_EARLIEST, L_TARGET, L_TURNAROUND, L_ATOL, L_TOO_HOT, L_DELTA, L_FINAL) = range(CONSTANTS, CONSTANTS + N_CONSTANTS)
+(
+    L_STEP, L_SEGMENT, L_SEGMENT_END, L_FAILED_LAST, L_BATCH_END, L_BATCH_OVER, L_SAMPLE, L_SAMPLE_TIME, L_PENDING, L_STEP_BEFORE, L_BROUGHT,
+) = range(25, 36)  # fmt: skip
+# of heat release (W), cooling duty (W) and dT/dt (K/s): value and slope at the step's start, the same a step before
+L_HEAT, L_HEAT_SLOPE, L_HEAT_BEFORE, L_HEAT_SLOPE_BEFORE = range(36, 40)
+L_DUTY, L_DUTY_SLOPE, L_DUTY_BEFORE, L_DUTY_SLOPE_BEFORE = range(40, 44)
+L_RATE, L_RATE_SLOPE, L_RATE_BEFORE, L_RATE_SLOPE_BEFORE = range(44, 48)
+L_HEAT_NOW, L_DUTY_NOW, L_RATE_NOW = 48, 49, 50  # as last evaluated: after the stages, near the step's end
+L_THETA = 51  # a fraction of the step, handed to or from scalar code
+LANE_ROWS = 52

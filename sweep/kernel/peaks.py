@@ -1,9 +1,18 @@
-"""Extremes and crossings inside one step, on the step's own cubic."""
+"""Extremes and crossings inside one step: on the step's own cubic in one lane, and by values and slopes in all lanes at once."""
 
 import math
 
-from sweep.kernel.step import on_cubic
-from sweep.kernel.vector import compiled
+from sweep.kernel.memory import load, store
+from sweep.kernel.vector import bits, compiled, root, where
+
+NOW, SLOPE, BEFORE, SLOPE_BEFORE = 0, 1, 2, 3  # of the four rows that a followed quantity has (layout.L_HEAT and so on)
+
+
+@compiled
+def on_cubic(cubic, theta):  # type: ignore[no-untyped-def]
+    """Return y(theta) = (1 - theta) y0 + theta (y1 + (1 - theta) (p + theta q)), cubic = (y0, y1, p, q)."""
+    y0, y1, p, q = cubic
+    return (1.0 - theta) * y0 + theta * (y1 + (1.0 - theta) * (p + theta * q))
 
 
 @compiled
@@ -16,18 +25,18 @@ def cubic_peak(cubic, until):  # type: ignore[no-untyped-def]
         best, value = until, end
     a, b, c = -3.0 * q, 2.0 * (q - p), y1 - y0 + p
     spread = b * b - 4.0 * a * c
-    if spread > 0.0 and (c > 0.0 or y1 - y0 - p - q < 0.0):
+    if spread > 0.0:
         half = -0.5 * (b + math.copysign(math.sqrt(spread), b))
         for k in range(2):
-            root = -1.0
+            place = -1.0
             if k == 0 and a != 0.0:
-                root = half / a
+                place = half / a
             if k == 1 and half != 0.0:
-                root = c / half
-            if 0.0 < root < until:
-                here = on_cubic(cubic, root)
+                place = c / half
+            if 0.0 < place < until:
+                here = on_cubic(cubic, place)
                 if here > value:
-                    best, value = root, here
+                    best, value = place, here
     return best, value
 
 
@@ -47,21 +56,51 @@ def crossing(cubic, level):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def hermite_peak(q0, s0, q1, s1, h):  # type: ignore[no-untyped-def]
-    """Return (theta, value) of the highest point of the cubic through two values with their slopes, a step h apart."""
-    best, highest = 0.0, q0
-    if q1 > q0:
-        best, highest = 1.0, q1
-    m0, m1 = s0 * h, s1 * h
-    if not (m0 > 0.0 and m1 < 0.0):
-        return best, highest
-    a, b = 2.0 * (q0 - q1) + m0 + m1, 3.0 * (q1 - q0) - 2.0 * m0 - m1
-    inner = b * b - 3.0 * a * m0
-    if inner <= 0.0 or b - math.sqrt(inner) >= 0.0:
-        return best, highest
-    theta = m0 / (math.sqrt(inner) - b)
-    if 0.0 < theta < 1.0:
-        value = q0 + theta * (m0 + theta * (b + theta * a))
-        if value > highest:
-            best, highest = theta, value
-    return best, highest
+def productivity_slope(cubic, theta, time, h, turnaround):  # type: ignore[no-untyped-def]
+    """Return the sign-giving part of d(P / (t + turnaround))/dt, times h."""
+    y0, y1, p, q = cubic
+    slope = (y1 - y0) + (1.0 - 2.0 * theta) * p + (2.0 * theta - 3.0 * theta * theta) * q
+    return slope * (time + theta * h + turnaround) - h * on_cubic(cubic, theta)
+
+
+@compiled
+def most_productive(cubic, time, h, turnaround):  # type: ignore[no-untyped-def]
+    """Return the fraction of the step at which P / (t + turnaround) turns from rising to falling, by bisection."""
+    low, high = 0.0, 1.0
+    for _ in range(40):
+        middle = 0.5 * (low + high)
+        if productivity_slope(cubic, middle, time, h, turnaround) > 0.0:
+            low = middle
+        else:
+            high = middle
+    return 0.5 * (low + high)
+
+
+@compiled
+def peak_between(followed, pending, h):  # type: ignore[no-untyped-def]
+    """Return (theta, value) of the highest point between the starts of the last two steps, h apart, for all lanes.
+
+    followed: address of the quantity's four rows; pending: mask of lanes that have a step before, the others give the value now.
+    On the cubic through both values with their slopes.
+    """
+    q0, m0 = load(followed, BEFORE), load(followed, SLOPE_BEFORE) * h
+    q1, m1 = load(followed, NOW), load(followed, SLOPE) * h
+    earlier = pending & (q0 > q1)
+    theta, highest = where(earlier, 0.0, 1.0), where(earlier, q0, q1)
+    inside = pending & (m0 > 0.0) & (m1 < 0.0)
+    if bits(inside) != 0:
+        a, b = 2.0 * (q0 - q1) + m0 + m1, 3.0 * (q1 - q0) - 2.0 * m0 - m1
+        inner = b * b - 3.0 * a * m0
+        below = root(where(inner > 0.0, inner, 0.0)) - b
+        place = m0 / below
+        value = q0 + place * (m0 + place * (b + place * a))
+        inside = inside & (inner > 0.0) & (below > 0.0) & (place < 1.0) & (value > highest)
+        theta, highest = where(inside, place, theta), where(inside, value, highest)
+    return theta, highest
+
+
+@compiled
+def carry_over(followed, done):  # type: ignore[no-untyped-def]
+    """Where a step is done, make the quantity's value and slope at its start those of the step before."""
+    store(followed, BEFORE, where(done, load(followed, NOW), load(followed, BEFORE)))
+    store(followed, SLOPE_BEFORE, where(done, load(followed, SLOPE), load(followed, SLOPE_BEFORE)))

@@ -1,8 +1,7 @@
 """A numba value type over LLVM vectors: LANES doubles that behave like one number.
 
-A kernel written with it reads like scalar code with operators and is vector code by construction. Memory is reached by
-address: `load` and `store` move one vector, `number` and `integer` read one scalar. Nothing here checks bounds: all shapes
-are validated in Python before a march.
+A kernel written with it reads like scalar code with operators and is vector code by construction: arithmetic, comparisons
+that give a mask, and a choice by mask instead of a branch.
 """
 
 import operator
@@ -20,19 +19,24 @@ from sweep.kernel.cache import FOLDER
 LANES = 16
 STRIDE = 8 * LANES  # bytes of one vector in memory
 
-_DOUBLE = ir.DoubleType()
-_LONG = ir.IntType(64)
-_DOUBLES = ir.VectorType(_DOUBLE, LANES)
-_LONGS = ir.VectorType(_LONG, LANES)
+DOUBLE = ir.DoubleType()
+LONG = ir.IntType(64)
+DOUBLES = ir.VectorType(DOUBLE, LANES)
+_LONGS = ir.VectorType(LONG, LANES)
 _BITS = ir.VectorType(ir.IntType(1), LANES)
 _FLAGS = ("contract", "nsz")  # never nnan or reassoc: they break the guards and the exponent tricks
 
-OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "nsz"}, "cache": FOLDER is not None}
+OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "nsz"}}
 
 
 def compiled(function: Any) -> Any:
-    """Compile a kernel function with the options every kernel function shares."""
+    """Compile a kernel function with the options every kernel function shares; it is kept only within what calls it."""
     return numba.njit(**OPTIONS)(function)
+
+
+def compiled_and_kept(function: Any) -> Any:
+    """Compile a function that Python calls, and keep it between processes: alone, since machine code of each part costs time too."""
+    return numba.njit(**OPTIONS, cache=FOLDER is not None)(function)
 
 
 class VectorType(types.Type):  # type: ignore[misc]
@@ -56,7 +60,7 @@ mask = MaskType()
 @register_model(VectorType)
 class _VectorModel(models.PrimitiveModel):  # type: ignore[misc]
     def __init__(self, manager: Any, kind: Any) -> None:
-        super().__init__(manager, kind, _DOUBLES)
+        super().__init__(manager, kind, DOUBLES)
 
 
 @register_model(MaskType)
@@ -65,13 +69,13 @@ class _MaskModel(models.PrimitiveModel):  # type: ignore[misc]
         super().__init__(manager, kind, _BITS)
 
 
-def _spread(builder: Any, value: Any) -> Any:
+def widened(builder: Any, value: Any) -> Any:
     """Return a scalar double in every lane; a vector passes through."""
-    if value.type == _DOUBLES:
+    if value.type == DOUBLES:
         return value
-    one = builder.insert_element(ir.Constant(_DOUBLES, ir.Undefined), value, ir.Constant(ir.IntType(32), 0))
+    one = builder.insert_element(ir.Constant(DOUBLES, ir.Undefined), value, ir.Constant(ir.IntType(32), 0))
     order = ir.Constant(ir.VectorType(ir.IntType(32), LANES), [0] * LANES)
-    return builder.shuffle_vector(one, ir.Constant(_DOUBLES, ir.Undefined), order)
+    return builder.shuffle_vector(one, ir.Constant(DOUBLES, ir.Undefined), order)
 
 
 _PAIRS = ((vector, vector), (vector, types.float64), (types.float64, vector))
@@ -86,7 +90,7 @@ def _binary(function: Any, result: Any, build: Any) -> None:
     typed_for(function)(Cases)
 
     def lower(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return build(builder, _spread(builder, args[0]), _spread(builder, args[1]))
+        return build(builder, widened(builder, args[0]), widened(builder, args[1]))
 
     for pair in _PAIRS:
         lower_builtin(function, *(type(p) if p is vector else p for p in pair))(lower)
@@ -132,71 +136,14 @@ def _either(context: Any, builder: Any, sig: Any, args: Any) -> Any:
     return builder.or_(*args)
 
 
-def _reached(builder: Any, address: Any, kind: Any) -> Any:
-    return builder.inttoptr(address, kind.as_pointer())
+@typed_for(operator.invert)
+class _Inverted(ConcreteTemplate):  # type: ignore[misc]
+    cases = (signature(mask, mask),)
 
 
-@intrinsic
-def load(typing: Any, address: Any) -> Any:
-    """Return the vector at `address` (bytes)."""
-
-    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return builder.load(_reached(builder, args[0], _DOUBLES), align=64)
-
-    return vector(types.int64), code
-
-
-@intrinsic
-def store(typing: Any, address: Any, value: Any) -> Any:
-    """Write a vector at `address` (bytes)."""
-
-    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        builder.store(args[1], _reached(builder, args[0], _DOUBLES), align=64)
-        return context.get_dummy_value()
-
-    return types.void(types.int64, vector), code
-
-
-@intrinsic
-def number(typing: Any, address: Any) -> Any:
-    """Return the double at `address` (bytes)."""
-
-    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return builder.load(_reached(builder, args[0], _DOUBLE))
-
-    return types.float64(types.int64), code
-
-
-@intrinsic
-def integer(typing: Any, address: Any) -> Any:
-    """Return the 64-bit integer at `address` (bytes)."""
-
-    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return builder.load(_reached(builder, args[0], _LONG))
-
-    return types.int64(types.int64), code
-
-
-@intrinsic
-def put(typing: Any, address: Any, value: Any) -> Any:
-    """Write one double at `address` (bytes)."""
-
-    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        builder.store(args[1], _reached(builder, args[0], _DOUBLE))
-        return context.get_dummy_value()
-
-    return types.void(types.int64, types.float64), code
-
-
-@intrinsic
-def put_integer(typing: Any, address: Any, value: Any) -> Any:
-    """Write one 64-bit integer at `address` (bytes)."""
-
-    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        builder.store(args[1], _reached(builder, args[0], _LONG))
-        return context.get_dummy_value()
-
-    return types.void(types.int64, types.int64), code
+@lower_builtin(operator.invert, MaskType)
+def _invert(context: Any, builder: Any, sig: Any, args: Any) -> Any:
+    return builder.not_(args[0])
 
 
 @intrinsic
@@ -204,7 +151,7 @@ def spread(typing: Any, value: Any) -> Any:
     """Return a scalar double in every lane."""
 
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return _spread(builder, args[0])
+        return widened(builder, args[0])
 
     return vector(types.float64), code
 
@@ -214,7 +161,7 @@ def where(typing: Any, condition: Any, a: Any, b: Any) -> Any:
     """Return `a` in the lanes where the mask is set, else `b`; either may be a scalar double."""
 
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return builder.select(args[0], _spread(builder, args[1]), _spread(builder, args[2]))
+        return builder.select(args[0], widened(builder, args[1]), widened(builder, args[2]))
 
     kinds = [vector if isinstance(side, VectorType) else types.float64 for side in (a, b)]
     return vector(mask, *kinds), code
@@ -225,14 +172,34 @@ def bits(typing: Any, condition: Any) -> Any:
     """Return a mask as an integer, lane 0 in the lowest bit."""
 
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        return builder.zext(builder.bitcast(args[0], ir.IntType(LANES)), _LONG)
+        return builder.zext(builder.bitcast(args[0], ir.IntType(LANES)), LONG)
 
     return types.int64(mask), code
 
 
+@intrinsic
+def mask_of(typing: Any, flags: Any) -> Any:
+    """Return the mask whose lanes are the lowest bits of an integer."""
+
+    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
+        return builder.bitcast(builder.trunc(args[0], ir.IntType(LANES)), _BITS)
+
+    return mask(types.int64), code
+
+
+@intrinsic
+def lowest(typing: Any, flags: Any) -> Any:
+    """Return the place of the lowest bit that is set."""
+
+    def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
+        return builder.cttz(args[0], ir.Constant(ir.IntType(1), 1))
+
+    return types.int64(types.int64), code
+
+
 def _called(name: str) -> Any:
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
-        kind = ir.FunctionType(_DOUBLES, [_DOUBLES])
+        kind = ir.FunctionType(DOUBLES, [DOUBLES])
         function = builder.module.globals.get(name) or ir.Function(builder.module, kind, name)
         return builder.call(function, args)
 
@@ -261,7 +228,7 @@ def scaled(typing: Any, value: Any, shifted: Any) -> Any:
 
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
         power = builder.shl(builder.bitcast(args[1], _LONGS), _longs(52))
-        return builder.bitcast(builder.add(builder.bitcast(args[0], _LONGS), power), _DOUBLES)
+        return builder.bitcast(builder.add(builder.bitcast(args[0], _LONGS), power), DOUBLES)
 
     return vector(vector, vector), code
 
@@ -272,8 +239,8 @@ def exponent(typing: Any, value: Any) -> Any:
 
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
         field = builder.lshr(builder.bitcast(args[0], _LONGS), _longs(52))
-        whole = builder.bitcast(builder.or_(field, _longs(0x4330000000000000)), _DOUBLES)
-        return builder.fsub(whole, ir.Constant(_DOUBLES, [2.0**52 + 1023.0] * LANES))
+        whole = builder.bitcast(builder.or_(field, _longs(0x4330000000000000)), DOUBLES)
+        return builder.fsub(whole, ir.Constant(DOUBLES, [2.0**52 + 1023.0] * LANES))
 
     return vector(vector), code
 
@@ -284,6 +251,6 @@ def mantissa(typing: Any, value: Any) -> Any:
 
     def code(context: Any, builder: Any, sig: Any, args: Any) -> Any:
         fraction = builder.and_(builder.bitcast(args[0], _LONGS), _longs(0x000FFFFFFFFFFFFF))
-        return builder.bitcast(builder.or_(fraction, _longs(0x3FF0000000000000)), _DOUBLES)
+        return builder.bitcast(builder.or_(fraction, _longs(0x3FF0000000000000)), DOUBLES)
 
     return vector(vector), code
