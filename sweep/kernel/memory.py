@@ -1,3 +1,4 @@
+# mypy: disable-error-code="untyped-decorator, no-untyped-call, unused-ignore"
 """Memory as the compiled kernel reaches it: by address, one vector or one number at a time.
 
 `s` is the table of integers, `f` the table of floats beside it; both stand still during a march, and the compiler is told so.
@@ -9,9 +10,8 @@ from typing import Any
 
 from llvmlite import ir
 from numba.core import types
-from numba.extending import intrinsic
 
-from sweep.kernel.vector import DOUBLE, DOUBLES, LONG, STRIDE, VectorType, vector, widened
+from sweep.kernel.vector import DOUBLE, DOUBLES, LONG, STRIDE, VectorType, intrinsic, vector, widened
 
 _VECTOR_ALIGNMENT = 64
 

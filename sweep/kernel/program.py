@@ -49,7 +49,7 @@ class Structure:
     @property
     def rows(self) -> int:
         """Number of states: z, temperature, jacket, controller integral, energy over the boundary."""
-        return self.sources.shape[0] + 4
+        return int(self.sources.shape[0]) + 4
 
 
 @dataclass(frozen=True)
@@ -117,7 +117,7 @@ def _write_sparse(tables: _Tables, header: int, matrix: Floats) -> list[int]:
         columns = np.flatnonzero(row)
         tables.add(len(columns))
         for column in columns:
-            tables.add(column, row[column])
+            tables.add(int(column), row[column])
     return starts
 
 
@@ -212,7 +212,7 @@ def compile_tables(structure: Structure) -> Program:
         for weight in weights:
             tables.add(0, weight)
     _write_method(tables)
-    tables.integers[at.N_SLOTS] = lu.count
+    tables.integers[at.N_SLOTS] = lu.total
     _write_sizes(tables.integers, structure)
     _lay_out(tables.integers, structure)
     return Program(np.array(tables.integers, dtype=np.int64), np.array(tables.floats), structure)

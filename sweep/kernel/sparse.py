@@ -9,7 +9,7 @@ Integers = NDArray[np.int64]
 
 
 class Operations(NamedTuple):
-    """slots: (rows, rows), place of each entry, -1 for none; count of slots; three streams, each line after its own length.
+    """slots: (rows, rows), place of each entry, -1 for none; total of slots; three streams, each line after its own length.
 
     factor: per pivot, [slot of the pivot, rows]; per row [slot of (row, pivot), columns], then pairs [slot of (row, column), slot of
     (pivot, column)]. forward: per row [row, entries], then pairs [column, slot]; ended by row -1. backward: per row, from the last,
@@ -17,7 +17,7 @@ class Operations(NamedTuple):
     """
 
     slots: Integers
-    count: int
+    total: int
     factor: list[int]
     forward: list[int]
     backward: list[int]

@@ -1,3 +1,4 @@
+# mypy: disable-error-code="untyped-decorator, no-untyped-call, unused-ignore"
 """A numba value type over LLVM vectors: LANES doubles that behave like one number.
 
 A kernel written with it reads like scalar code with operators and is vector code by construction: arithmetic, comparisons
@@ -12,9 +13,12 @@ from llvmlite import ir
 from numba.core import types
 from numba.core.typing.templates import ConcreteTemplate, signature
 from numba.core.typing.templates import infer_global as typed_for
-from numba.extending import intrinsic, lower_builtin, models, register_model
+from numba.extending import intrinsic as _declared
+from numba.extending import lower_builtin, models, register_model
 
 from sweep.kernel.cache import FOLDER
+
+intrinsic: Any = _declared  # its type counts the typing context as an argument that callers would have to give
 
 LANES = 16
 STRIDE = 8 * LANES  # bytes of one vector in memory
