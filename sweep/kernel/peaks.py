@@ -3,8 +3,10 @@
 import math
 
 from sweep.kernel.memory import load, store
-from sweep.kernel.vector import bits, compiled, root, where
+from sweep.kernel.vector import bits, compiled, root, size, where
 
+OVERSHOOT = 0.05  # a cubic that rises higher above both its ends follows slopes far faster than the step: no peak, an artefact;
+UNEVEN = 10.0  # so does one whose slopes at its ends differ by more than this: what hides there is too small to matter
 NOW, SLOPE, BEFORE, SLOPE_BEFORE = 0, 1, 2, 3  # of the four rows that a followed quantity has (layout.L_HEAT and so on)
 
 
@@ -94,7 +96,8 @@ def peak_between(followed, pending, h):  # type: ignore[no-untyped-def]
         below = root(where(inner > 0.0, inner, 0.0)) - b
         place = m0 / below
         value = q0 + place * (m0 + place * (b + place * a))
-        inside = inside & (inner > 0.0) & (below > 0.0) & (place < 1.0) & (value > highest)
+        resolved = (value - highest <= OVERSHOOT * size(value)) & (m0 + UNEVEN * m1 < 0.0) & (UNEVEN * m0 + m1 > 0.0)
+        inside = inside & (inner > 0.0) & (below > 0.0) & (place < 1.0) & (value > highest) & resolved
         theta, highest = where(inside, place, theta), where(inside, value, highest)
     return theta, highest
 
