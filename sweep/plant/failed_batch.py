@@ -20,6 +20,7 @@ from sweep.study.model import Study
 
 DRAWN = 101  # moments that draw well
 _PATH_TIMES = 241
+_STILL = 1e-9  # of the largest heat flow on a path; below, nothing is happening and the stage before goes on
 
 
 @dataclass(frozen=True)
@@ -114,7 +115,10 @@ def _flow_along(plant: Charged, failed: adiabatic.Failed, state: Floats) -> rate
 def _stages(study: Study, now: rates.Flow, known: np.ndarray) -> np.ndarray:
     """Return which kind of reaction gives off more heat at each time."""
     share = [now.heat[:, adiabatic.purposes(study, p)].sum(axis=1) for p in ("synthesis", "decomposition")]
-    return np.where(known & (share[0] < share[1]), "decomposition", "synthesis")
+    total = np.abs(share[0]) + np.abs(share[1])
+    telling = known & (total > _STILL * total.max(initial=0.0))
+    stage = pd.Series(np.where(share[0] < share[1], "decomposition", "synthesis"), dtype="object")
+    return stage.where(telling).ffill().bfill().fillna("synthesis").to_numpy(dtype=str)
 
 
 def _fastest(times: Floats, T: Floats, rate: Floats) -> tuple[str, float, float | None]:

@@ -19,6 +19,7 @@ from sweep.study.model import Study
 
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
 WORTH = 3.0  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
+MEANINGLESS = 1e15  # s; a closed form beyond this says that nothing gives off heat, not how long it takes
 CLOSE = 0.0025  # of the batch time; the marches left and right of the worst one are brought at least this near
 ROUNDS = 6  # of marches where they are not: each in a third of the bracket before
 
@@ -242,7 +243,8 @@ def _urgent(study: Study, plant: Charged, marched: Moments, known: np.ndarray, f
     found["tmr_ad_time_s"][have] = marched.time[at_worst]
     block, state = marched.block[at_worst], marched.state[at_worst]
     nz = plant.program.structure.sources.shape[0]
-    found["tmr_ad_closed_form_s"][have] = closed_form_tmr(adiabatic.flow_of(plant, have, block, state), decomposes, state[:, nz])
+    closed = closed_form_tmr(adiabatic.flow_of(plant, have, block, state), decomposes, state[:, nz])
+    found["tmr_ad_closed_form_s"][have] = np.where(closed < MEANINGLESS, closed, np.nan)
     if not plant.values.has("failure.td24"):
         found["td24_K"][have], found["td24_censored"][have] = find_td24(study, plant, have, block, state, tolerance)
     rise = adiabatic.complete_rise(study, plant, have, block, state, "decomposition")

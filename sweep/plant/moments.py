@@ -18,6 +18,7 @@ from sweep.plant.recipe import Charged
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
+COLDEST = 100.0  # K; an endothermic completion is estimated no colder
 FINE = 33  # times looked at inside a bracket
 
 
@@ -65,22 +66,21 @@ def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles
     block = plant.blocks[rows, 0]
     terms, _, _ = rates.parts_of_block(plant, block)
     delta = plant.constants[rows, at.DELTA][:, None]
-    total = np.zeros_like(T)
-    k = 0
-    chosen = set(purposes(study, "decomposition"))
-    given_off = states.reference_heats(study, plant)[rows]
-    for j, reaction in enumerate(plant.program.structure.reactions):
-        if j in chosen:
-            energy = -terms[:, k, 1][:, None]
-            rate = np.exp(np.clip(terms[:, k, 0][:, None] - energy / T, -700.0, 700.0)) * volume
-            for factor in reaction[0].factors:
-                x = moles[:, :, factor.species] / volume
-                rate = rate * np.maximum(x, 0.0) ** factor.power * (np.abs(x) + delta) ** factor.extra
-            total += np.maximum(rate * given_off[:, j][:, None], 0.0) * energy * R / T**2
-        k += len(reaction)
-    capacity = (moles * plant.cp[rows][:, None, :, 0]).sum(axis=2)
-    with np.errstate(divide="ignore"):
-        return np.log(total / np.where(capacity > 0.0, capacity, 1.0))
+    total, k, given_off = np.zeros_like(T), 0, states.reference_heats(study, plant)[rows]
+    T = np.maximum(T, COLDEST)
+    with np.errstate(divide="ignore", over="ignore", invalid="ignore"):
+        for j, reaction in enumerate(plant.program.structure.reactions):
+            if study.reactions[j].purpose == "decomposition":
+                energy = -terms[:, k, 1][:, None]
+                rate = np.exp(np.clip(terms[:, k, 0][:, None] - energy / T, -700.0, 700.0)) * volume
+                for factor in reaction[0].factors:
+                    x = moles[:, :, factor.species] / volume
+                    rate = rate * np.maximum(x, 0.0) ** factor.power * (np.abs(x) + delta) ** factor.extra
+                total += np.maximum(rate * given_off[:, j][:, None], 0.0) * energy * R / T**2
+            k += len(reaction)
+        capacity = (moles * plant.cp[rows][:, None, :, 0]).sum(axis=2)
+        found = np.log(total / np.where(capacity > 0.0, capacity, 1.0))
+    return np.where(np.isnan(found), -np.inf, found)
 
 
 def estimates(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> list[Floats]:

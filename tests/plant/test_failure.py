@@ -107,3 +107,15 @@ def test_study_without_failure_is_refused():
     text = SMALL[: SMALL.index("[failure]")].replace('mtsr = { at_most = "85 degC" }', "")
     with pytest.raises(SweepError, match=r"\[failure\]"):
         failure_times(read_text(text))
+
+
+def test_endothermic_synthesis_is_no_trouble():
+    """The estimates may run cold; the figures stay those of marches: nothing is hotter than the batch itself."""
+    row = _row(COOLED.replace('"-80 kJ/mol"', '"400 kJ/mol"'))
+    assert row["max_temperature_K"] == pytest.approx(row["mtsr_K"], abs=0.02)
+
+
+def test_closed_form_without_heat_is_null():
+    row = _row(SMALL.replace('"-150 kJ/mol"', '"150 kJ/mol"'))
+    assert pd.isna(row["tmr_ad_closed_form_s"])
+    assert row["tmr_ad_censored"]
