@@ -59,6 +59,13 @@ def purposes(study: Study, purpose: str) -> list[int]:
     return [j for j, reaction in enumerate(study.reactions) if reaction.purpose == purpose]
 
 
+def speeds_itself_up(study: Study) -> bool:
+    """Tell whether a decomposition makes what a decomposition's rate rises with (autocatalysis, or one that feeds another)."""
+    reactions = [r for r in study.reactions if r.purpose == "decomposition"]
+    made = {s for r in reactions for s, n in r.stoichiometry.items() if n > 0.0}
+    return any(s in made and order > 0.0 for r in reactions for s, order in r.orders.items())
+
+
 def _uncooled(block: Floats, wall: Floats) -> None:
     """Take cooling, stirrer and losses out of segment blocks (..., block); wall (...) J/K stays."""
     for name in (at.UA_CONSTANT, at.UA_PER_VOLUME, at.DUTY_ON, at.JACKET_CAPACITY_INVERSE, at.JACKET_RENEWAL, at.GAIN, at.RESET_INVERSE,

@@ -18,7 +18,8 @@ from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
-WORTH = 3.0  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
+WORTH = 0.5  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
+WORTH_AUTOCATALYTIC = 3.0  # likewise where a decomposition speeds itself up and the estimate may mislead
 MEANINGLESS = 1e15  # s; a closed form beyond this says that nothing gives off heat, not how long it takes
 CLOSE = 0.0025  # of the batch time; the marches left and right of the worst one are brought at least this near
 ROUNDS = 6  # of marches where they are not: each in a third of the bracket before
@@ -26,11 +27,13 @@ ROUNDS = 6  # of marches where they are not: each in a third of the bracket befo
 
 @dataclass(frozen=True)
 class Moments:
-    """M failures that were marched: rows (M,), time (M,) s, mtsr (M,) K, tmr (M,) s (infinite where not marched), censored (M,),
-    urgency (M,): minus ln of the closed form; ok (M,), mixture block (M, block) and state (M, R) where MTSR is reached."""
+    """M failures that were marched: rows (M,), time (M,) s, begin (M, R): the state then; mtsr (M,) K, tmr (M,) s (infinite where not
+    marched, NaN where that march failed), censored (M,), urgency (M,): minus ln of the closed form; ok (M,): MTSR was found; mixture block
+    (M, block) and state (M, R) where MTSR is reached."""
 
     rows: np.ndarray
     time: Floats
+    begin: Floats
     mtsr: Floats
     tmr: Floats
     censored: np.ndarray
@@ -44,8 +47,13 @@ class Moments:
         return Moments(*(np.concatenate([getattr(self, name), getattr(other, name)]) for name in self.__dataclass_fields__))
 
 
-def march_moments(study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, all_tmr: bool = False) -> Moments:
-    """March failures at times (M,) from states (M, R): the synthesis, then the decomposition where it may be among the worst."""
+def march_moments(
+    study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, all_tmr: bool = False
+) -> Moments:
+    """March failures at times (M,) from states (M, R): the synthesis, then the decomposition where it may be among the worst.
+
+    all_tmr: march every decomposition.
+    """
     failed = adiabatic.fail(study, plant, rows, time, state)
     synthesis = adiabatic.run_synthesis(study, plant, failed, tolerance)
     block = adiabatic.mixture_block(study, plant, failed)
@@ -56,12 +64,13 @@ def march_moments(study: Study, plant: Charged, rows: np.ndarray, time: Floats, 
         urgency = np.where(ok, _urgency(study, plant, rows, block, synthesis.state), -np.inf)
     worst = np.full(plant.values.count, -np.inf)
     np.maximum.at(worst, rows, urgency)
-    chosen = ok & decomposes & (all_tmr | ~(urgency < worst[rows] - WORTH))
+    worth = WORTH_AUTOCATALYTIC if adiabatic.speeds_itself_up(study) else WORTH
+    chosen = ok & decomposes & (all_tmr | ~(urgency < worst[rows] - worth))
     if chosen.any():
         horizon = plant.values.get("failure.horizon")[rows[chosen]]
         run = adiabatic.run_decomposition(study, plant, rows[chosen], block[chosen], synthesis.state[chosen], horizon, tolerance)
-        tmr[chosen], censored[chosen], ok[chosen] = run.tmr, run.censored, run.ok
-    return Moments(rows, time, synthesis.temperature, tmr, censored, urgency, ok, block, synthesis.state)
+        tmr[chosen], censored[chosen] = np.where(run.ok, run.tmr, np.nan), run.censored
+    return Moments(rows, time, state, synthesis.temperature, tmr, censored, urgency, ok, block, synthesis.state)
 
 
 def _urgency(study: Study, plant: Charged, rows: np.ndarray, block: Floats, state: Floats) -> Floats:
@@ -72,27 +81,39 @@ def _urgency(study: Study, plant: Charged, rows: np.ndarray, block: Floats, stat
 
 
 def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) -> Moments:
-    """Return the failures marched in search of the worst ones, several for every point."""
-    count = batch.times.shape[0]
-    rows = np.arange(count)
+    """Return the failures marched in search of the worst ones, several for every point; the last are the worst, at full tolerance.
+
+    The search itself may be rougher: it decides only which moments are the worst, and those are marched again.
+    """
+    rows, rough = np.arange(batch.times.shape[0]), min(10.0 * tolerance, 1e-5)
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
     tops = [e.argmax(axis=1) for e in found]
     pairs = _coarse(batch, found, tops)
-    marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], tolerance)
+    marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], rough)
     parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, top, tolerance) for which, top in enumerate(tops)]
     time, state = np.concatenate([p[0] for p in parts], axis=1), np.concatenate([p[1] for p in parts], axis=1)
-    marched = marched.joined(_march_grid(study, plant, rows, time, state, tolerance))
+    marched = marched.joined(_march_grid(study, plant, rows, time, state, rough))
     for which in range(len(found)):
-        marched = _narrowed(study, plant, batch, marched, which, tolerance)
-    return marched
+        marched = _narrowed(study, plant, batch, marched, which, rough)
+    return _again(study, plant, marched, tolerance)
 
 
-def _march_grid(study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, all_tmr: bool = False) -> Moments:
+def _again(study: Study, plant: Charged, marched: Moments, tolerance: float) -> Moments:
+    """March the hottest and the most urgent moments of each point again, at full tolerance."""
+    count = plant.values.count
+    hottest, urgent = _best(marched, _score(marched, 0), count)[0], _most_urgent(marched, count)
+    places = np.unique(np.concatenate([hottest[hottest >= 0], urgent[urgent >= 0]]))
+    return march_moments(study, plant, marched.rows[places], marched.time[places], marched.begin[places], tolerance, True)
+
+
+def _march_grid(
+    study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, rough: float, all_tmr: bool = False
+) -> Moments:
     """March failures at times (M, K) from states (M, K, R) of points `rows` (M,), each time once."""
     every, flat = np.repeat(rows, time.shape[1]), state.reshape(-1, state.shape[2])
     _, first = np.unique(np.stack([every, time.ravel()]), axis=1, return_index=True)
     usable = first[np.isfinite(flat[first]).all(axis=1)]
-    return march_moments(study, plant, every[usable], time.ravel()[usable], flat[usable], tolerance, all_tmr)
+    return march_moments(study, plant, every[usable], time.ravel()[usable], flat[usable], rough, all_tmr)
 
 
 def _estimate(study: Study, plant: Charged, which: int) -> moments.Estimate:
@@ -131,7 +152,7 @@ def _best(marched: Moments, score: Floats, count: int) -> tuple[np.ndarray, Floa
     return np.where(np.isfinite(best), place, -1), best
 
 
-def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, tolerance: float) -> Moments:
+def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, rough: float) -> Moments:
     """March on around each point's worst moment until its neighbours are close, then at the top of the parabola through the three."""
     count = plant.values.count
     end = np.where(batch.inside, batch.times, 0.0).max(axis=1)
@@ -152,7 +173,7 @@ def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, whic
             rows, middle, low, high = rows[inner], middle[inner], low[inner], high[inner]
             time = _vertex(marched, score, rows, low, middle, high, best)[:, None]
         if rows.size:
-            marched = marched.joined(_march_grid(study, plant, rows, time, _states(plant, batch, rows, time, tolerance), tolerance, which == 1))
+            marched = marched.joined(_march_grid(study, plant, rows, time, _states(plant, batch, rows, time, rough), rough, which == 1))
     return marched
 
 
@@ -208,6 +229,8 @@ def failure_figures(study: Study, plant: Charged, batch: Batch, process: Floats,
     for n in np.flatnonzero(~known).tolist():
         reasons[n].append("mtsr, tmr_ad, td24, criticality_class: no march after a cooling failure came to an end")
     _urgent(study, plant, marched, known, found, tolerance)
+    for n in marched.rows[np.isnan(marched.tmr)].tolist():
+        reasons[n].append("tmr_ad, td24: a march after a cooling failure did not come to its end")
     _rises(study, plant, marched, hot, known, found)
     mtt = plant.values.get("failure.mtt", np.nan)
     td24 = plant.values.get("failure.td24") if plant.values.has("failure.td24") else None
@@ -253,11 +276,15 @@ def _urgent(study: Study, plant: Charged, marched: Moments, known: np.ndarray, f
 
 
 def _most_urgent(marched: Moments, count: int) -> np.ndarray:
-    """Return for each point the place of the shortest time to maximum rate (-1: none); among equal bounds the most urgent one."""
+    """Return for each point the place of the shortest time to maximum rate (-1: none); among equal bounds the most urgent one.
+
+    A point of which one such march failed has none: what it would have shown is not known.
+    """
     usable = np.flatnonzero(marched.ok & np.isfinite(marched.tmr))
     order = usable[np.lexsort((marched.urgency[usable], -marched.tmr[usable], marched.rows[usable]))]
     place = np.full(count, -1)
     place[marched.rows[order]] = order
+    place[marched.rows[np.isnan(marched.tmr)]] = -1
     return place
 
 

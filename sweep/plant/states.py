@@ -58,8 +58,8 @@ def completed(study: Study, moles: Floats, given_off: Floats, purpose: str = "sy
 def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) -> tuple[Floats, Floats]:
     """Run the reactions `ranks` one after another, each until a reactant is gone, until none moves; return heat and moles."""
     heat = np.zeros(left.shape[:-1])
-    weights = given_off if left.ndim == 2 else given_off[:, None, :]
     scale = 1e-12 * left.sum(axis=-1)
+    amounts = [np.ascontiguousarray(left[..., i]) for i in range(left.shape[-1])]
     moved = np.ones(left.shape[:-1], dtype=bool)
     for _ in range(4 * ranks.size + 1):
         moving, moved = moved, np.zeros(left.shape[:-1], dtype=bool)
@@ -67,14 +67,17 @@ def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) ->
             used = np.flatnonzero(nu[j] < 0.0)
             if not used.size:
                 continue
-            # what is settled keeps its bits, whatever its neighbours do
-            extent = np.where(moving, (left[..., used] / -nu[j, used]).min(axis=-1), 0.0)
-            left = np.maximum(left + extent[..., None] * nu[j], 0.0)
-            heat += extent * weights[..., j]
+            extent = amounts[used[0]] / -nu[j, used[0]]
+            for i in used[1:]:
+                extent = np.minimum(extent, amounts[i] / -nu[j, i])
+            extent = np.where(moving, extent, 0.0)  # what is settled keeps its bits, whatever its neighbours do
+            for i in np.flatnonzero(nu[j]):
+                amounts[i] = np.maximum(amounts[i] + extent * nu[j, i], 0.0)
+            heat += extent * (given_off[:, j] if left.ndim == 2 else given_off[:, j, None])
             moved |= extent > scale
         if not moved.any():
             break
-    return heat, left
+    return heat, np.stack(amounts, axis=-1)
 
 
 def accumulation(study: Study, plant: Charged, rows: np.ndarray, state: Floats, time: Floats) -> Floats:
