@@ -87,8 +87,9 @@ def flow(
 def cooling_duty(block: Floats, now: Flow, T: Floats, jacket: Floats, volume: Floats) -> Floats:
     """Return the heat (W) that the cooling takes away at states, as each segment's kind of cooling has it."""
     through = (block[:, at.UA_CONSTANT] + block[:, at.UA_PER_VOLUME] * volume) * (T - jacket)
-    off = now.gained / now.capacity
-    full = off - block[:, at.DUTY] / now.capacity
+    capacity = np.where(now.capacity > 0.0, now.capacity, np.nan)
+    off = now.gained / capacity
+    full = off - block[:, at.DUTY] / capacity
     hold = (block[:, at.SET_POINT] - T) * block[:, at.HOLD_RATE]
     held = np.where(hold > off, off, np.maximum(full, hold))
     duty = np.where(block[:, at.DUTY_ON] > 0.5, now.gained - now.capacity * held, through)
@@ -97,7 +98,7 @@ def cooling_duty(block: Floats, now: Flow, T: Floats, jacket: Floats, volume: Fl
 
 def heating_rate(now: Flow) -> Floats:
     """Return dT/dt (K/s) of contents without cooling."""
-    return now.gained / now.capacity
+    return now.gained / np.where(now.capacity > 0.0, now.capacity, np.nan)
 
 
 def closed_form_tmr(now: Flow, decomposes: list[int], T: Floats) -> Floats:

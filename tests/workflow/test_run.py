@@ -1,0 +1,109 @@
+"""A run from study to answers: the schema, what is resumed, and what a study need not ask for."""
+
+import json
+from importlib.resources import files
+
+import jsonschema
+import pandas as pd
+import pytest
+
+import sweep
+from sweep.study import read_text
+from sweep.workflow.run import run
+from tests.texts import SMALL, isothermal
+
+QUICK = SMALL.replace("levels = 20", "levels = 3").replace("levels = 30", "levels = 3")
+
+
+@pytest.fixture(scope="module")
+def schema():
+    return json.loads(files("sweep.workflow").joinpath("summary.schema.json").read_text())
+
+
+def _cut(text, *headings):
+    """Return a study without some of its sections."""
+    for heading in headings:
+        start = text.index(heading)
+        end = text.find("\n[", start + 1)
+        text = text[:start] + (text[end + 1 :] if end > 0 else "")
+    return text
+
+
+WHOLE = {
+    "whole": QUICK,
+    "without target": _cut(QUICK, "[target]", "[batch_time]"),
+    "without failure": _cut(QUICK, "[failure]").replace('mtsr = { at_most = "85 degC" }', ""),
+    "without limits": _cut(QUICK, "[limits]"),
+    "without window": _cut(QUICK, "[window]"),
+    "without variables": _cut(QUICK, "[window]", "[variables]"),
+    "one variable": "\n".join(line for line in _cut(QUICK, "[window]").splitlines() if not line.startswith("start = ")),
+    "never reached": QUICK.replace("conversion = 0.9", "conversion = 0.999999").replace('longest = "24 h"', 'longest = "6 h"'),
+    "to target": QUICK.replace('batch_time = "6 h"', 'batch_time = "to target"'),
+    "bare isothermal": isothermal("A -> R | 1e-3 1/s"),
+    "nothing asked": _cut(isothermal("A -> R | 1e-3 1/s"), "[target]"),
+    "runaway": QUICK.replace('"-80 kJ/mol"', '"-3000 kJ/mol"'),
+}
+
+
+@pytest.mark.parametrize("name", WHOLE)
+def test_summary_keeps_its_schema_whatever_is_asked(tmp_path, schema, name):
+    found = run(read_text(WHOLE[name]), tmp_path, workers=1, figures=False)
+    written = json.loads((tmp_path / "summary.json").read_text())
+    jsonschema.validate(written, schema)
+    assert written["points"]["planned"] == sum(len(t) for t in found.points())
+    assert written["not_assessed"]
+
+
+def test_report_stands_whatever_is_asked(tmp_path):
+    for name in ("without target", "without variables", "nothing asked", "runaway"):
+        run(read_text(WHOLE[name]), tmp_path / name, workers=1)
+        assert (tmp_path / name / "report.html").stat().st_size > 5000
+
+
+def test_public_names_do_what_they_say(tmp_path):
+    study = tmp_path / "study.toml"
+    study.write_text(QUICK)
+    found = sweep.run(sweep.read_study(study), out=tmp_path / "out", workers=1, figures=False)
+    assert found.summary["set_point"]["status"] == "done"
+    assert 9 == sum(len(table) for table in found.points())
+    table = sweep.simulate(sweep.read_study(study), pd.DataFrame({"dose": [1000.0]}))
+    assert 1000.0 == table["dose"][0]
+    assert [0.0, 60.0] == sweep.profile(sweep.read_study(study), {"dose": 1000.0}, [0.0, 60.0])["time_s"].tolist()
+    with pytest.raises(sweep.SweepError, match="neither a variable"):
+        sweep.simulate(sweep.read_study(study), pd.DataFrame({"none": [1.0]}))
+    with pytest.raises(AttributeError):
+        _ = sweep.nothing
+
+
+def test_analyses_that_are_done_are_not_done_again(tmp_path, monkeypatch):
+    study, told = read_text(QUICK), []
+    run(study, tmp_path, workers=1, figures=False)
+    answers = (tmp_path / "summary.json").read_bytes()
+    (tmp_path / "analyses" / "window_grid.csv").write_text("damaged")
+    run(study, tmp_path, workers=1, figures=False, tell=told.append)
+    assert ["operating window"] == told
+    assert answers == (tmp_path / "summary.json").read_bytes()
+
+
+def test_every_study_kept_here_reads_without_a_fault():
+    from pathlib import Path
+
+    for file in Path("studies").glob("*.toml"):
+        study = sweep.read_study(file)
+        assert () == study.warnings, file
+
+
+def test_window_of_each_demo_is_bounded_by_four_limits():
+    """A demo is worth reading: its set-point holds every limit, and four different ones end its window."""
+    from functools import partial
+    from pathlib import Path
+
+    from sweep.analysis.window import window
+    from sweep.plant import limits, margins
+
+    for file in Path("studies").glob("*.toml"):
+        study = sweep.read_study(file)
+        block = window(study, partial(sweep.simulate, study), margins, limits(study)).summary()
+        assert block["set_point"]["holds"], file
+        assert len(block["limits_binding"]) >= 4, (file, block["limits_binding"])
+        assert block["marches"] <= 4040
