@@ -3,7 +3,7 @@
 import math
 
 from sweep.kernel.memory import load, store
-from sweep.kernel.vector import compiled, root, where
+from sweep.kernel.vector import bits, compiled, root, where
 
 NOW, SLOPE, BEFORE, SLOPE_BEFORE = 0, 1, 2, 3  # of the four rows that a followed quantity has (layout.L_HEAT and so on)
 
@@ -86,13 +86,17 @@ def peak_between(followed, pending, h, highest):  # type: ignore[no-untyped-def]
     """
     q0, m0 = load(followed, BEFORE), load(followed, SLOPE_BEFORE) * h
     q1, m1 = load(followed, NOW), load(followed, SLOPE) * h
-    a, b = 2.0 * (q0 - q1) + m0 + m1, 3.0 * (q1 - q0) - 2.0 * m0 - m1
-    inner = b * b - 3.0 * a * m0
-    below = root(where(inner > 0.0, inner, 0.0)) - b
-    theta = m0 / below
-    value = q0 + theta * (m0 + theta * (b + theta * a))
-    turns = pending & (m0 > 0.0) & (m1 < 0.0) & (inner > 0.0) & (below > 0.0) & (theta < 1.0)
-    return turns & (value > highest) & (value > q0) & (value > q1), theta
+    early, late = q0 + m0 * (1.0 / 3.0), q1 - m1 * (1.0 / 3.0)
+    turns = pending & (m0 > 0.0) & (m1 < 0.0) & (where(early > late, early, late) > highest)  # no cubic rises above its Bezier points
+    theta = m0
+    if bits(turns) != 0:
+        a, b = 2.0 * (q0 - q1) + m0 + m1, 3.0 * (q1 - q0) - 2.0 * m0 - m1
+        inner = b * b - 3.0 * a * m0
+        below = root(where(inner > 0.0, inner, 0.0)) - b
+        theta = m0 / below
+        value = q0 + theta * (m0 + theta * (b + theta * a))
+        turns = turns & (inner > 0.0) & (below > 0.0) & (theta < 1.0) & (value > highest) & (value > q0) & (value > q1)
+    return turns, theta
 
 
 @compiled
