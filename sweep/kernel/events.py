@@ -4,6 +4,7 @@ Whatever is rare in a lane (a crossing, a peak inside the step, a sample) is fou
 """
 
 from sweep.kernel import layout as at
+from sweep.kernel.balance import right_side
 from sweep.kernel.control import LANDED
 from sweep.kernel.lane import cubic_of_state, cubic_of_sum, end_batch, note_crossing, take_samples
 from sweep.kernel.memory import coefficient, entry, keep, load, of_lane, row, store
@@ -99,29 +100,49 @@ def follow_temperature(s, w, lanes, live, time, h, until):  # type: ignore[no-un
 
 
 @compiled
+def look_back(s, f, w, live, time):  # type: ignore[no-untyped-def]
+    """At a step's start (time, s) raise the highest heat release, duty and dT/dt by peaks inside the step before.
+
+    Only now are the slopes at both its ends known. Where they hint at a peak, the balances are worked out on that step's dense output.
+    """
+    lanes = row(s, w, at.W_LANE)
+    length = load(lanes, at.L_STEP_BEFORE)
+    pending = live & (load(lanes, at.L_PENDING) > 0.5) & (load(lanes, at.L_BATCH_OVER) < 0.5)
+    for k in range(3):
+        highest = load(lanes, at.L_HEAT_MAX + k)
+        hinted, theta = peak_between(lanes + (at.L_HEAT + 4 * k) * STRIDE, pending, length, highest)
+        if bits(hinted) != 0:
+            theta = where(hinted, theta, 1.0)
+            when = time - (1.0 - theta) * length
+            state, y0, y1, ps, qs = row(s, w, at.W_NEW), row(s, w, at.W_BEFORE), row(s, w, at.W_Y), row(s, w, at.W_P), row(s, w, at.W_Q)
+            for i in range(entry(s, at.N_ROWS)):
+                store(state, i, on_cubic((load(y0, i), load(y1, i), load(ps, i), load(qs, i)), theta))
+            right_side(s, f, w, state, when, row(s, w, at.W_K))
+            value = load(lanes, at.L_HEAT_NOW + k)
+            higher = hinted & (value > highest)
+            store(lanes, at.L_HEAT_MAX + k, where(higher, value, highest))
+            if k == 2:
+                store(lanes, at.L_RATE_MAX_TIME, where(higher, when, load(lanes, at.L_RATE_MAX_TIME)))
+
+
+@compiled
 def follow_heat(lanes, live, time, h, until):  # type: ignore[no-untyped-def]
-    """Raise the highest heat release, duty and dT/dt; sum up heat and duty by their size."""
-    pending, before = load(lanes, at.L_PENDING) > 0.5, load(lanes, at.L_STEP_BEFORE)
-    for k in range(2):
+    """Raise the highest heat release, duty and dT/dt by their values at both ends of the step; sum up heat and duty by their size."""
+    for k in range(3):
         followed, highest = lanes + (at.L_HEAT + 4 * k) * STRIDE, load(lanes, at.L_HEAT_MAX + k)
-        _, peak = peak_between(followed, pending, before)
         start = load(followed, 0)
         end = start + until * (load(lanes, at.L_HEAT_NOW + k) - start)
-        peak = where(end > peak, end, peak)
-        store(lanes, at.L_HEAT_MAX + k, where(live & (peak > highest), peak, highest))
-        total = load(lanes, at.L_SUM_HEAT + k)
-        store(lanes, at.L_SUM_HEAT + k, where(live, total + 0.5 * until * h * (size(start) + size(end)), total))
+        peak = where(end > start, end, start)
+        higher = live & (peak > highest)
+        store(lanes, at.L_HEAT_MAX + k, where(higher, peak, highest))
         carry_over(followed, live)
-    followed, highest = lanes + at.L_RATE * STRIDE, load(lanes, at.L_RATE_MAX)
-    theta, peak = peak_between(followed, pending, before)
-    end = load(followed, 0) + until * (load(lanes, at.L_RATE_NOW) - load(followed, 0))
-    when = where(end > peak, time + until * h, time + (theta - 1.0) * before)
-    peak = where(end > peak, end, peak)
-    higher = live & (peak > highest)
-    store(lanes, at.L_RATE_MAX, where(higher, peak, highest))
-    store(lanes, at.L_RATE_MAX_TIME, where(higher, when, load(lanes, at.L_RATE_MAX_TIME)))
-    carry_over(followed, live)
-    store(lanes, at.L_STEP_BEFORE, where(live, h, before))
+        if k == 2:
+            when = where(end > start, time + until * h, time)
+            store(lanes, at.L_RATE_MAX_TIME, where(higher, when, load(lanes, at.L_RATE_MAX_TIME)))
+        else:
+            total = load(lanes, at.L_SUM_HEAT + k)
+            store(lanes, at.L_SUM_HEAT + k, where(live, total + 0.5 * until * h * (size(start) + size(end)), total))
+    store(lanes, at.L_STEP_BEFORE, where(live, h, load(lanes, at.L_STEP_BEFORE)))
     store(lanes, at.L_PENDING, where(live, 1.0, load(lanes, at.L_PENDING)))
 
 

@@ -15,10 +15,10 @@ AT_TARGET, AT_PRODUCT, AT_METHOD = 24, 25, 26  # in the float table: moles of ta
 N_SLOTS = 27
 # rows of scratch memory, each one vector (laid out by `program`)
 (
-    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME, W_D,
+    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_BEFORE, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME, W_D,
     W_CP_Z, W_HEAT_Z, W_REFERENCE_Z, W_BLOCK, W_END,
-) = range(32, 56)  # fmt: skip
-HEADER = 56
+) = range(32, 57)  # fmt: skip
+HEADER = 57
 
 # block of one segment of one point: the fixed part (SI) --------------------------------------------------------------------
 T_END, T_START, VOLUME, VOLUME_RATE = 0, 1, 2, 3  # s, s, m3 at the segment's start, m3/s
@@ -39,15 +39,15 @@ N_CONSTANTS = 8
 
 # what a march leaves per point ---------------------------------------------------------------------------------------------
 (
-    OUT_STATUS, OUT_STEPS, OUT_REJECTED, OUT_TIME, OUT_CROSSED, OUT_T_MAX, OUT_T_MAX_TIME, OUT_HEAT_MAX, OUT_DUTY_MAX,
-    OUT_BEST, OUT_BEST_TIME, OUT_REACTED_MAX, OUT_HEAT_SUM, OUT_BOUNDARY_SUM, OUT_END_TIME, OUT_RATE_MAX, OUT_RATE_MAX_TIME,
+    OUT_STATUS, OUT_STEPS, OUT_REJECTED, OUT_TIME, OUT_CROSSED, OUT_T_MAX, OUT_T_MAX_TIME, OUT_HEAT_MAX, OUT_DUTY_MAX, OUT_RATE_MAX,
+    OUT_RATE_MAX_TIME, OUT_BEST, OUT_BEST_TIME, OUT_REACTED_MAX, OUT_HEAT_SUM, OUT_BOUNDARY_SUM, OUT_END_TIME,
 ) = range(17)  # fmt: skip
 OUT_STATES = 18  # then four states: at the batch's end, at the target, at the most productive time, at the last moment
 
 # rows of W_LANE: a lane's own numbers. The first stand in the order of OUT_*, and `leave` copies them out --------------------
 (
-    L_STATUS, L_STEPS, L_REJECTED, L_TIME, L_CROSSED, L_T_MAX, L_T_MAX_TIME, L_HEAT_MAX, L_DUTY_MAX,
-    L_BEST, L_BEST_TIME, L_REACTED_MAX, L_SUM_HEAT, L_SUM_BOUNDARY, L_END_TIME, L_RATE_MAX, L_RATE_MAX_TIME,
+    L_STATUS, L_STEPS, L_REJECTED, L_TIME, L_CROSSED, L_T_MAX, L_T_MAX_TIME, L_HEAT_MAX, L_DUTY_MAX, L_RATE_MAX,
+    L_RATE_MAX_TIME, L_BEST, L_BEST_TIME, L_REACTED_MAX, L_SUM_HEAT, L_SUM_BOUNDARY, L_END_TIME,
 ) = range(17)  # fmt: skip
 LEFT = 17
 CONSTANTS = 17  # then the point's constants, in their order

@@ -5,7 +5,7 @@ Nothing here waits for another lane, so a point's result does not depend on its 
 
 from sweep.kernel import layout as at
 from sweep.kernel.control import accepted, move_on, next_step
-from sweep.kernel.events import follow
+from sweep.kernel.events import follow, look_back
 from sweep.kernel.jacobian import start_of_step
 from sweep.kernel.lane import begin_point, leave, settle
 from sweep.kernel.linear import factorise
@@ -41,13 +41,14 @@ def march(s, f, blocks, starts, constants, points, segments, times, n_times, out
         live, time, h = mask_of(running), load(lanes, at.L_TIME), load(lanes, at.L_STEP)
         start_of_step(s, f, w, time)
         factorise(s, w, GAMMA_INVERSE / h)
+        look_back(s, f, w, live, time)
         stages(s, f, w, time, h)
         wrong, T_new = error_of_step(s, f, w, tolerance), load(new, nz)
         fine = accepted(lanes, wrong, T_new)
         good, rejected = live & fine, live & ~fine
         wanted = next_step(lanes, wrong, fine, h)
         if bits(good) != 0:
-            dense_output(s, f, w)
+            dense_output(s, f, w, good)
             follow(s, f, w, good, time, h, times, n_times, samples, out, out_length, whose)
         landed, short = move_on(lanes, good, rejected, time, h, wanted)
         for i in range(n):

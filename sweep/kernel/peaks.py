@@ -3,10 +3,8 @@
 import math
 
 from sweep.kernel.memory import load, store
-from sweep.kernel.vector import bits, compiled, root, size, where
+from sweep.kernel.vector import bits, compiled, root, where
 
-OVERSHOOT = 0.05  # a cubic that rises higher above both its ends follows slopes far faster than the step: no peak, an artefact;
-UNEVEN = 10.0  # so does one whose slopes at its ends differ by more than this: what hides there is too small to matter
 NOW, SLOPE, BEFORE, SLOPE_BEFORE = 0, 1, 2, 3  # of the four rows that a followed quantity has (layout.L_HEAT and so on)
 
 
@@ -79,27 +77,26 @@ def most_productive(cubic, time, h, turnaround):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def peak_between(followed, pending, h):  # type: ignore[no-untyped-def]
-    """Return (theta, value) of the highest point between the starts of the last two steps, h apart, for all lanes.
+def peak_between(followed, pending, h, highest):  # type: ignore[no-untyped-def]
+    """Return (mask, theta): the lanes in which the quantity seems to pass a peak above `highest` between the starts of the last two
+    steps, h apart, and where, on the cubic through both values with their slopes.
 
-    followed: address of the quantity's four rows; pending: mask of lanes that have a step before, the others give the value now.
-    On the cubic through both values with their slopes.
+    followed: address of the quantity's four rows; pending: mask of lanes that have a step before. Only a hint: where a step is far
+    longer than what drives the quantity, its slopes say nothing, so the value there has to be worked out.
     """
     q0, m0 = load(followed, BEFORE), load(followed, SLOPE_BEFORE) * h
     q1, m1 = load(followed, NOW), load(followed, SLOPE) * h
-    earlier = pending & (q0 > q1)
-    theta, highest = where(earlier, 0.0, 1.0), where(earlier, q0, q1)
-    inside = pending & (m0 > 0.0) & (m1 < 0.0)
-    if bits(inside) != 0:
+    early, late = q0 + m0 * (1.0 / 3.0), q1 - m1 * (1.0 / 3.0)
+    turns = pending & (m0 > 0.0) & (m1 < 0.0) & (where(early > late, early, late) > highest)  # no cubic rises above its Bezier points
+    theta = m0
+    if bits(turns) != 0:
         a, b = 2.0 * (q0 - q1) + m0 + m1, 3.0 * (q1 - q0) - 2.0 * m0 - m1
         inner = b * b - 3.0 * a * m0
         below = root(where(inner > 0.0, inner, 0.0)) - b
-        place = m0 / below
-        value = q0 + place * (m0 + place * (b + place * a))
-        resolved = (value - highest <= OVERSHOOT * size(value)) & (m0 + UNEVEN * m1 < 0.0) & (UNEVEN * m0 + m1 > 0.0)
-        inside = inside & (inner > 0.0) & (below > 0.0) & (place < 1.0) & (value > highest) & resolved
-        theta, highest = where(inside, place, theta), where(inside, value, highest)
-    return theta, highest
+        theta = m0 / below
+        value = q0 + theta * (m0 + theta * (b + theta * a))
+        turns = turns & (inner > 0.0) & (below > 0.0) & (theta < 1.0) & (value > highest) & (value > q0) & (value > q1)
+    return turns, theta
 
 
 @compiled

@@ -169,7 +169,7 @@ def _lay_out(head: list[int], structure: Structure) -> None:
     rows, reactions = structure.rows, len(structure.reactions)
     sizes = {
         at.W_LANE: at.LANE_ROWS, at.W_Y: rows, at.W_NEW: rows, at.W_F: rows, at.W_SLOPE: rows, at.W_K: 6 * rows, at.W_P: rows,
-        at.W_Q: rows, at.W_BEST: rows, at.W_SLOTS: head[at.N_SLOTS], at.W_N: species, at.W_C: species, at.W_CP: species,
+        at.W_Q: rows, at.W_BEFORE: rows, at.W_BEST: rows, at.W_SLOTS: head[at.N_SLOTS], at.W_N: species, at.W_C: species, at.W_CP: species,
         at.W_R: reactions, at.W_HEAT: reactions, at.W_REFERENCE: reactions, at.W_R_T: reactions, at.W_R_TIME: reactions,
         at.W_D: reactions * nz, at.W_CP_Z: nz, at.W_HEAT_Z: nz, at.W_REFERENCE_Z: nz, at.W_BLOCK: head[at.BLOCK_LENGTH],
     }  # fmt: skip

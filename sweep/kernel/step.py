@@ -71,8 +71,12 @@ def error_of_step(s, f, w, tolerance):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def dense_output(s, f, w):  # type: ignore[no-untyped-def]
-    """Write p and q of every state: y(theta) = (1 - theta) y0 + theta (y1 + (1 - theta) (p + theta q)) inside the step just made."""
+def dense_output(s, f, w, good):  # type: ignore[no-untyped-def]
+    """Write p and q of every state, and y0, of lanes whose step is good (mask); they stand until the next good step.
+
+    y(theta) = (1 - theta) y0 + theta (y1 + (1 - theta) (p + theta q)) inside the step.
+    """
+    y, before = row(s, w, at.W_Y), row(s, w, at.W_BEFORE)
     n, k, line = entry(s, at.N_ROWS), row(s, w, at.W_K), entry(s, at.AT_METHOD) + _DENSE
     ps, qs = row(s, w, at.W_P), row(s, w, at.W_Q)
     for i in range(n):
@@ -80,5 +84,6 @@ def dense_output(s, f, w):  # type: ignore[no-untyped-def]
         for j in range(STAGES - 1):
             kj = load(k, j * n + i)
             p, q = p + coefficient(f, line + j) * kj, q + coefficient(f, line + STAGES - 1 + j) * kj
-        store(ps, i, p)
-        store(qs, i, q)
+        store(ps, i, where(good, p, load(ps, i)))
+        store(qs, i, where(good, q, load(qs, i)))
+        store(before, i, where(good, load(y, i), load(before, i)))
