@@ -18,8 +18,19 @@ def accepted(lanes, wrong, T_new):  # type: ignore[no-untyped-def]
 
 @compiled
 def next_step(lanes, wrong, fine, h):  # type: ignore[no-untyped-def]
-    """Return the step (s) that the error suggests, of a method whose estimate is of order 4; never longer just after a rejection."""
-    factor = SAFETY / root(root(where(wrong > 1e-8, wrong, 1e-8)))
+    """Return the step (s) that the error suggests, of a method whose estimate is of order 4; never longer just after a rejection.
+
+    Where errors grow from step to step, as on the way into a runaway, the next step is shortened ahead of its rejection: Gustafsson's
+    predictive controller (ACM TOMS 20 (1994) 496; Hairer and Wanner, Solving ODEs II, IV.8; from memory).
+    """
+    wrong = where(wrong > 1e-8, wrong, 1e-8)
+    factor = SAFETY / root(root(wrong))
+    before, h_before = load(lanes, at.L_WRONG_BEFORE), load(lanes, at.L_GOOD_STEP)
+    ahead = (SAFETY * h / where(h_before > 0.0, h_before, 1.0)) * root(root(before / (wrong * wrong)))
+    known = fine & (h_before > 0.0) & (before > 0.0)
+    factor = where(known & (ahead < factor), ahead, factor)
+    store(lanes, at.L_WRONG_BEFORE, where(fine, where(wrong > 1e-2, wrong, 1e-2), before))
+    store(lanes, at.L_GOOD_STEP, where(fine, h, h_before))
     factor = where(factor > GROW, GROW, factor)
     factor = where(factor >= SHRINK, factor, SHRINK)
     shorter = where(factor > 0.9, 0.9, factor)

@@ -61,4 +61,5 @@ L_DUTY, L_DUTY_SLOPE, L_DUTY_BEFORE, L_DUTY_SLOPE_BEFORE = range(40, 44)
 L_RATE, L_RATE_SLOPE, L_RATE_BEFORE, L_RATE_SLOPE_BEFORE = range(44, 48)
 L_HEAT_NOW, L_DUTY_NOW, L_RATE_NOW = 48, 49, 50  # as last evaluated: after the stages, near the step's end
 L_THETA = 51  # a fraction of the step, handed to or from scalar code
-LANE_ROWS = 52
+L_WRONG_BEFORE, L_GOOD_STEP = 52, 53  # error and length of the last good step
+LANE_ROWS = 54
