@@ -54,6 +54,7 @@ def begin_segment(s, w, lane, blocks, point, segments):  # type: ignore[no-untyp
         keep(place, at.L_SEGMENT_END, end)
         keep(place, at.L_STEP, (end - time) * _FIRST_STEP)
         keep(place, at.L_PENDING, 0.0)
+        keep(place, at.L_GOOD_STEP, 0.0)
         return 0
     return 1
 

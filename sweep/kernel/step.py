@@ -13,7 +13,7 @@ GAMMA_INVERSE = 1.0 / GAMMA
 _TIME, _SLOPE, _A, _C, _STAGE = 0, 1, 2, 7, 12  # of a stage's line in the tableau, and its length
 _DENSE = STAGES * _STAGE
 _KELVIN_INVERSE = 0.01  # 1/K; a temperature's error is measured against 100 K
-_OPENING = 0.1  # so is the controller's integral, by what it opens
+_OPENING = 1.0  # the controller's integral counts by what it opens
 _LARGEST = 1e300
 
 
