@@ -9,10 +9,10 @@ import numpy as np
 
 from sweep.plant import adiabatic, moments, states
 from sweep.plant.criticality import classify
-from sweep.plant.moments import Batch
 from sweep.plant.onward import states_at
 from sweep.plant.rates import closed_form_tmr
 from sweep.plant.recipe import Charged
+from sweep.plant.samples import Batch
 from sweep.plant.td24 import find_td24
 from sweep.plant.values import Floats
 from sweep.study.model import Study

@@ -5,7 +5,6 @@ N points, K times, R rows of state, I species.
 """
 
 from collections.abc import Callable
-from dataclasses import dataclass
 
 import numpy as np
 
@@ -15,33 +14,14 @@ from sweep.plant.adiabatic import feeding_time, purposes
 from sweep.plant.chemistry import R
 from sweep.plant.onward import states_at
 from sweep.plant.recipe import Charged
+from sweep.plant.samples import FINE, Batch
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
 COLDEST = 100.0  # K; an endothermic completion is estimated no colder
-FINE = 33  # times looked at inside a bracket
 
 
 Estimate = Callable[[np.ndarray, Floats, Floats], Floats]  # points (M,), times (M, K), states (M, K, R) -> (M, K)
-
-
-@dataclass(frozen=True)
-class Batch:
-    """A batch as sampled: times (N, K) s ascending, states (N, K, R), inside (N, K): up to the batch's end and marched."""
-
-    times: Floats
-    states: Floats
-    inside: np.ndarray
-
-
-def sampled(plant: Charged, times: Floats, samples: Floats, end: Floats, at_end: Floats) -> Batch:
-    """Return the samples with the batch's end among them."""
-    times = np.concatenate([times, end[:, None]], axis=1)
-    whole = np.concatenate([samples, at_end[:, None, :]], axis=1)
-    order = np.argsort(times, axis=1, kind="stable")
-    times = np.take_along_axis(times, order, axis=1)
-    whole = np.take_along_axis(whole, order[:, :, None], axis=1)
-    return Batch(times, whole, (times <= end[:, None]) & np.isfinite(whole).all(axis=2))
 
 
 def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> tuple[Floats, Floats, Floats]:

@@ -7,17 +7,16 @@ import pandas as pd
 
 from sweep.base.status import DONE, OUTCOMES, UNBALANCED
 from sweep.kernel import layout as at
-from sweep.kernel.engine import Marched, march
+from sweep.kernel.engine import Marched
 from sweep.plant import states
 from sweep.plant.failure import failure_figures
-from sweep.plant.moments import Batch, refine, sampled
 from sweep.plant.recipe import TOO_HOT, Charged, charge_plant, has_heat_capacities
+from sweep.plant.samples import Batch, largest_accumulation, march_batches
 from sweep.plant.sense import blank, sensible_values
 from sweep.plant.target import CAUSES, productivity_unit, target_columns, why_not
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
-ACCUMULATION_TIMES = 65  # evenly over the march, beside the recipe's own boundaries
 _TRACE = 1e-12  # of all that is brought in; less of a product than this is none
 BALANCE = 1e-3  # an energy balance worse than this is a failed point
 
@@ -72,26 +71,16 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     """Return inputs and responses of each point, same index. points: a column per variable or dotted path, SI."""
     values = sensible_values(study, points)
     plant = charge_plant(study, values)
-    times = _sample_times(plant)
     tolerance = float(study.values.get("accuracy.relative", 1e-6))
-    marched = march(plant.program, plant.blocks, plant.starts, plant.constants, times, tolerance)
-    found = _respond(study, plant, marched, times, tolerance)
+    marched, batch = march_batches(plant, tolerance)
+    found = _respond(study, plant, marched, batch, tolerance)
     columns = {r.column: pd.Series(found[r.column], index=points.index, dtype=_DTYPES[r.kind]) for r in responses(study)}
     table = blank(values, pd.DataFrame(columns).set_axis(points.index))
     return pd.concat([points, table], axis=1)
 
 
-def _sample_times(plant: Charged) -> Floats:
-    """Return when the accumulation is looked at, (N, K) s, ascending."""
-    final = plant.constants[:, at.T_FINAL]
-    even = np.linspace(0.0, 1.0, ACCUMULATION_TIMES) * final[:, None]
-    return np.sort(np.concatenate([even, plant.boundaries], axis=1), axis=1)
-
-
-def _respond(study: Study, plant: Charged, marched: Marched, times: Floats, tolerance: float) -> dict[str, Floats | list[str]]:
-    out, values = marched.out, plant.values
-    end = np.where(np.isnan(out[:, at.OUT_END_TIME]), out[:, at.OUT_TIME], out[:, at.OUT_END_TIME])
-    ended = np.where(np.isnan(out[:, [at.OUT_END_TIME]]), marched.at_last, marched.at_end)
+def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, tolerance: float) -> dict[str, Floats | list[str]]:
+    out, values, end, ended = marched.out, plant.values, batch.end, batch.at_end
     moles = states.amounts(plant, ended, end)
     code = out[:, at.OUT_STATUS].astype(int)
     reasons: list[list[str]] = [[] for _ in range(values.count)]
@@ -113,8 +102,7 @@ def _respond(study: Study, plant: Charged, marched: Marched, times: Floats, tole
     found.update(target_columns(study, plant, marched, end, moles))
     _by_species(study, plant, moles, found)
     _missing(found, reasons, why_not(study, plant, marched), heated, full)
-    batch = sampled(plant, times, marched.samples, end, ended)
-    found["accumulation"] = _accumulation(study, plant, batch, tolerance) if heated and study.reactions else nothing
+    found["accumulation"] = largest_accumulation(study, plant, batch, tolerance) if heated and study.reactions else nothing
     if study.asks_failure:
         columns, why = failure_figures(study, plant, batch, out[:, at.OUT_T_MAX], tolerance)
         found.update(columns)
@@ -126,23 +114,6 @@ def _respond(study: Study, plant: Charged, marched: Marched, times: Floats, tole
         for c, t, r in zip(code, out[:, at.OUT_TIME], reasons, strict=True)
     ]
     return found
-
-
-def _accumulation(study: Study, plant: Charged, batch: Batch, tolerance: float) -> Floats:
-    """Return the largest accumulation up to the batch's end, (N,): the highest sample, refined between its neighbours."""
-
-    def share(rows: np.ndarray, times: Floats, state: Floats) -> Floats:
-        return states.accumulation(study, plant, rows, np.nan_to_num(state, nan=300.0), times)
-
-    rows = np.arange(plant.values.count)
-    value = np.where(batch.inside, share(rows, batch.times, batch.states), -np.inf)
-    worst = value.argmax(axis=1)
-    highest = value[rows, worst]
-    inner = np.flatnonzero((worst > 0) & (worst < batch.inside.sum(axis=1) - 1) & np.isfinite(highest))
-    if inner.size:
-        times, state = refine(plant, batch, share, inner, worst[inner], tolerance)
-        highest[inner] = np.fmax(highest[inner], np.nanmax(np.where(np.isfinite(state[:, :, 0]), share(inner, times, state), -np.inf), axis=1))
-    return np.where(np.isfinite(highest), highest, np.nan)
 
 
 def _balance(plant: Charged, marched: Marched, ended: Floats, moles: Floats) -> Floats:

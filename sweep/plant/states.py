@@ -61,7 +61,7 @@ def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) ->
     scale = 1e-12 * left.sum(axis=-1)
     amounts = [np.ascontiguousarray(left[..., i]) for i in range(left.shape[-1])]
     moved = np.ones(left.shape[:-1], dtype=bool)
-    for _ in range(4 * ranks.size + 1):
+    for _ in range(4 * ranks.size + 1 if _feeds_back(ranks, nu) else 1):
         moving, moved = moved, np.zeros(left.shape[:-1], dtype=bool)
         for j in ranks:
             used = np.flatnonzero(nu[j] < 0.0)
@@ -78,6 +78,11 @@ def _in_order(ranks: np.ndarray, nu: Floats, left: Floats, given_off: Floats) ->
         if not moved.any():
             break
     return heat, np.stack(amounts, axis=-1)
+
+
+def _feeds_back(ranks: np.ndarray, nu: Floats) -> bool:
+    """Tell whether a reaction makes a reactant of one that ran before it, or of itself: then one pass is not enough."""
+    return any(((nu[after] > 0.0) & (nu[before] < 0.0)).any() for k, after in enumerate(ranks) for before in ranks[: k + 1])
 
 
 def accumulation(study: Study, plant: Charged, rows: np.ndarray, state: Floats, time: Floats) -> Floats:
