@@ -55,7 +55,7 @@ def failure_times(study: Study, point: Mapping[str, float] | None = None, times:
     state = march(plant.program, plant.blocks, plant.starts, plant.constants, ascending, tolerance).samples
     good = np.isfinite(state[0]).all(axis=1) & (ascending[0] <= end * (1.0 + 1e-12))
     rows = np.zeros(int(good.sum()), dtype=int)
-    marched = march_moments(study, plant, rows, ascending[0][good], state[0][good], tolerance, all_tmr=True)
+    marched = march_moments(study, plant, rows, ascending[0][good], state[0][good], tolerance)
     nz = plant.program.structure.sources.shape[0]
     share = states.accumulation(study, plant, np.zeros(1, dtype=int), np.nan_to_num(state, nan=300.0), ascending)[0]
     columns = {"time_s": ascending[0], "temperature_K": state[0, :, nz]}

@@ -19,6 +19,7 @@ from sweep.study.model import Study
 
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
 WORTH = 0.5  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
+NONE = -1.0  # no moment is: near the worst one the closed form alone tells which is worse
 WORTH_AUTOCATALYTIC = 3.0  # likewise where a decomposition speeds itself up and the estimate may mislead
 MEANINGLESS = 1e15  # s; a closed form beyond this says that nothing gives off heat, not how long it takes
 CLOSE = 0.0025  # of the batch time; the marches left and right of the worst one are brought at least this near
@@ -48,11 +49,12 @@ class Moments:
 
 
 def march_moments(
-    study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, all_tmr: bool = False
+    study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, tolerance: float, worth: float = np.inf
 ) -> Moments:
-    """March failures at times (M,) from states (M, R): the synthesis, then the decomposition where it may be among the worst.
+    """March failures at times (M,) from states (M, R): the synthesis, then the decomposition of moments that may be among the worst.
 
-    all_tmr: march every decomposition.
+    worth: of the closed form's logarithm; a moment less urgent by more than this than the most urgent one of its point is not marched to
+    its maximum rate. Infinite: all are; negative: none is.
     """
     failed = adiabatic.fail(study, plant, rows, time, state)
     synthesis = adiabatic.run_synthesis(study, plant, failed, tolerance)
@@ -64,8 +66,7 @@ def march_moments(
         urgency = np.where(ok, _urgency(study, plant, rows, block, synthesis.state), -np.inf)
     worst = np.full(plant.values.count, -np.inf)
     np.maximum.at(worst, rows, urgency)
-    worth = WORTH_AUTOCATALYTIC if adiabatic.speeds_itself_up(study) else WORTH
-    chosen = ok & decomposes & (all_tmr | ~(urgency < worst[rows] - worth))
+    chosen = ok & decomposes & ~(urgency < worst[rows] - worth)
     if chosen.any():
         horizon = plant.values.get("failure.horizon")[rows[chosen]]
         run = adiabatic.run_decomposition(study, plant, rows[chosen], block[chosen], synthesis.state[chosen], horizon, tolerance)
@@ -86,34 +87,35 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     The search itself may be rougher: it decides only which moments are the worst, and those are marched again.
     """
     rows, rough = np.arange(batch.times.shape[0]), min(10.0 * tolerance, 1e-5)
+    coarse, fine = (WORTH_AUTOCATALYTIC,) * 2 if adiabatic.speeds_itself_up(study) else (WORTH, NONE)
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
     tops = [e.argmax(axis=1) for e in found]
     pairs = _coarse(batch, found, tops)
-    marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], rough)
+    marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], rough, coarse)
     parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, top, tolerance) for which, top in enumerate(tops)]
     time, state = np.concatenate([p[0] for p in parts], axis=1), np.concatenate([p[1] for p in parts], axis=1)
-    marched = marched.joined(_march_grid(study, plant, rows, time, state, rough))
+    marched = marched.joined(_march_grid(study, plant, rows, time, state, rough, fine))
     for which in range(len(found)):
-        marched = _narrowed(study, plant, batch, marched, which, rough)
+        marched = _narrowed(study, plant, batch, marched, which, rough, fine)
     return _again(study, plant, marched, tolerance)
 
 
 def _again(study: Study, plant: Charged, marched: Moments, tolerance: float) -> Moments:
     """March the hottest and the most urgent moments of each point again, at full tolerance."""
     count = plant.values.count
-    hottest, urgent = _best(marched, _score(marched, 0), count)[0], _most_urgent(marched, count)
+    hottest, urgent = (_best(marched, _score(marched, which), count)[0] for which in range(2))
     places = np.unique(np.concatenate([hottest[hottest >= 0], urgent[urgent >= 0]]))
-    return march_moments(study, plant, marched.rows[places], marched.time[places], marched.begin[places], tolerance, True)
+    return march_moments(study, plant, marched.rows[places], marched.time[places], marched.begin[places], tolerance)
 
 
 def _march_grid(
-    study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, rough: float, all_tmr: bool = False
+    study: Study, plant: Charged, rows: np.ndarray, time: Floats, state: Floats, rough: float, worth: float
 ) -> Moments:
     """March failures at times (M, K) from states (M, K, R) of points `rows` (M,), each time once."""
     every, flat = np.repeat(rows, time.shape[1]), state.reshape(-1, state.shape[2])
     _, first = np.unique(np.stack([every, time.ravel()]), axis=1, return_index=True)
     usable = first[np.isfinite(flat[first]).all(axis=1)]
-    return march_moments(study, plant, every[usable], time.ravel()[usable], flat[usable], rough, all_tmr)
+    return march_moments(study, plant, every[usable], time.ravel()[usable], flat[usable], rough, worth)
 
 
 def _estimate(study: Study, plant: Charged, which: int) -> moments.Estimate:
@@ -135,11 +137,19 @@ def _coarse(batch: Batch, found: list[Floats], tops: list[np.ndarray]) -> np.nda
 
 
 def _score(marched: Moments, which: int) -> Floats:
-    """Return what is highest at the worst moment: MTSR (K), or minus ln TMRad; -inf where there is none."""
+    """Return what is highest at the worst moment: MTSR (K), or minus ln TMRad; -inf where there is none.
+
+    Where a decomposition was not marched, its closed form stands in, corrected as at the point's shortest one that was.
+    """
     if which == 0:
         return np.where(marched.ok, marched.mtsr, -np.inf)
-    with np.errstate(divide="ignore"):
-        return np.where(marched.ok & ~marched.censored, -np.log(np.maximum(marched.tmr, 1e-3)), -np.inf)
+    known = marched.ok & np.isfinite(marched.tmr) & ~marched.censored
+    exact = -np.log(np.maximum(np.where(known, marched.tmr, 1.0), 1e-3))
+    count = int(marched.rows.max(initial=0)) + 1
+    place = _best(marched, np.where(known, exact, -np.inf), count)[0]
+    shift, some = np.zeros(count), place >= 0
+    shift[some] = marched.urgency[place[some]] - exact[place[some]]
+    return np.where(known, exact, np.where(marched.ok, marched.urgency - shift[marched.rows], -np.inf))
 
 
 def _best(marched: Moments, score: Floats, count: int) -> tuple[np.ndarray, Floats]:
@@ -152,7 +162,7 @@ def _best(marched: Moments, score: Floats, count: int) -> tuple[np.ndarray, Floa
     return np.where(np.isfinite(best), place, -1), best
 
 
-def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, rough: float) -> Moments:
+def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, rough: float, worth: float) -> Moments:
     """March on around each point's worst moment until its neighbours are close, then at the top of the parabola through the three."""
     count = plant.values.count
     end = np.where(batch.inside, batch.times, 0.0).max(axis=1)
@@ -173,7 +183,7 @@ def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, whic
             rows, middle, low, high = rows[inner], middle[inner], low[inner], high[inner]
             time = _vertex(marched, score, rows, low, middle, high, best)[:, None]
         if rows.size:
-            marched = marched.joined(_march_grid(study, plant, rows, time, _states(plant, batch, rows, time, rough), rough, which == 1))
+            marched = marched.joined(_march_grid(study, plant, rows, time, _states(plant, batch, rows, time, rough), rough, worth))
     return marched
 
 

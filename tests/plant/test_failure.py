@@ -119,3 +119,23 @@ def test_closed_form_without_heat_is_null():
     row = _row(SMALL.replace('"-150 kJ/mol"', '"150 kJ/mol"'))
     assert pd.isna(row["tmr_ad_closed_form_s"])
     assert row["tmr_ad_censored"]
+
+
+AUTOCATALYTIC = (
+    SMALL.replace('equation = "R -> S"', 'equation = "R + S -> S + S"')
+    .replace('"1e-5 1/s", at = "120 degC", activation_energy = "120', '"2e-5 L/mol/s", at = "80 degC", activation_energy = "90')
+    .replace('concentration = { A = "1.5 mol/L" }', 'concentration = { A = "1.5 mol/L", S = "1 mmol/L" }')
+)
+
+
+def test_autocatalytic_decomposition_is_marched_and_its_closed_form_warned_of():
+    """CHECKS T11: the closed form is many times too long for A + B -> 2 B with little B."""
+    from sweep.analysis.failure import fail_cooling
+
+    study = read_text(AUTOCATALYTIC)
+    row = evaluate(study, pd.DataFrame(index=[0])).iloc[0]
+    scan = failure_times(study, {}, np.linspace(0.0, 21_600.0, 401))
+    assert scan["tmr_ad_s"].min() * 1.01 >= row["tmr_ad_s"] >= scan["tmr_ad_s"].min() * 0.99
+    assert row["tmr_ad_closed_form_s"] > 5.0 * row["tmr_ad_s"]
+    cautions = fail_cooling(study, row).summary()["cautions"]
+    assert "times longer than the march" in cautions[0]
