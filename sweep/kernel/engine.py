@@ -5,9 +5,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from sweep.kernel import layout as at
-from sweep.kernel.march import march as _march
+from sweep.kernel.layout import LANES, STRIDE
 from sweep.kernel.program import Floats, Program
-from sweep.kernel.vector import LANES, STRIDE
 
 MOST_STEPS = 20_000
 _GUARD = -7.77e77
@@ -63,6 +62,8 @@ def march(
     blocks: (N, S, block), starts: (N, R), constants: (N, 8), times: (N, K) ascending (s), NaN at the end where fewer are wanted;
     tolerance: relative error allowed per step. Raises ValueError where a shape does not fit the program.
     """
+    from sweep.kernel.march import march as compiled_march  # loads numba and the compiled kernel, which reading a study does not need
+
     n, segments = blocks.shape[:2]
     rows = program.structure.rows
     if blocks.shape != (n, segments, program.block) or starts.shape != (n, rows) or constants.shape != (n, at.N_CONSTANTS):
@@ -76,7 +77,7 @@ def march(
     scratch = Scratch(program)
     whose = np.zeros(LANES, dtype=np.int64)
     if n:
-        _march(
+        compiled_march(
             program.integers.ctypes.data, program.floats.ctypes.data, blocks.ctypes.data, starts.ctypes.data, constants.ctypes.data,
             n, segments, times.ctypes.data, times.shape[1], out.ctypes.data, out.shape[1], samples.ctypes.data, scratch.address,
             whose.ctypes.data, float(tolerance), most_steps,

@@ -7,9 +7,10 @@ from sweep.kernel import layout as at
 from sweep.kernel.balance import right_side
 from sweep.kernel.control import LANDED
 from sweep.kernel.lane import cubic_of_state, cubic_of_sum, end_batch, note_crossing, take_samples
+from sweep.kernel.layout import STRIDE
 from sweep.kernel.memory import coefficient, entry, keep, load, of_lane, row, store
 from sweep.kernel.peaks import carry_over, cubic_peak, most_productive, on_cubic, peak_between
-from sweep.kernel.vector import STRIDE, bits, compiled, lowest, size, spread, where
+from sweep.kernel.vector import bits, compiled, lowest, size, spread, where
 
 CLOSE, CLOSER = 1e-12, 1e-14  # relative; times nearer than this are the same
 

@@ -4,6 +4,9 @@ A study is data to the kernel. Two tables of equal length hold it, one of intege
 coefficient share a position. Names, units and shapes stand here once; the kernel and the code that fills the tables use them.
 """
 
+LANES = 16  # batches that are marched side by side
+STRIDE = 8 * LANES  # bytes of one vector in memory
+
 # header of the integer table --------------------------------------------------------------------------------------------
 N_SPECIES, N_STATES, N_REACTIONS, N_ROWS = 0, 1, 2, 3  # species, chemical states z, reactions, all states
 # rows of the state after z: temperature, jacket, controller integral, energy over the boundary; always present, in this order

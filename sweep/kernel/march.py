@@ -8,10 +8,11 @@ from sweep.kernel.control import accepted, move_on, next_step
 from sweep.kernel.events import follow, look_back
 from sweep.kernel.jacobian import start_of_step
 from sweep.kernel.lane import begin_point, leave, settle
+from sweep.kernel.layout import LANES
 from sweep.kernel.linear import factorise
 from sweep.kernel.memory import entry, integer, load, row, store
 from sweep.kernel.step import GAMMA_INVERSE, dense_output, error_of_step, stages
-from sweep.kernel.vector import LANES, bits, compiled_and_kept, lowest, mask_of, where
+from sweep.kernel.vector import bits, compiled_and_kept, lowest, mask_of, where
 
 
 @compiled_and_kept

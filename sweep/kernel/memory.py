@@ -11,7 +11,8 @@ from typing import Any
 from llvmlite import ir
 from numba.core import types
 
-from sweep.kernel.vector import DOUBLE, DOUBLES, LONG, STRIDE, VectorType, intrinsic, vector, widened
+from sweep.kernel.layout import STRIDE
+from sweep.kernel.vector import DOUBLE, DOUBLES, LONG, VectorType, intrinsic, vector, widened
 
 _VECTOR_ALIGNMENT = 64
 

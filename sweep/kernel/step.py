@@ -4,10 +4,11 @@ import math
 
 from sweep.kernel import layout as at
 from sweep.kernel.balance import right_side
+from sweep.kernel.layout import STRIDE
 from sweep.kernel.linear import solve
 from sweep.kernel.memory import coefficient, entry, load, row, store
 from sweep.kernel.method import GAMMA, STAGES
-from sweep.kernel.vector import STRIDE, compiled, size, spread, where
+from sweep.kernel.vector import compiled, size, spread, where
 
 GAMMA_INVERSE = 1.0 / GAMMA
 _TIME, _SLOPE, _A, _C, _STAGE = 0, 1, 2, 7, 12  # of a stage's line in the tableau, and its length

@@ -17,11 +17,10 @@ from numba.extending import intrinsic as _declared
 from numba.extending import lower_builtin, models, register_model
 
 from sweep.kernel.cache import FOLDER
+from sweep.kernel.layout import LANES
 
 intrinsic: Any = _declared  # its type counts the typing context as an argument that callers would have to give
 
-LANES = 16
-STRIDE = 8 * LANES  # bytes of one vector in memory
 
 DOUBLE = ir.DoubleType()
 LONG = ir.IntType(64)

@@ -8,10 +8,11 @@ from sweep.kernel.engine import Scratch
 from sweep.kernel.functions import exp, log
 from sweep.kernel.jacobian import start_of_step
 from sweep.kernel.lane import references
+from sweep.kernel.layout import LANES, STRIDE
 from sweep.kernel.linear import factorise, solve
 from sweep.kernel.memory import load, row, store
 from sweep.kernel.program import Program
-from sweep.kernel.vector import LANES, STRIDE, compiled_and_kept
+from sweep.kernel.vector import compiled_and_kept
 
 BALANCES, SOLVE, FUNCTIONS = range(3)
 

@@ -5,7 +5,7 @@ import pytest
 
 from sweep.kernel import layout as at
 from sweep.kernel import sparse
-from sweep.kernel.vector import LANES
+from sweep.kernel.layout import LANES
 from tests import naive
 from tests.kernel import cases, probe
 

@@ -6,8 +6,8 @@ import pytest
 from sweep.base.status import DONE, RUNAWAY, STEP_TOO_SMALL, TOO_MANY_STEPS
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched, march
+from sweep.kernel.layout import LANES
 from sweep.kernel.program import Program
-from sweep.kernel.vector import LANES
 from tests.kernel import cases
 
 END = 4000.0
