@@ -114,7 +114,6 @@ def charge_plant(study: Study, values: Values) -> Charged:
     """Return the arrays with which the kernel marches these points."""
     structure = chemistry.structure_of(study)
     program = compile_tables(structure)
-    head = program.integers
     brought = brought_in(study, values)
     end, final = final_time(study, values, brought.last_feed())
     bounds = _boundaries(study, values, brought, end, final)
@@ -122,43 +121,54 @@ def charge_plant(study: Study, values: Values) -> Charged:
     blocks = np.zeros((n, segments, program.block))
     extents = chemistry.carries_extents(chemistry.stoichiometry(study)) or not study.reactions
     charge_T = values.get("recipe.charge.temperature", 298.15)
-    was = np.full(n, -1)
-    cp = heats = np.zeros(0)
-    begin = np.zeros(n)
+    cp, heats = _chemistry(study, values, program, blocks)
+    was, begin = np.full(n, -1), np.zeros(n)
     for k in range(segments):
         block, stop = blocks[:, k, :], bounds[:, k]
         here, kind = _at(study, values, begin)
-        cp = chemistry.heat_capacities(study, here)
-        heats = chemistry.heats(study, here, cp)
-        share, middle = brought.share(begin), 0.5 * (begin + stop)
-        on = (brought.start <= middle[:, None]) & (middle[:, None] < brought.end)
-        rate = np.where(on, 1.0 / (brought.end - brought.start), 0.0)
         block[:, at.T_START], block[:, at.T_END] = begin, stop
-        block[:, at.VOLUME] = brought.volume + (brought.feed_volume * share).sum(axis=1)
-        block[:, at.VOLUME_RATE] = (brought.feed_volume * rate).sum(axis=1)
+        _contents(block, program, brought, cp, begin, stop, extents)
         _cooling(block, here, kind, k == 0, was, charge_T)
-        block[:, at.WALL] = here.get("vessel.heat_capacity")
         block[:, at.STIRRER] = here.get("vessel.stirrer_power")
         block[:, at.LOSS], block[:, at.AMBIENT] = here.get("vessel.heat_loss.UA"), here.get("vessel.heat_loss.ambient", 293.15)
-        _feeds(block, brought, cp, rate)
-        block[:, head[at.BLOCK_FEED] : head[at.BLOCK_BASE]] = np.einsum("nf,nfi->ni", rate, brought.fed)
-        fed = np.einsum("nf,nfi->ni", share, brought.fed)
-        block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (brought.charged if extents else 0.0)
-        terms = chemistry.rate_terms(study, here, heats, structure.rate_terms)
-        block[:, head[at.BLOCK_RATE] : head[at.BLOCK_HEAT]] = _flat(terms)
-        block[:, head[at.BLOCK_HEAT] : head[at.BLOCK_CP]] = _flat(heats[:, :, : structure.heat_terms])
-        block[:, head[at.BLOCK_CP] : head[at.BLOCK_LENGTH]] = _flat(cp[:, :, : structure.cp_terms])
-        if not has_heat_capacities(study, values):
-            block[:, at.WALL] = np.where(block[:, at.WALL] > 0.0, block[:, at.WALL], 1.0)
         was, begin = kind, stop
     starts = np.zeros((n, structure.rows))
     nz = structure.sources.shape[0]
     if not extents:
         starts[:, :nz] = brought.charged
-    starts[:, nz] = charge_T
-    starts[:, nz + 1] = charge_T
+    starts[:, nz] = starts[:, nz + 1] = charge_T
     constants = _constants(study, values, brought, end, final, starts, structure.target)
     return Charged(study, values, program, brought, blocks, starts, constants, cp, heats, extents, bounds)
+
+
+def _chemistry(study: Study, values: Values, program: Program, blocks: Floats) -> tuple[Floats, Floats]:
+    """Fill in what no event changes: rate terms, heats, heat capacities, wall; return heat capacities (N, I, 4) and heats (N, J, 5)."""
+    head, structure = program.integers, program.structure
+    cp = chemistry.heat_capacities(study, values)
+    heats = chemistry.heats(study, values, cp)
+    terms = chemistry.rate_terms(study, values, heats, structure.rate_terms)
+    parts = [_flat(terms), _flat(heats[:, :, : structure.heat_terms]), _flat(cp[:, :, : structure.cp_terms])]
+    blocks[:, :, head[at.BLOCK_RATE] : head[at.BLOCK_LENGTH]] = np.concatenate(parts, axis=1)[:, None, :]
+    wall = values.get("vessel.heat_capacity")
+    if not has_heat_capacities(study, values):
+        wall = np.where(wall > 0.0, wall, 1.0)
+    blocks[:, :, at.WALL] = wall[:, None]
+    return cp, heats
+
+
+def _contents(block: Floats, program: Program, brought: Brought, cp: Floats, begin: Floats, stop: Floats, extents: bool) -> None:
+    """Fill in volume, amounts and feeds of one segment, from `begin` to `stop` (N,) s."""
+    head = program.integers
+    share, middle = brought.share(begin), 0.5 * (begin + stop)
+    on = (brought.start <= middle[:, None]) & (middle[:, None] < brought.end)
+    rate = np.where(on, 1.0 / (brought.end - brought.start), 0.0)
+    block[:, at.VOLUME] = brought.volume + (brought.feed_volume * share).sum(axis=1)
+    block[:, at.VOLUME_RATE] = (brought.feed_volume * rate).sum(axis=1)
+    fed = np.einsum("nf,nfi->ni", share, brought.fed)
+    block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (brought.charged if extents else 0.0)
+    if on.any():
+        block[:, head[at.BLOCK_FEED] : head[at.BLOCK_BASE]] = np.einsum("nf,nfi->ni", rate, brought.fed)
+        _feeds(block, brought, cp, rate)
 
 
 def _flat(table: Floats) -> Floats:
