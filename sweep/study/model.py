@@ -207,7 +207,7 @@ class Study:
     def quantity(self, name: str, text: str) -> float:
         """Return a quantity of a variable or path in SI; SweepError where the text is none of its dimension."""
         from sweep.base.units import UnitFault
-        from sweep.study.reader import converted
+        from sweep.study.amount import converted
 
         path = self.paths_of(name)[0]
         try:

@@ -5,8 +5,9 @@ from pathlib import Path
 from typing import Any
 
 from sweep.base.units import UnitFault, kind_of, unit_of
+from sweep.study.amount import converted
 from sweep.study.model import LATEST, BatchTimeSettings, FailureSettings, Limit, Plan, Species, Target, Variable, WindowSettings, differs
-from sweep.study.reader import Reader, converted
+from sweep.study.reader import Reader
 
 _PLAIN = {
     "conversion": ("", "dimensionless"), "accumulation": ("", "dimensionless"), "criticality_class": ("", "dimensionless"),

@@ -1,0 +1,66 @@
+"""What cooling failure costs beside the plain sweep, and what a second worker brings (`-m benchmark`; a short form in the normal run)."""
+
+import time
+from collections.abc import Callable
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+import pytest
+
+from sweep.plan import points
+from sweep.plant import evaluate
+from sweep.runner import simulate
+from sweep.study import read_study, read_text
+from sweep.study.model import Study
+
+DEMO = Path(__file__).parents[2] / "studies" / "acylation.toml"
+
+
+def _studies() -> tuple[Study, Study]:
+    """Return the demo without its failure figures, and with MTSR and TMRad but with T_D24 given (its search stands apart)."""
+    study = read_study(DEMO)
+    return study.without_failure(), read_text(study.text.replace("[failure]", '[failure]\ntd24 = "73 degC"'))
+
+
+def _seconds(work: Callable[[], object]) -> float:
+    begun = time.perf_counter()
+    work()
+    return time.perf_counter() - begun
+
+
+def _ratio(first: Callable[[], object], second: Callable[[], object], rounds: int) -> float:
+    """Return the median of the times' ratio, taken in pairs, both warm."""
+    first()
+    second()
+    return float(np.median([_seconds(first) / _seconds(second) for _ in range(rounds)]))
+
+
+def _drawn(study: Study, count: int) -> pd.DataFrame:
+    return points(study).sample(count, random_state=3)
+
+
+def test_cooling_failure_costs_no_order_of_magnitude_more_than_it_may():
+    plain, failing = _studies()
+    table = _drawn(plain, 256)
+    assert 40.0 > _ratio(lambda: evaluate(failing, table), lambda: evaluate(plain, table), 3)
+
+
+@pytest.mark.benchmark
+def test_cooling_failure_costs_at_most_twelve_plain_sweeps(capsys):
+    plain, failing = _studies()
+    table = _drawn(plain, 1024)
+    ratio = _ratio(lambda: evaluate(failing, table), lambda: evaluate(plain, table), 7)
+    with capsys.disabled():
+        print(f"\nMTSR and TMRad over the sweep: {ratio:.1f} plain sweeps")
+    assert 12.0 >= ratio
+
+
+@pytest.mark.benchmark
+def test_two_workers_are_nearly_twice_one(capsys):
+    plain, _ = _studies()
+    table = pd.concat([points(plain)] * 16, ignore_index=True)
+    ratio = _ratio(lambda: simulate(plain, table, workers=1), lambda: simulate(plain, table, workers=2), 5)
+    with capsys.disabled():
+        print(f"\ntwo warm workers: {ratio:.2f} times one, {len(table):,} points")
+    assert 1.7 <= ratio
