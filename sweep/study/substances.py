@@ -110,9 +110,10 @@ def _reaction(reader: Reader, name: str, table: dict[str, Any], names: set[str])
         reader.fault(f"{path}.orders", repr(orders), "{ species = order, ... }", "an order is a number, zero or above")
         return None
     orders = {s: float(a) for s, a in orders.items()}
-    if not (_known(reader, f"{path}.equation", {**left, **right}, names) and _known(reader, f"{path}.orders", orders, names)):
-        return None
-    _balanced(reader, f"{path}.equation", left, right, str(text))
+    understood = _known(reader, f"{path}.equation", {**left, **right}, names)
+    understood &= "orders" not in table or _known(reader, f"{path}.orders", orders, names)
+    if understood:
+        _balanced(reader, f"{path}.equation", left, right, str(text))
     purpose = reader.choice(table, path, "purpose", ("synthesis", "decomposition"), "synthesis")
     reaction = Reaction(
         name,
@@ -125,8 +126,8 @@ def _reaction(reader: Reader, name: str, table: dict[str, Any], names: set[str])
         str(table["source"]) if "source" in table else None,
         _valid(reader, f"{path}.valid", table),
     )
-    _constants(reader, path, table, reaction)
-    return reaction
+    _constants(reader, path, table, reaction)  # faults in them are told too where the equation is not understood
+    return reaction if understood else None
 
 
 def _valid(reader: Reader, path: str, table: dict[str, Any]) -> tuple[float, float] | None:

@@ -458,3 +458,10 @@ def test_heat_of_an_isothermal_batch_that_moves_needs_its_temperature():
         assert expected == found
         if not expected:
             assert "isothermal" == read_text(full).cooling_kind
+
+
+def test_constants_of_a_reaction_with_a_wrong_equation_are_read_too():
+    text = TEXT.replace('activation_energy = "135 kJ/mol"', 'activation_energy = "135 kW"', 1)
+    assert text != TEXT
+    seen = {f.key for f in faults(TAR, '"amide -> nothing"', text)}
+    assert {"reactions.decomposition.equation", "reactions.decomposition.rate_constant.activation_energy"} <= seen
