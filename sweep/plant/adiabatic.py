@@ -159,15 +159,19 @@ def run_synthesis(study: Study, plant: Charged, failed: Failed, tolerance: float
     return Synthesis(state[:, nz].copy(), state, np.where(early, when, out[:, at.OUT_TIME]), ok)
 
 
-def mixture_block(study: Study, plant: Charged, failed: Failed, synthesis: Synthesis) -> Floats:
-    """Return the block (M, block) of the mixture left where MTSR is reached: what is fed by then and no more, decomposition alone."""
-    rows, head = failed.rows, plant.program.integers
-    still_fed = np.clip(synthesis.after, 0.0, feeding_time(study, plant, rows, failed.time))
-    share = states.share_at(plant, rows, (failed.time + still_fed)[:, None])[:, :, 0]
-    block = failed.block.copy()
+def fed_by(plant: Charged, rows: np.ndarray, block: Floats, time: Floats) -> Floats:
+    """Return blocks (M, block) without feeds that hold what points `rows` (M,) have fed by times (M,) s."""
+    head, share, block = plant.program.integers, states.share_at(plant, rows, time[:, None])[:, :, 0], block.copy()
     fed = np.einsum("mf,mfi->mi", share, plant.brought.fed[rows])
     block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (plant.brought.charged[rows] if plant.extents else 0.0)
     block[:, at.VOLUME] = plant.brought.volume[rows] + (share * plant.brought.feed_volume[rows]).sum(axis=1)
+    return block
+
+
+def mixture_block(study: Study, plant: Charged, failed: Failed, synthesis: Synthesis) -> Floats:
+    """Return the block (M, block) of the mixture left where MTSR is reached: what is fed by then and no more, decomposition alone."""
+    still_fed = np.clip(synthesis.after, 0.0, feeding_time(study, plant, failed.rows, failed.time))
+    block = fed_by(plant, failed.rows, failed.block, failed.time + still_fed)
     return _only(study, plant, block, "decomposition")
 
 

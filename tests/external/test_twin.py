@@ -4,7 +4,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from sweep.plant import evaluate, failure_times, profile
+from sweep.plant import evaluate, failure_path, failure_times, profile
 from sweep.study import read_text
 from tests.external.twin import Twin
 
@@ -174,3 +174,27 @@ def test_worst_moment(text):
     assert twin.tmr(state, volume)[0] == pytest.approx(found["tmr_ad_s"], rel=1e-4)
     assert twin.td24(state, volume) == pytest.approx(found["td24_K"], abs=0.002)
     assert twin.mtsr(found["mtsr_time_s"], lines.at(found["mtsr_time_s"], True)[1])[0] == pytest.approx(found["mtsr_K"], abs=0.002)
+
+
+@pytest.mark.parametrize("text", [CONTENTS + JACKET + RECIPE, FAST + JACKET + ON], ids=["feeds stop", "cold feeds run on"])
+def test_path_after_a_failure(text):
+    """When temperatures and the decomposition's largest rate are reached with every reaction running, and how hot it is then."""
+    study, start, levels = read_text(text), 1200.0 if text.startswith(FAST) else 12000.0, {"low": 340.0, "high": 375.0}
+    twin = Twin(study)
+    lines, _ = twin._adiabatic(start, twin.march(28800.0).at(start, True)[1], start + 20 * 86400.0, twin.synthesis | True, twin.stop_of(start), 0.0)
+    count, reached = len(twin.names), []
+
+    def rate(look, t, y):
+        n, T, volume = y[:count], y[count], twin.fed(min(t, twin.stop_of(start)))[1]
+        return twin.heat_of(twin.rates(n, volume, T, ~twin.synthesis), T) / twin.capacity(n, T, 0.0)
+
+    for level in levels.values():
+        grid = np.concatenate([np.union1d(piece[3].ts, np.linspace(piece[0], piece[1], 50)) for piece in lines.pieces])
+        T = np.array([lines.at(t, True)[1][count] for t in grid])
+        k = int(np.argmax(T >= level))
+        reached.append(np.interp(level, T[k - 1 : k + 1], grid[k - 1 : k + 1]) - start)
+    fastest = lines.highest(rate)[1]
+    reached.append(fastest - start)
+    path = failure_path(study, {}, start, levels)
+    assert reached == pytest.approx([after for _, _, after in path.reaches], rel=1e-3)
+    assert lines.at(fastest, True)[1][count] == pytest.approx(path.reaches[-1][1], abs=0.5)
