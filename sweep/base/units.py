@@ -114,6 +114,20 @@ def _split(text: str, dimension: str) -> tuple[float, str]:
     return number, unit
 
 
+def _magnitude(quantity: Any, target: str) -> float:
+    """Return a quantity's number in another unit; powers that differ by rounding alone are the same (L^0.7 and m^2.1)."""
+    import pint
+
+    try:
+        return float(quantity.to(target).magnitude)
+    except pint.DimensionalityError:
+        own, other = quantity.to_base_units(), quantity.__class__(1.0, target).to_base_units()
+        gap = own.dimensionality / other.dimensionality
+        if any(abs(power) > 1e-9 for power in gap.values()):
+            raise
+        return float(own.magnitude / other.magnitude)
+
+
 def to_si(text: str, dimension: str) -> float:
     """Return a quantity in SI; UnitFault where the text is none of that dimension (a name of `_SI`, or an SI unit)."""
     import pint
@@ -127,7 +141,7 @@ def to_si(text: str, dimension: str) -> float:
     if not unit and target:
         raise UnitFault(_words(dimension), "every quantity stands with its unit")
     try:
-        value = float(registry.Quantity(number, _plain(unit)).to(target).magnitude)
+        value = _magnitude(registry.Quantity(number, _plain(unit)), target)
         zero = float(registry.Quantity(0.0, _plain(unit)).to(target).magnitude) if dimension == "temperature difference" else 0.0
     except pint.UndefinedUnitError as error:
         expected = f"a unit of {dimension}, such as {_nearest(unit) or target}" if dimension in _SI else _words(dimension)
@@ -164,7 +178,7 @@ def from_si(value: float, unit: str, dimension: str | None = None) -> float:
     """Return an SI value in another unit; SI is the dimension's own unit, or the base units of `unit`."""
     registry, unit = _registry(), _plain(unit)
     base = si_unit(dimension) if dimension is not None else registry.Quantity(1.0, unit).to_base_units().units
-    return float(registry.Quantity(value, base).to(unit).magnitude)
+    return _magnitude(registry.Quantity(value, base), unit)
 
 
 def show(value: float, unit: str, digits: int = 4) -> str:

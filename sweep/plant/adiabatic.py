@@ -37,7 +37,8 @@ class Failed:
 
 @dataclass(frozen=True)
 class Synthesis:
-    """temperature (M,) K: the highest on the path (MTSR); state (M, R): where it is reached; after (M,) s; ok (M,): it was found."""
+    """temperature (M,) K: the highest on the path (MTSR); state (M, R): where it is reached; after (M,) s: how long after the failure that
+    state is; ok (M,): it was found."""
 
     temperature: Floats
     state: Floats
@@ -155,17 +156,23 @@ def run_synthesis(study: Study, plant: Charged, failed: Failed, tolerance: float
         again = march_on(plant, failed.rows[early], blocks[early], failed.state[early], tolerance, times)
         state[early] = np.where(np.isnan(again.samples[:, 0]), state[early], again.samples[:, 0])
     state[:, nz] = np.where(ok, np.maximum(top, failed.state[:, nz]), np.nan)
-    return Synthesis(state[:, nz].copy(), state, when, ok)
+    return Synthesis(state[:, nz].copy(), state, np.where(early, when, out[:, at.OUT_TIME]), ok)
 
 
-def mixture_block(study: Study, plant: Charged, failed: Failed) -> Floats:
-    """Return the block (M, block) of the mixture left by the path after a failure: everything fed that will be, decomposition alone."""
-    block = path_blocks(study, plant, failed)[:, -1, :]
-    whole = failed.block.copy()
-    head = plant.program.integers
-    base = slice(head[at.BLOCK_BASE], head[at.BLOCK_RATE])
-    whole[:, base], whole[:, at.VOLUME] = block[:, base], block[:, at.VOLUME]
-    return _only(study, plant, whole, "decomposition")
+def fed_by(plant: Charged, rows: np.ndarray, block: Floats, time: Floats) -> Floats:
+    """Return blocks (M, block) without feeds that hold what points `rows` (M,) have fed by times (M,) s."""
+    head, share, block = plant.program.integers, states.share_at(plant, rows, time[:, None])[:, :, 0], block.copy()
+    fed = np.einsum("mf,mfi->mi", share, plant.brought.fed[rows])
+    block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (plant.brought.charged[rows] if plant.extents else 0.0)
+    block[:, at.VOLUME] = plant.brought.volume[rows] + (share * plant.brought.feed_volume[rows]).sum(axis=1)
+    return block
+
+
+def mixture_block(study: Study, plant: Charged, failed: Failed, synthesis: Synthesis) -> Floats:
+    """Return the block (M, block) of the mixture left where MTSR is reached: what is fed by then and no more, decomposition alone."""
+    still_fed = np.clip(synthesis.after, 0.0, feeding_time(study, plant, failed.rows, failed.time))
+    block = fed_by(plant, failed.rows, failed.block, failed.time + still_fed)
+    return _only(study, plant, block, "decomposition")
 
 
 def mixture_amounts(plant: Charged, block: Floats, state: Floats) -> Floats:
@@ -202,7 +209,8 @@ def run_decomposition(
     code, when = out[:, at.OUT_STATUS].astype(int), out[:, at.OUT_RATE_MAX_TIME]
     rise = complete_rise(study, plant, rows, block, state, "decomposition")
     last = np.nan_to_num(marched.at_last, nan=300.0)
-    still_rising = rates.heating_rate(flow_of(plant, rows, block, last)) >= out[:, at.OUT_RATE_MAX] * (1.0 - 1e-9)
+    at_last = rates.heating_rate(flow_of(plant, rows, block, last))  # equal but for the rounding of two ways to work it out
+    still_rising = (when >= out[:, at.OUT_TIME] * (1.0 - 1e-12)) | (at_last >= out[:, at.OUT_RATE_MAX] * (1.0 - 1e-9))
     hot = np.isin(code, (RUNAWAY, STEP_TOO_SMALL))  # an explosion faster than time can be told apart has reached its largest rate
     at_start = rates.heating_rate(flow_of(plant, rows, block, state))
     at_once = (when <= 0.0) | (out[:, at.OUT_RATE_MAX] <= FASTER * at_start)

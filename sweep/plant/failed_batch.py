@@ -20,6 +20,9 @@ from sweep.study.model import Study
 
 DRAWN = 101  # moments that draw well
 _PATH_TIMES = 241
+_GRID = 4001  # times of a path to begin with
+_STEEP = 2.0  # K; between times further apart than this a peak of the rate could hide
+_CLOSER, _BETWEEN = 4, 65  # marches of a path, and times between two neighbours of what is sought
 _STILL = 1e-9  # of the largest heat flow on a path; below, nothing is happening and the stage before goes on
 
 
@@ -92,24 +95,32 @@ def failure_path(study: Study, point: Mapping[str, float] | None, time: float, l
     blocks = adiabatic.path_blocks(study, plant, failed, purpose=None)
     horizon = float(study.values["failure.horizon"])
     blocks[:, -1, at.T_END] = np.maximum(blocks[:, -1, at.T_START], 0.0) + horizon
-    fine = np.concatenate([[0.0], np.geomspace(1.0, horizon, 4001)])[None, :]
-    marched = march_on(plant, rows, blocks, state, tolerance, fine)
-    T = marched.samples[0, :, nz]
-    known = np.isfinite(T)
-    reaches = [(name, level, _first(fine[0][known], T[known], level)) for name, level in levels.items()]
-    now = _flow_along(plant, failed, marched.samples[0])
-    stage = _stages(study, now, known)
     decomposes = adiabatic.purposes(study, "decomposition")
+    fine = np.concatenate([[0.0], np.geomspace(1.0, horizon, _GRID)])
+    fed = adiabatic.feeding_time(study, plant, rows, when[:, 0])
+    for _ in range(_CLOSER):  # around what is sought the grid is made finer and the path marched again
+        marched = march_on(plant, rows, blocks, state, tolerance, fine[None, :])
+        T = marched.samples[0, :, nz]
+        known = np.isfinite(T)
+        now = _flow_along(plant, failed, marched.samples[0], np.minimum(fine, fed))
+        rate = np.where(known, now.heat[:, decomposes].sum(axis=1) / now.capacity, -np.inf)
+        sought = [int(rate.argmax()), *(int(np.argmax(known & (level <= T))) for level in levels.values())]
+        near = [np.linspace(fine[max(k - 1, 0)], fine[min(k + 1, fine.size - 1)], _BETWEEN) for k in sought]
+        steep = np.flatnonzero(np.abs(np.diff(T)) > _STEEP)
+        near.append((fine[steep, None] + np.linspace(0.0, 1.0, 9) * (fine[steep + 1] - fine[steep])[:, None]).ravel())
+        before, fine = fine, np.unique(np.concatenate([fine, *near]))
+    reaches = [(name, level, _first(before[known], T[known], level)) for name, level in levels.items()]
     if decomposes:
-        reaches.append(_fastest(fine[0], T, np.where(known, now.heat[:, decomposes].sum(axis=1) / now.capacity, -np.inf)))
-    return FailurePath(float(when[0, 0]), _lines(fine[0], T, stage), tuple(reaches))
+        reaches.append(_fastest(before, T, rate))
+    return FailurePath(float(when[0, 0]), _lines(before, T, _stages(study, now, known)), tuple(reaches))
 
 
-def _flow_along(plant: Charged, failed: adiabatic.Failed, state: Floats) -> rates.Flow:
-    """Return rates and heats along a path, feeds over."""
+def _flow_along(plant: Charged, failed: adiabatic.Failed, state: Floats, fed: Floats) -> rates.Flow:
+    """Return rates and heats along a path of states (K, R), when what came in within `fed` (K,) s after the failure is in."""
     count = state.shape[0]
-    block = np.repeat(failed.block, count, axis=0)
-    return adiabatic.flow_of(plant, np.zeros(count, dtype=int), block, np.nan_to_num(state, nan=300.0))
+    rows = np.zeros(count, dtype=int)
+    block = adiabatic.fed_by(plant, rows, np.repeat(failed.block, count, axis=0), failed.time[0] + fed)
+    return adiabatic.flow_of(plant, rows, block, np.nan_to_num(state, nan=300.0))
 
 
 def _stages(study: Study, now: rates.Flow, known: np.ndarray) -> np.ndarray:

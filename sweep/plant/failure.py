@@ -3,7 +3,7 @@
 Estimates (`moments.py`) tell which moments are marched; all figures come from marches (`adiabatic.py`). N points.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -20,7 +20,9 @@ from sweep.study.model import Study
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
 WORTH = 0.5  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
 NONE = -1.0  # no moment is: near the worst one the closed form alone tells which is worse
-WORTH_AUTOCATALYTIC = 3.0  # likewise where a decomposition speeds itself up and the estimate may mislead
+LITTLE = 0.1  # likewise among all samples of a batch, to begin with
+NUDGE = 1e-6  # of the closed form's logarithm, added to that of an equal bound
+FIRST = 3  # moments of a point that are marched again: where the time to maximum rate jumps, the very worst may fall to either side
 MEANINGLESS = 1e15  # s; a closed form beyond this says that nothing gives off heat, not how long it takes
 CLOSE = 0.0025  # of the batch time; the marches left and right of the worst one are brought at least this near
 ROUNDS = 6  # of marches where they are not: each in a third of the bracket before
@@ -58,20 +60,27 @@ def march_moments(
     """
     failed = adiabatic.fail(study, plant, rows, time, state)
     synthesis = adiabatic.run_synthesis(study, plant, failed, tolerance)
-    block = adiabatic.mixture_block(study, plant, failed)
-    tmr, censored = np.full(rows.size, np.inf), np.zeros(rows.size, dtype=bool)
-    ok = synthesis.ok.copy()
-    decomposes, urgency = bool(adiabatic.purposes(study, "decomposition")), np.full(rows.size, -np.inf)
-    if decomposes and rows.size:
+    block = adiabatic.mixture_block(study, plant, failed, synthesis)
+    ok, urgency = synthesis.ok.copy(), np.full(rows.size, -np.inf)
+    if adiabatic.purposes(study, "decomposition") and rows.size:
         urgency = np.where(ok, _urgency(study, plant, rows, block, synthesis.state), -np.inf)
+    tmr, censored = np.full(rows.size, np.inf), np.zeros(rows.size, dtype=bool)
+    found = Moments(rows, time, state, synthesis.temperature, tmr, censored, urgency, ok, block, synthesis.state)
     worst = np.full(plant.values.count, -np.inf)
     np.maximum.at(worst, rows, urgency)
-    chosen = ok & decomposes & ~(urgency < worst[rows] - worth)
-    if chosen.any():
-        horizon = plant.values.get("failure.horizon")[rows[chosen]]
-        run = adiabatic.run_decomposition(study, plant, rows[chosen], block[chosen], synthesis.state[chosen], horizon, tolerance)
-        tmr[chosen], censored[chosen] = np.where(run.ok, run.tmr, np.nan), run.censored
-    return Moments(rows, time, state, synthesis.temperature, tmr, censored, urgency, ok, block, synthesis.state)
+    return _decompose(study, plant, found, ~(urgency < worst[rows] - worth), tolerance)
+
+
+def _decompose(study: Study, plant: Charged, found: Moments, wanted: np.ndarray, tolerance: float) -> Moments:
+    """March the decomposition of the moments that are wanted (M,)."""
+    chosen = found.ok & wanted & bool(adiabatic.purposes(study, "decomposition"))
+    if not chosen.any():
+        return found
+    rows, tmr, censored = found.rows[chosen], found.tmr.copy(), found.censored.copy()
+    horizon = plant.values.get("failure.horizon")[rows]
+    run = adiabatic.run_decomposition(study, plant, rows, found.block[chosen], found.state[chosen], horizon, tolerance)
+    tmr[chosen], censored[chosen] = np.where(run.ok, run.tmr, np.nan), run.censored
+    return replace(found, tmr=tmr, censored=censored)
 
 
 def _urgency(study: Study, plant: Charged, rows: np.ndarray, block: Floats, state: Floats) -> Floats:
@@ -86,26 +95,78 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
 
     The search itself may be rougher: it decides only which moments are the worst, and those are marched again.
     """
-    rows, rough = np.arange(batch.times.shape[0]), min(10.0 * tolerance, 1e-5)
-    coarse, fine = (WORTH_AUTOCATALYTIC,) * 2 if adiabatic.speeds_itself_up(study) else (WORTH, NONE)
+    rough, autocatalytic = min(10.0 * tolerance, 1e-5), adiabatic.speeds_itself_up(study)
+    rows = np.arange(batch.times.shape[0])
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
-    tops = [e.argmax(axis=1) for e in found]
-    pairs = _coarse(batch, found, tops)
-    marched = march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], rough, coarse)
-    parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, top, tolerance) for which, top in enumerate(tops)]
+    if autocatalytic or may_mislead(study, plant):
+        marched = _march_samples(study, plant, batch, rough, autocatalytic)
+        fine = (NONE, np.inf)
+    else:
+        marched = _march_estimated(study, plant, batch, rough, found)
+        fine = (NONE, NONE)
+    marched = marched.joined(_march_tops(study, plant, batch, rough, tolerance, found, fine[1]))
+    hot = _narrowed(study, plant, batch, marched, 0, rough, fine[0])
+    # where marches alone tell, what was not marched to its maximum rate is slower
+    alone = replace(marched, urgency=np.where(np.isinf(marched.tmr), -np.inf, marched.urgency))
+    urgent = alone if fine[1] == np.inf else hot
+    if adiabatic.purposes(study, "decomposition"):
+        urgent = _narrowed(study, plant, batch, urgent, 1, rough, fine[1])
+    return _again(study, plant, hot, urgent, tolerance)
+
+
+def may_mislead(study: Study, plant: Charged) -> bool:
+    """Tell whether completion on paper may end elsewhere than a march: reactions compete, stop at equilibrium or take up heat, or feeds
+    go on (and the highest temperature may come before the end)."""
+    synthesis, settings = adiabatic.purposes(study, "synthesis"), study.failure
+    feeds = settings is not None and (settings.feeds != "stop" or settings.feeds_stop_after > 0.0)
+    cold = bool((states.reference_heats(study, plant)[:, synthesis] < 0.0).any()) if synthesis else False
+    return feeds or cold or len(synthesis) > 1 or any(study.reactions[j].reversible for j in synthesis)
+
+
+def _march_samples(study: Study, plant: Charged, batch: Batch, rough: float, autocatalytic: bool) -> Moments:
+    """March the failure at every sample of the batches, and the decomposition where it may be the fastest of its batch.
+
+    The closed form is shorter than the truth unless the decomposition speeds itself up: what it puts beyond the shortest march is slower.
+    """
+    rows, columns = np.nonzero(batch.inside)
+    marched = march_moments(study, plant, rows, batch.times[rows, columns], batch.states[rows, columns], rough, LITTLE)
+    fastest = -np.log(plant.values.get("failure.horizon"))
+    known = ~marched.censored & np.isfinite(marched.tmr)
+    np.maximum.at(fastest, rows[known], -np.log(np.maximum(marched.tmr[known], 1e-3)))
+    return _decompose(study, plant, marched, np.isinf(marched.tmr) & (autocatalytic | (marched.urgency > fastest[rows] - WORTH)), rough)
+
+
+def _march_estimated(study: Study, plant: Charged, batch: Batch, rough: float, found: list[Floats]) -> Moments:
+    """March the failures that the estimates `found` point at, among the samples."""
+    pairs = _coarse(batch, found, [e.argmax(axis=1) for e in found])
+    return march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], rough, WORTH)
+
+
+def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolerance: float, found: list[Floats], worth: float) -> Moments:
+    """March the failures between the samples where the estimates `found` are highest, and where they bend."""
+    rows = np.arange(batch.times.shape[0])
+    parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, e.argmax(axis=1), tolerance) for which, e in enumerate(found)]
     time, state = np.concatenate([p[0] for p in parts], axis=1), np.concatenate([p[1] for p in parts], axis=1)
-    marched = marched.joined(_march_grid(study, plant, rows, time, state, rough, fine))
-    for which in range(len(found)):
-        marched = _narrowed(study, plant, batch, marched, which, rough, fine)
-    return _again(study, plant, marched, tolerance)
+    return _march_grid(study, plant, rows, time, state, rough, worth)
 
 
-def _again(study: Study, plant: Charged, marched: Moments, tolerance: float) -> Moments:
+def _again(study: Study, plant: Charged, hot: Moments, urgent: Moments, tolerance: float) -> Moments:
     """March the hottest and the most urgent moments of each point again, at full tolerance."""
-    count = plant.values.count
-    hottest, urgent = (_best(marched, _score(marched, which), count)[0] for which in range(2))
-    places = np.unique(np.concatenate([hottest[hottest >= 0], urgent[urgent >= 0]]))
-    return march_moments(study, plant, marched.rows[places], marched.time[places], marched.begin[places], tolerance)
+    hottest, fastest = _first(hot, _score(hot, 0), 1), _first(urgent, _score(urgent, 1), FIRST)
+    rows, time = (np.concatenate([getattr(hot, of)[hottest], getattr(urgent, of)[fastest]]) for of in ("rows", "time"))
+    begin = np.concatenate([hot.begin[hottest], urgent.begin[fastest]])
+    _, once = np.unique(np.stack([rows, time]), axis=1, return_index=True)
+    return march_moments(study, plant, rows[once], time[once], begin[once], tolerance)
+
+
+def _first(marched: Moments, score: Floats, few: int) -> np.ndarray:
+    """Return the places of each point's few highest scores."""
+    order = np.lexsort((-marched.time, score, marched.rows))[::-1]
+    rows = marched.rows[order]
+    begins = np.flatnonzero(np.diff(rows, prepend=-1))
+    rank = np.arange(rows.size) - np.repeat(begins, np.diff(begins, append=rows.size))
+    found: np.ndarray = order[(rank < few) & np.isfinite(score[order])]
+    return found
 
 
 def _march_grid(
@@ -143,10 +204,11 @@ def _score(marched: Moments, which: int) -> Floats:
     """
     if which == 0:
         return np.where(marched.ok, marched.mtsr, -np.inf)
-    known = marched.ok & np.isfinite(marched.tmr) & ~marched.censored
+    known = marched.ok & np.isfinite(marched.tmr)
     exact = -np.log(np.maximum(np.where(known, marched.tmr, 1.0), 1e-3))
+    exact += np.where(marched.censored, NUDGE * np.clip(marched.urgency, -1e3, 1e3), 0.0)  # among equal bounds the most urgent is the worst
     count = int(marched.rows.max(initial=0)) + 1
-    place = _best(marched, np.where(known, exact, -np.inf), count)[0]
+    place = _best(marched, np.where(known & ~marched.censored, exact, -np.inf), count)[0]
     shift, some = np.zeros(count), place >= 0
     shift[some] = marched.urgency[place[some]] - exact[place[some]]
     return np.where(known, exact, np.where(marched.ok, marched.urgency - shift[marched.rows], -np.inf))
@@ -171,7 +233,7 @@ def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, whic
         place, best = _best(marched, score, count)
         rows = np.flatnonzero(place >= 0)
         middle = marched.time[place[rows]]
-        low, high = _neighbours(marched, rows, middle)
+        low, high = _neighbours(marched, rows, middle, end)
         if not last:
             wide = np.maximum(middle - low, high - middle) > CLOSE * end[rows]
             rows, middle, low, high = rows[wide], middle[wide], low[wide], high[wide]
@@ -214,8 +276,8 @@ def _score_at(marched: Moments, score: Floats, rows: np.ndarray, time: Floats) -
     return found[rows]
 
 
-def _neighbours(marched: Moments, rows: np.ndarray, middle: Floats) -> tuple[Floats, Floats]:
-    """Return the marched times just below and above `middle` of each of `rows`; itself where there is none."""
+def _neighbours(marched: Moments, rows: np.ndarray, middle: Floats, end: Floats) -> tuple[Floats, Floats]:
+    """Return the marched times just below and above `middle` of each of `rows`; the batch's start and end (N,) s where there is none."""
     low, high = middle.copy(), middle.copy()
     place = np.full(int(marched.rows.max(initial=0)) + 1, -1)
     place[rows] = np.arange(rows.size)
@@ -225,7 +287,7 @@ def _neighbours(marched: Moments, rows: np.ndarray, middle: Floats) -> tuple[Flo
     low[:], high[:] = -np.inf, np.inf
     np.maximum.at(low, mine[under], times[under])
     np.minimum.at(high, mine[over], times[over])
-    return np.where(np.isfinite(low), low, middle), np.where(np.isfinite(high), high, middle)
+    return np.where(np.isfinite(low), low, 0.0), np.where(np.isfinite(high), high, end[rows])
 
 
 def failure_figures(study: Study, plant: Charged, batch: Batch, process: Floats, tolerance: float) -> tuple[dict[str, Floats], list[list[str]]]:

@@ -77,6 +77,8 @@ def _lines(study: Study, plant: Charged, times: Floats, state: Floats) -> dict[s
     volume = plant.brought.volume[0] + plant.brought.feed_volume[0] @ share
     rows = np.zeros(count, dtype=int)
     block = plant.blocks[rows, segment_at(plant, rows, times[0])]
+    begins = (block[:, at.JACKET_SET] > 0.5) & (times[0] <= block[:, at.T_START] * (1.0 + 1e-12))  # the sample is of the segment before
+    T_jacket = np.where(begins & np.isfinite(T_jacket), block[:, at.JACKET_START], T_jacket)
     has_jacket = (block[:, at.UA_CONSTANT] > 0.0) | (block[:, at.UA_PER_VOLUME] > 0.0)
     columns = {"time_s": times[0], "temperature_K": T, "jacket_temperature_K": np.where(has_jacket, T_jacket, np.nan), "volume_m3": volume}
     columns.update({f"n_{s.name}_mol": moles[:, i] for i, s in enumerate(study.species)})

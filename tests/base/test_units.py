@@ -33,6 +33,7 @@ from sweep.base.units import UnitFault, from_si, show, suffix, to_si
         ("1 kcal/mol", "energy per amount", 4184.0),
         ("1 Btu/lb/degF", "specific heat capacity", 1055.056 / 0.45359237 * 1.8),  # the Btu of ISO 31-4; the IT Btu is 1.4e-7 less
         ("2 L^0.5/mol^0.5/s", "mol**(-0.5)*m**(1.5)*s**(-1)", 2.0 * 1e-3**0.5),
+        ("2 L^0.7/mol^0.7/s", "mol**(-0.7)*m**(2.1)*s**(-1)", 2.0 * 1e-3**0.7),  # 3 times 0.7 is 2.1 but for rounding
     ],
 )
 def test_to_si(text, dimension, expected):
@@ -123,3 +124,10 @@ def test_show():
 )
 def test_suffix(unit, expected):
     assert expected == suffix(unit)
+
+
+def test_powers_that_differ_by_rounding_are_the_same_both_ways():
+    dimension = "mol**(-0.7)*m**(2.1)*s**(-1)"
+    assert 2.0 == pytest.approx(from_si(to_si("2 L^0.7/mol^0.7/s", dimension), "L^0.7/mol^0.7/s", dimension), rel=1e-12)
+    with pytest.raises(UnitFault, match="measures something else"):
+        to_si("2 L^0.7/mol^0.6/s", dimension)

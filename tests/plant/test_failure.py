@@ -139,3 +139,25 @@ def test_autocatalytic_decomposition_is_marched_and_its_closed_form_warned_of():
     assert row["tmr_ad_closed_form_s"] > 5.0 * row["tmr_ad_s"]
     cautions = fail_cooling(study, row).summary()["cautions"]
     assert "times longer than the march" in cautions[0]
+
+
+def test_worst_moments_of_competing_reactions_are_found(demo):
+    """Where reactions compete, completion on paper misleads; no moment of a fine scan is worse than the worst one found."""
+    study = demo
+    ranges = np.array([[v.low, v.high] for v in study.variables])
+    points = pd.DataFrame(np.random.default_rng(1).uniform(*ranges.T, (512, len(ranges))), columns=[v.name for v in study.variables])
+    points = points.iloc[[121, 370, 383]]
+    table = evaluate(study, points)
+    for (_, point), (_, row) in zip(points.iterrows(), table.iterrows(), strict=True):
+        scan = failure_times(study, point.to_dict(), np.linspace(0.0, 21600.0, 241).tolist())
+        assert scan["tmr_ad_s"].min() >= row["tmr_ad_s"] * (1.0 - 1e-3)
+        assert scan["mtsr_K"].max() <= row["mtsr_K"] + 0.01
+
+
+def test_a_rate_that_still_rises_at_the_horizon_is_a_bound(demo):
+    study = demo
+    for celsius in (30.0, 35.0, 40.0, 45.0):
+        found = failure_times(study, {"charge_temperature": 273.15 + celsius}, np.linspace(0.0, 21600.0, 25).tolist())
+        at_horizon = found["tmr_ad_s"] >= 2_592_000.0
+        assert at_horizon.any()
+        assert (found["tmr_ad_censored"] == 1.0)[at_horizon].all()
