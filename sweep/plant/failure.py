@@ -17,7 +17,7 @@ from sweep.plant.td24 import find_td24
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
-WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
+WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched; twice as many where reactions compete
 WORTH = 0.5  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
 NONE = -1.0  # no moment is: near the worst one the closed form alone tells which is worse
 LITTLE = 0.1  # likewise among all samples of a batch, to begin with
@@ -98,29 +98,25 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     rough, autocatalytic = min(10.0 * tolerance, 1e-5), adiabatic.speeds_itself_up(study)
     rows = np.arange(batch.times.shape[0])
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
-    if autocatalytic or may_mislead(study, plant):
-        marched = _march_samples(study, plant, batch, rough, autocatalytic)
-        fine = (NONE, np.inf)
-    else:
-        marched = _march_estimated(study, plant, batch, rough, found)
-        fine = (NONE, NONE)
-    marched = marched.joined(_march_tops(study, plant, batch, rough, tolerance, found, fine[1]))
-    hot = _narrowed(study, plant, batch, marched, 0, rough, fine[0])
-    # where marches alone tell, what was not marched to its maximum rate is slower
-    alone = replace(marched, urgency=np.where(np.isinf(marched.tmr), -np.inf, marched.urgency))
-    urgent = alone if fine[1] == np.inf else hot
+    astray = autocatalytic or may_mislead(study, plant)
+    worth, few = (np.inf, FIRST) if astray else (NONE, 1)
+    marched = _march_samples(study, plant, batch, rough, autocatalytic) if astray else _march_estimated(study, plant, batch, rough, found)
+    marched = marched.joined(_march_tops(study, plant, batch, rough, tolerance, found, worth))
+    hot = urgent = _narrowed(study, plant, batch, marched, 0, rough, NONE)
+    if astray:  # marches alone tell: what was not marched to its maximum rate is slower
+        urgent = replace(marched, urgency=np.where(np.isinf(marched.tmr), -np.inf, marched.urgency))
     if adiabatic.purposes(study, "decomposition"):
-        urgent = _narrowed(study, plant, batch, urgent, 1, rough, fine[1])
-    return _again(study, plant, hot, urgent, tolerance)
+        urgent = _narrowed(study, plant, batch, urgent, 1, rough, worth)
+    return _again(study, plant, hot, urgent, few, tolerance)
 
 
 def may_mislead(study: Study, plant: Charged) -> bool:
-    """Tell whether completion on paper may end elsewhere than a march: reactions compete, stop at equilibrium or take up heat, or feeds
-    go on (and the highest temperature may come before the end)."""
+    """Tell whether completion on paper may end elsewhere than a march: reactions stop at equilibrium or take up heat, or feeds go on (and the
+    highest temperature may come before the end). Where reactions only compete it is a good guide, and more moments are marched."""
     synthesis, settings = adiabatic.purposes(study, "synthesis"), study.failure
     feeds = settings is not None and (settings.feeds != "stop" or settings.feeds_stop_after > 0.0)
     cold = bool((states.reference_heats(study, plant)[:, synthesis] < 0.0).any()) if synthesis else False
-    return feeds or cold or len(synthesis) > 1 or any(study.reactions[j].reversible for j in synthesis)
+    return feeds or cold or any(study.reactions[j].reversible for j in synthesis)
 
 
 def _march_samples(study: Study, plant: Charged, batch: Batch, rough: float, autocatalytic: bool) -> Moments:
@@ -138,7 +134,8 @@ def _march_samples(study: Study, plant: Charged, batch: Batch, rough: float, aut
 
 def _march_estimated(study: Study, plant: Charged, batch: Batch, rough: float, found: list[Floats]) -> Moments:
     """March the failures that the estimates `found` point at, among the samples."""
-    pairs = _coarse(batch, found, [e.argmax(axis=1) for e in found])
+    windows = WINDOWS if len(adiabatic.purposes(study, "synthesis")) < 2 else 2 * WINDOWS
+    pairs = _coarse(batch, found, [e.argmax(axis=1) for e in found], windows)
     return march_moments(study, plant, pairs[:, 0], batch.times[tuple(pairs.T)], batch.states[tuple(pairs.T)], rough, WORTH)
 
 
@@ -150,9 +147,9 @@ def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolera
     return _march_grid(study, plant, rows, time, state, rough, worth)
 
 
-def _again(study: Study, plant: Charged, hot: Moments, urgent: Moments, tolerance: float) -> Moments:
+def _again(study: Study, plant: Charged, hot: Moments, urgent: Moments, few: int, tolerance: float) -> Moments:
     """March the hottest and the most urgent moments of each point again, at full tolerance."""
-    hottest, fastest = _first(hot, _score(hot, 0), 1), _first(urgent, _score(urgent, 1), FIRST)
+    hottest, fastest = _first(hot, _score(hot, 0), 1), _first(urgent, _score(urgent, 1), few)
     rows, time = (np.concatenate([getattr(hot, of)[hottest], getattr(urgent, of)[fastest]]) for of in ("rows", "time"))
     begin = np.concatenate([hot.begin[hottest], urgent.begin[fastest]])
     _, once = np.unique(np.stack([rows, time]), axis=1, return_index=True)
@@ -183,14 +180,14 @@ def _estimate(study: Study, plant: Charged, which: int) -> moments.Estimate:
     return lambda rows, times, state: moments.estimates(study, plant, rows, times, state)[which]
 
 
-def _coarse(batch: Batch, found: list[Floats], tops: list[np.ndarray]) -> np.ndarray:
+def _coarse(batch: Batch, found: list[Floats], tops: list[np.ndarray], windows: int) -> np.ndarray:
     """Return (row, sample) pairs to march, without repeats: the top of each estimate in each stretch, and the tops' neighbours."""
     count = batch.times.shape[0]
     rows, last = np.arange(count), np.maximum(batch.inside.sum(axis=1) - 1, 0)
     end = batch.times[rows, last]
     share = batch.times / np.where(end > 0.0, end, 1.0)[:, None]
-    stretch = np.minimum((share * WINDOWS).astype(int), WINDOWS - 1)
-    columns = [np.where(stretch == part, e, -np.inf).argmax(axis=1) for e in found for part in range(WINDOWS)]
+    stretch = np.minimum((share * windows).astype(int), windows - 1)
+    columns = [np.where(stretch == part, e, -np.inf).argmax(axis=1) for e in found for part in range(windows)]
     columns += [np.clip(top + d, 0, last) for top in tops for d in (-1, 1)]
     pairs = np.unique(np.stack([np.tile(rows, len(columns)), np.concatenate(columns)], axis=1), axis=0)
     kept: np.ndarray = pairs[batch.inside[tuple(pairs.T)]]
