@@ -98,7 +98,7 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     rough, autocatalytic = min(10.0 * tolerance, 1e-5), adiabatic.speeds_itself_up(study)
     rows = np.arange(batch.times.shape[0])
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
-    if autocatalytic or may_mislead(study, plant):
+    if autocatalytic or may_mislead(study):
         marched = _march_samples(study, plant, batch, rough, autocatalytic)
         fine = (NONE, np.inf)
     else:
@@ -114,12 +114,12 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     return _again(study, plant, hot, urgent, tolerance)
 
 
-def may_mislead(study: Study, plant: Charged) -> bool:
+def may_mislead(study: Study) -> bool:
     """Tell whether completion on paper may end elsewhere than a march: reactions compete, stop at equilibrium or take up heat, or feeds
-    go on (and the highest temperature may come before the end)."""
+    go on (and the highest temperature may come before the end). Of the study as written: no point's search depends on its neighbours."""
     synthesis, settings = adiabatic.purposes(study, "synthesis"), study.failure
     feeds = settings is not None and (settings.feeds != "stop" or settings.feeds_stop_after > 0.0)
-    cold = bool((states.reference_heats(study, plant)[:, synthesis] < 0.0).any()) if synthesis else False
+    cold = any(study.values.get(f"reactions.{study.reactions[j].name}.heat.value", 0.0) > 0.0 for j in synthesis)
     return feeds or cold or len(synthesis) > 1 or any(study.reactions[j].reversible for j in synthesis)
 
 
