@@ -20,6 +20,7 @@ from sweep.study.model import Study
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched; twice as many where reactions compete
 WORTH = 0.5  # of the estimate's logarithm: a moment less urgent than the worst by more than this is not marched to its maximum rate
 NONE = -1.0  # no moment is: near the worst one the closed form alone tells which is worse
+NEARLY = (1.5, 0.1)  # K, and of the closed form's logarithm: a second summit that is lower by less is looked at as closely
 LITTLE = 0.1  # likewise among all samples of a batch, to begin with
 NUDGE = 1e-6  # of the closed form's logarithm, added to that of an equal bound
 FIRST = 3  # moments of a point that are marched again: where the time to maximum rate jumps, the very worst may fall to either side
@@ -98,7 +99,7 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     rough, autocatalytic = min(10.0 * tolerance, 1e-5), adiabatic.speeds_itself_up(study)
     rows = np.arange(batch.times.shape[0])
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
-    astray = autocatalytic or may_mislead(study, plant)
+    astray = autocatalytic or may_mislead(study)
     worth, few = (np.inf, FIRST) if astray else (NONE, 1)
     marched = _march_samples(study, plant, batch, rough, autocatalytic) if astray else _march_estimated(study, plant, batch, rough, found)
     marched = marched.joined(_march_tops(study, plant, batch, rough, tolerance, found, worth))
@@ -107,15 +108,16 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
         urgent = replace(marched, urgency=np.where(np.isinf(marched.tmr), -np.inf, marched.urgency))
     if adiabatic.purposes(study, "decomposition"):
         urgent = _narrowed(study, plant, batch, urgent, 1, rough, worth)
-    return _again(study, plant, hot, urgent, few, tolerance)
+    return _again(study, plant, batch, hot, urgent, few, tolerance)
 
 
-def may_mislead(study: Study, plant: Charged) -> bool:
+def may_mislead(study: Study) -> bool:
     """Tell whether completion on paper may end elsewhere than a march: reactions stop at equilibrium or take up heat, or feeds go on (and the
-    highest temperature may come before the end). Where reactions only compete it is a good guide, and more moments are marched."""
+    highest temperature may come before the end). Where reactions only compete it is a good guide, and more moments are marched. Of the
+    study as written: no point's search depends on its neighbours."""
     synthesis, settings = adiabatic.purposes(study, "synthesis"), study.failure
     feeds = settings is not None and (settings.feeds != "stop" or settings.feeds_stop_after > 0.0)
-    cold = bool((states.reference_heats(study, plant)[:, synthesis] < 0.0).any()) if synthesis else False
+    cold = any(study.values.get(f"reactions.{study.reactions[j].name}.heat.value", 0.0) > 0.0 for j in synthesis)
     return feeds or cold or any(study.reactions[j].reversible for j in synthesis)
 
 
@@ -140,16 +142,41 @@ def _march_estimated(study: Study, plant: Charged, batch: Batch, rough: float, f
 
 
 def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolerance: float, found: list[Floats], worth: float) -> Moments:
-    """March the failures between the samples where the estimates `found` are highest, and where they bend."""
-    rows = np.arange(batch.times.shape[0])
-    parts = [moments.refine(plant, batch, _estimate(study, plant, which), rows, e.argmax(axis=1), tolerance) for which, e in enumerate(found)]
-    time, state = np.concatenate([p[0] for p in parts], axis=1), np.concatenate([p[1] for p in parts], axis=1)
-    return _march_grid(study, plant, rows, time, state, rough, worth)
+    """March the failures between the samples where the estimates `found` are highest, and where they bend; and those at a second summit that
+    is nearly as high."""
+    every, times, states_there = [], [], []
+    for which, estimate in enumerate(found):
+        top, second, near = _summits(estimate, NEARLY[which])
+        for rows, worst in ((np.arange(top.size), top), (np.flatnonzero(near), second[near])):
+            if rows.size:
+                time, state = moments.refine(plant, batch, _estimate(study, plant, which), rows, worst, tolerance)
+                every.append(np.repeat(rows, time.shape[1]))
+                times.append(time.ravel())
+                states_there.append(state.reshape(-1, state.shape[2]))
+    return _march_grid(study, plant, np.concatenate(every), np.concatenate(times)[:, None], np.concatenate(states_there)[:, None], rough, worth)
 
 
-def _again(study: Study, plant: Charged, hot: Moments, urgent: Moments, few: int, tolerance: float) -> Moments:
-    """March the hottest and the most urgent moments of each point again, at full tolerance."""
-    hottest, fastest = _first(hot, _score(hot, 0), 1), _first(urgent, _score(urgent, 1), few)
+def _summits(estimate: Floats, nearly: float) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return for each batch the sample where an estimate (N, K) is highest, that of its second summit, and whether this is nearly as high."""
+    count, last = estimate.shape[0], estimate.shape[1] - 1
+    rows, top = np.arange(count), estimate.argmax(axis=1)
+    padded = np.pad(estimate, ((0, 0), (1, 1)), constant_values=-np.inf)
+    summit = (estimate >= padded[:, :-2]) & (estimate >= padded[:, 2:]) & np.isfinite(estimate)
+    apart = np.abs(np.arange(last + 1) - top[:, None]) > 1
+    other = np.where(summit & apart, estimate, -np.inf)
+    second = other.argmax(axis=1)
+    return top, second, other[rows, second] > estimate[rows, top] - nearly
+
+
+def _again(study: Study, plant: Charged, batch: Batch, hot: Moments, urgent: Moments, few: int, tolerance: float) -> Moments:
+    """March the hottest and the most urgent moments of each point again, at full tolerance; and the most urgent one elsewhere in the batch
+    where it is nearly so."""
+    end = np.where(batch.inside, batch.times, 0.0).max(axis=1)
+    score = _score(urgent, 1)
+    place, best = _best(urgent, score, end.size)
+    away = np.abs(urgent.time - np.where(place >= 0, urgent.time[place], 0.0)[urgent.rows]) > 2.0 * CLOSE * end[urgent.rows]
+    elsewhere = np.where(away & (score > best[urgent.rows] - NEARLY[1]), score, -np.inf)
+    hottest, fastest = _first(hot, _score(hot, 0), 1), np.concatenate([_first(urgent, score, few), _first(urgent, elsewhere, 1)])
     rows, time = (np.concatenate([getattr(hot, of)[hottest], getattr(urgent, of)[fastest]]) for of in ("rows", "time"))
     begin = np.concatenate([hot.begin[hottest], urgent.begin[fastest]])
     _, once = np.unique(np.stack([rows, time]), axis=1, return_index=True)
