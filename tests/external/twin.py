@@ -20,10 +20,9 @@ CALLS = 400_000  # evaluations of one march; a twin that needs more is stuck
 
 @dataclasses.dataclass
 class Lines:
-    """A march: pieces (start, end, right-hand side, dense state); end (s)."""
+    """A march: pieces (start, end, right-hand side, dense state)."""
 
     pieces: list[tuple[float, float, Callable, Callable]]
-    batch_end: float = np.nan
 
     def at(self, t: float, last: bool = False) -> tuple[Callable, np.ndarray]:
         """Return the right-hand side's `look` and the state at a time; a boundary belongs to what begins there, or `last`."""
@@ -284,8 +283,6 @@ class Twin:
             mode = from_hold if mode == "hold" else "full" if needed > most else "off" if needed < 0 else "hold"
         raise AssertionError("the twin chatters")
 
-    # --- what is read off a march -------------------------------------------------------------------------------------------------
-
     def conversion(self, t, y):
         """Return the conversion of the target species at a time and state."""
         k = self.names.index(self.study.target.species)
@@ -309,8 +306,6 @@ class Twin:
         """Return the heat still to come over the heat of the whole batch."""
         return self.left(y[: len(self.names)])[0] / self.left(self.total)[0]
 
-    # --- failure ------------------------------------------------------------------------------------------------------------------
-
     def _adiabatic(self, t, y, until, running, stop_feeds, wall, events=()):
         """March without cooling from t to `until`; feeds run to `stop_feeds` (absolute, s)."""
         I = len(self.names)
@@ -323,7 +318,6 @@ class Twin:
 
             def hot(t, y):
                 return y[I] - HOT
-
             hot.terminal = True
             done = self._solve(look, start, end, y, "free", (hot, *events))
             pieces.append((start, done.t[-1], look, _Dense(done)))
@@ -367,7 +361,6 @@ class Twin:
 
         def hot(t, y):
             return y[I] - HOT
-
         hot.terminal = True
         done = self._solve(look, 0.0, horizon, y, "free", (hot,))
         lines = Lines([(0.0, done.t[-1], look, _Dense(done))])
