@@ -356,8 +356,7 @@ class Twin:
         y = state.copy()
         if T is not None:
             y[I], horizon = T, 20 * 86400.0
-        look0 = self._right_side(0.0, 0.0, "adiabatic", self.v, ~self.synthesis, False, self.wall, False)
-        look = lambda t, y, mode="free": self._still(look0, V, t, y)  # noqa: E731
+        look = lambda t, y, mode="free": self._still(V, y)  # noqa: E731
 
         def hot(t, y):
             return y[I] - HOT
@@ -373,18 +372,12 @@ class Twin:
             return (horizon, True) if rise < 50.0 else (0.0, False)
         return when, False
 
-    def _still(self, look0, V, t, y):
+    def _still(self, V, y):
         """Evaluate a mixture without feeds at a volume of its own."""
-        fed = self.fed
-        self.fed = lambda t: (None, V)
-        try:
-            I = len(self.names)
-            n, T = y[:I], y[I]
-            r = self.rates(n, V, T, ~self.synthesis)
-            heat = self.heat_of(r, T)
-            return np.concatenate([r @ self.nu, [heat / self.capacity(n, T, self.wall), 0.0, 0.0]]), heat, 0.0, heat
-        finally:
-            self.fed = fed
+        n, T = y[: len(self.names)], y[len(self.names)]
+        r = self.rates(n, V, T, ~self.synthesis)
+        heat = self.heat_of(r, T)
+        return np.concatenate([r @ self.nu, [heat / self.capacity(n, T, self.wall), 0.0, 0.0]]), heat, 0.0, heat
 
     def td24(self, state, V):
         """Return T_D24 (K) of a mixture."""
