@@ -20,10 +20,9 @@ CALLS = 400_000  # evaluations of one march; a twin that needs more is stuck
 
 @dataclasses.dataclass
 class Lines:
-    """A march: pieces (start, end, right-hand side, dense state); end (s)."""
+    """A march: pieces (start, end, right-hand side, dense state)."""
 
     pieces: list[tuple[float, float, Callable, Callable]]
-    batch_end: float = np.nan
 
     def at(self, t: float, last: bool = False) -> tuple[Callable, np.ndarray]:
         """Return the right-hand side's `look` and the state at a time; a boundary belongs to what begins there, or `last`."""
@@ -284,8 +283,6 @@ class Twin:
             mode = from_hold if mode == "hold" else "full" if needed > most else "off" if needed < 0 else "hold"
         raise AssertionError("the twin chatters")
 
-    # --- what is read off a march -------------------------------------------------------------------------------------------------
-
     def conversion(self, t, y):
         """Return the conversion of the target species at a time and state."""
         k = self.names.index(self.study.target.species)
@@ -309,8 +306,6 @@ class Twin:
         """Return the heat still to come over the heat of the whole batch."""
         return self.left(y[: len(self.names)])[0] / self.left(self.total)[0]
 
-    # --- failure ------------------------------------------------------------------------------------------------------------------
-
     def _adiabatic(self, t, y, until, running, stop_feeds, wall, events=()):
         """March without cooling from t to `until`; feeds run to `stop_feeds` (absolute, s)."""
         I = len(self.names)
@@ -323,7 +318,6 @@ class Twin:
 
             def hot(t, y):
                 return y[I] - HOT
-
             hot.terminal = True
             done = self._solve(look, start, end, y, "free", (hot, *events))
             pieces.append((start, done.t[-1], look, _Dense(done)))
@@ -362,12 +356,10 @@ class Twin:
         y = state.copy()
         if T is not None:
             y[I], horizon = T, 20 * 86400.0
-        look0 = self._right_side(0.0, 0.0, "adiabatic", self.v, ~self.synthesis, False, self.wall, False)
-        look = lambda t, y, mode="free": self._still(look0, V, t, y)  # noqa: E731
+        look = lambda t, y, mode="free": self._still(V, y)  # noqa: E731
 
         def hot(t, y):
             return y[I] - HOT
-
         hot.terminal = True
         done = self._solve(look, 0.0, horizon, y, "free", (hot,))
         lines = Lines([(0.0, done.t[-1], look, _Dense(done))])
@@ -380,18 +372,12 @@ class Twin:
             return (horizon, True) if rise < 50.0 else (0.0, False)
         return when, False
 
-    def _still(self, look0, V, t, y):
+    def _still(self, V, y):
         """Evaluate a mixture without feeds at a volume of its own."""
-        fed = self.fed
-        self.fed = lambda t: (None, V)
-        try:
-            I = len(self.names)
-            n, T = y[:I], y[I]
-            r = self.rates(n, V, T, ~self.synthesis)
-            heat = self.heat_of(r, T)
-            return np.concatenate([r @ self.nu, [heat / self.capacity(n, T, self.wall), 0.0, 0.0]]), heat, 0.0, heat
-        finally:
-            self.fed = fed
+        n, T = y[: len(self.names)], y[len(self.names)]
+        r = self.rates(n, V, T, ~self.synthesis)
+        heat = self.heat_of(r, T)
+        return np.concatenate([r @ self.nu, [heat / self.capacity(n, T, self.wall), 0.0, 0.0]]), heat, 0.0, heat
 
     def td24(self, state, V):
         """Return T_D24 (K) of a mixture."""
