@@ -10,7 +10,7 @@ from sweep.base.errors import SweepError
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
 from sweep.plant import adiabatic, rates, states
-from sweep.plant.failure import march_moments
+from sweep.plant.marched import march_moments
 from sweep.plant.onward import march_on
 from sweep.plant.profile import batch_end
 from sweep.plant.recipe import Charged, charge_plant
