@@ -106,13 +106,25 @@ def score_of(marched: Moments, which: int) -> Floats:
 
 
 def best_of(marched: Moments, score: Floats, count: int) -> tuple[np.ndarray, Floats]:
-    """Return for each point the place of its highest score (-1: none) and that score."""
-    order = np.lexsort((-marched.time, score, marched.rows))
+    """Return for each point the place of its highest score, the earliest of equals (-1: none), and that score."""
     place, best = np.full(count, -1), np.full(count, -np.inf)
-    place[marched.rows[order]] = order
-    known = place >= 0
-    best[known] = score[place[known]]
-    return np.where(np.isfinite(best), place, -1), best
+    np.maximum.at(best, marched.rows, score)
+    top = np.flatnonzero((score == best[marched.rows]) & np.isfinite(score))
+    top = top[np.argsort(-marched.time[top], kind="stable")]
+    place[marched.rows[top]] = top
+    return place, best
+
+
+def summits_of(marched: Moments, score: Floats) -> np.ndarray:
+    """Return which moments (M,) no neighbour in time of their own point exceeds."""
+    order = np.lexsort((marched.time, marched.rows))
+    rows, ordered = marched.rows[order], score[order]
+    same = rows[1:] == rows[:-1]
+    before, after = np.full(rows.size, -np.inf), np.full(rows.size, -np.inf)
+    before[1:][same], after[:-1][same] = ordered[:-1][same], ordered[1:][same]
+    found = np.zeros(rows.size, dtype=bool)
+    found[order] = (ordered >= before) & (ordered >= after)
+    return found
 
 
 def first_of(marched: Moments, score: Floats, few: int) -> np.ndarray:

@@ -4,6 +4,7 @@ The estimates decide only which moments are marched; every figure that is report
 N points, K times, R rows of state, I species.
 """
 
+import itertools
 from collections.abc import Callable
 
 import numpy as np
@@ -69,6 +70,26 @@ def estimates(study: Study, plant: Charged, rows: np.ndarray, times: Floats, sta
     found = [T]
     if purposes(study, "decomposition"):
         found.append(log_urgency(study, plant, rows, T, moles, volume))
+    return found
+
+
+def kinks(study: Study, plant: Charged, batch: Batch) -> list[tuple[np.ndarray, np.ndarray, Floats]]:
+    """Return where the reactant that runs out first in a synthesis reaction changes: points (M,), the sample before (M,), time (M,) s.
+
+    What two reactants are short of each other is untouched by their own reaction, so it moves with the feeds, evenly.
+    """
+    rows, index = np.arange(batch.times.shape[0]), {s.name: i for i, s in enumerate(study.species)}
+    moles = states.amounts_at(plant, rows, np.nan_to_num(batch.states, nan=300.0), batch.times)
+    found = []
+    for j in purposes(study, "synthesis"):
+        used = [(index[s], -n) for s, n in study.reactions[j].stoichiometry.items() if n < 0.0]
+        for (a, nu_a), (b, nu_b) in itertools.combinations(used, 2):
+            short = moles[:, :, a] / nu_a - moles[:, :, b] / nu_b
+            crosses = (short[:, :-1] * short[:, 1:] < 0.0) & batch.inside[:, :-1] & batch.inside[:, 1:]
+            at, before = np.nonzero(crosses)
+            low, high = short[at, before], short[at, before + 1]
+            start, stop = batch.times[at, before], batch.times[at, before + 1]
+            found.append((at, before, start + (stop - start) * low / (low - high)))
     return found
 
 

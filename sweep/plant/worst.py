@@ -8,7 +8,7 @@ from dataclasses import replace
 import numpy as np
 
 from sweep.plant import adiabatic, moments
-from sweep.plant.marched import Moments, best_of, decompose, first_of, march_grid, march_moments, neighbours, score_at, score_of
+from sweep.plant.marched import Moments, best_of, decompose, first_of, march_grid, march_moments, neighbours, score_at, score_of, summits_of
 from sweep.plant.onward import states_at
 from sweep.plant.recipe import Charged
 from sweep.plant.samples import Batch
@@ -35,7 +35,8 @@ def worst_moments(study: Study, plant: Charged, batch: Batch, tolerance: float) 
     found = [np.where(batch.inside, e, -np.inf) for e in moments.estimates(study, plant, rows, batch.times, batch.states)]
     astray = autocatalytic or may_mislead(study)
     worth, few = (np.inf, FIRST) if astray else (NONE, 1)
-    marched = _march_samples(study, plant, batch, rough, astray, autocatalytic, found)
+    rougher = rough if astray else min(100.0 * tolerance, 1e-4)
+    marched = _march_samples(study, plant, batch, rougher, astray, autocatalytic, found)
     marched = marched.joined(_march_tops(study, plant, batch, rough, tolerance, found, worth))
     hot = urgent = _narrowed_twice(study, plant, batch, marched, 0, rough, NONE)
     if astray:  # marches alone tell: what was not marched to its maximum rate is slower
@@ -60,13 +61,12 @@ def _march_samples(
 ) -> Moments:
     """March the failure at samples of the batches, and the decomposition where it may be the fastest of its batch.
 
-    At all samples where estimates may go astray; else at the summits of the estimates `found`, their neighbours, and, where reactions
-    compete, at every other sample. The closed form is shorter than the truth unless the decomposition speeds itself up: what it puts beyond
-    the shortest march is slower.
+    At all samples where estimates may go astray or reactions compete; else where the estimates `found` are highest. The closed form is
+    shorter than the truth unless the decomposition speeds itself up: what it puts beyond the shortest march is slower.
     """
     wanted = batch.inside.copy()
-    if not astray:
-        wanted &= _suspicious(batch, found, len(adiabatic.purposes(study, "synthesis")) > 1)
+    if not astray and len(adiabatic.purposes(study, "synthesis")) < 2:
+        wanted &= _suspicious(batch, found)
     rows, columns = np.nonzero(wanted)
     marched = march_moments(study, plant, rows, batch.times[rows, columns], batch.states[rows, columns], rough, LITTLE)
     fastest = -np.log(plant.values.get("failure.horizon"))
@@ -75,14 +75,13 @@ def _march_samples(
     return decompose(study, plant, marched, np.isinf(marched.tmr) & (autocatalytic | (marched.urgency > fastest[rows] - WORTH)), rough)
 
 
-def _suspicious(batch: Batch, found: list[Floats], competing: bool) -> np.ndarray:
+def _suspicious(batch: Batch, found: list[Floats]) -> np.ndarray:
     """Return which samples (N, K) the estimates make worth a march: the top of each in each stretch, its neighbours, the ends."""
     count = batch.times.shape[0]
     rows, last = np.arange(count), np.maximum(batch.inside.sum(axis=1) - 1, 0)
     end = batch.times[rows, last]
     stretch = np.minimum((batch.times / np.where(end > 0.0, end, 1.0)[:, None] * WINDOWS).astype(int), WINDOWS - 1)
     wanted = np.zeros_like(batch.inside)
-    wanted[:, ::2] = competing
     wanted[rows, last] = True
     for e in found:
         top = e.argmax(axis=1)
@@ -95,7 +94,7 @@ def _suspicious(batch: Batch, found: list[Floats], competing: bool) -> np.ndarra
 
 def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolerance: float, found: list[Floats], worth: float) -> Moments:
     """March the failures between the samples where the estimates `found` are highest, and where they bend; and those at a second summit that
-    is nearly as high."""
+    is nearly as high; and where the reactant that runs out first changes, for there the curves have a kink."""
     every, times, states_there = [np.zeros(0, dtype=int)], [np.zeros(0)], [np.zeros((0, batch.states.shape[2]))]
     for which, estimate in enumerate(found):
         top, second, near = _summits(estimate, NEARLY[which])
@@ -105,6 +104,11 @@ def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolera
                 every.append(np.repeat(rows, time.shape[1]))
                 times.append(time.ravel())
                 states_there.append(state.reshape(-1, state.shape[2]))
+    for rows, before, time in moments.kinks(study, plant, batch):
+        state = states_at(plant, rows, batch.times[rows, before], batch.states[rows, before], time[:, None], tolerance)
+        every.append(rows)
+        times.append(time)
+        states_there.append(state[:, 0])
     return march_grid(study, plant, np.concatenate(every), np.concatenate(times)[:, None], np.concatenate(states_there)[:, None], rough, worth)
 
 
@@ -138,21 +142,28 @@ def _estimate(study: Study, plant: Charged, which: int) -> moments.Estimate:
 def _narrowed_twice(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, rough: float, worth: float) -> Moments:
     """Narrow each point's worst moment, and the worst one elsewhere in the batch where it is nearly so."""
     first = _narrowed(study, plant, batch, marched, which, rough, worth)
-    near = np.isfinite(_elsewhere(batch, first, which))
-    if not near.any():
+    summit = _elsewhere(batch, first, which)
+    some = np.unique(first.rows[np.isfinite(summit)])
+    if not some.size:
         return first
-    second = Moments(*(getattr(first, name)[near] for name in Moments.__dataclass_fields__))
+    place, _ = best_of(first, summit, batch.times.shape[0])
+    top = first.time[place]
+    own, _ = best_of(first, score_of(first, which), batch.times.shape[0])
+    split = 0.5 * (top + first.time[own])  # what lies on the second summit's side of the middle belongs to it
+    side = np.where(top > first.time[own], 1.0, -1.0)
+    mine = np.isin(first.rows, some) & ((first.time - split[first.rows]) * side[first.rows] > 0.0)
+    second = Moments(*(getattr(first, name)[mine] for name in Moments.__dataclass_fields__))
     return first.joined(_narrowed(study, plant, batch, second, which, rough, worth))
 
 
 def _elsewhere(batch: Batch, marched: Moments, which: int) -> Floats:
-    """Return the score (M,) of moments away from their point's worst one but nearly as bad; -inf for the others."""
+    """Return the score (M,) of summits away from their point's worst moment but nearly as bad; -inf for all else."""
     end = np.where(batch.inside, batch.times, 0.0).max(axis=1)
     score = score_of(marched, which)
     place, best = best_of(marched, score, end.size)
     middle = np.where(place >= 0, marched.time[place], 0.0) if marched.time.size else np.zeros(end.size)
     away = np.abs(marched.time - middle[marched.rows]) > 3.0 * CLOSE * end[marched.rows]
-    return np.where(away & (score > best[marched.rows] - NEARLY[which]), score, -np.inf)
+    return np.where(away & summits_of(marched, score) & (score > best[marched.rows] - NEARLY[which]), score, -np.inf)
 
 
 def _narrowed(study: Study, plant: Charged, batch: Batch, marched: Moments, which: int, rough: float, worth: float) -> Moments:
