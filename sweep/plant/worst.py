@@ -146,12 +146,12 @@ def _narrowed_twice(study: Study, plant: Charged, batch: Batch, marched: Moments
     some = np.unique(first.rows[np.isfinite(summit)])
     if not some.size:
         return first
-    place, _ = best_of(first, summit, batch.times.shape[0])
-    top = first.time[place]
-    own, _ = best_of(first, score_of(first, which), batch.times.shape[0])
-    split = 0.5 * (top + first.time[own])  # what lies on the second summit's side of the middle belongs to it
-    side = np.where(top > first.time[own], 1.0, -1.0)
-    mine = np.isin(first.rows, some) & ((first.time - split[first.rows]) * side[first.rows] > 0.0)
+    score, count = score_of(first, which), batch.times.shape[0]
+    top, own = (first.time[best_of(first, of, count)[0]] for of in (summit, score))
+    away = (first.time - own[first.rows]) * np.sign(top - own)[first.rows]  # from the worst moment towards the second summit
+    between = np.isin(first.rows, some) & (away > 0.0) & (away < np.abs(top - own)[first.rows])
+    valley = first.time[best_of(first, np.where(between, -score, -np.inf), count)[0]]
+    mine = np.isin(first.rows, some) & (away > 0.0) & (away >= np.abs(valley - own)[first.rows])
     second = Moments(*(getattr(first, name)[mine] for name in Moments.__dataclass_fields__))
     return first.joined(_narrowed(study, plant, batch, second, which, rough, worth))
 
