@@ -60,16 +60,27 @@ class SetPoint:
             })  # fmt: skip
         return lines
 
+    def inputs(self) -> dict[str, dict[str, Any]]:
+        """Return what the point sets, SI and in the study's own unit: every variable, then the paths that were set by themselves.
+
+        A path takes its variable's place where the variable sets it alone.
+        """
+        study, found = self.study, {}
+        own = {v.name: v.unit for v in study.variables}
+        alone = {v.sets[0]: v.name for v in study.variables if v.name not in self.point}
+        place = {name: k for k, name in enumerate(own)}
+        for given in sorted(self.point, key=lambda given: place.get(alone.get(given, given), len(place))):
+            name, path = alone.get(given, given), study.paths_of(given)[0]
+            unit = si_unit(study.dimensions[path])
+            written = show(self.point[given], study.units.get(path) or own.get(name) or unit)
+            found[name] = {"value": self.point[given], "unit": unit, "written": written}
+        return found
+
     def summary(self) -> dict[str, Any]:
         """Return the blocks set_point, limits and nearest_limit."""
         study = self.study
-        inputs = {}
-        for v in study.variables:
-            unit = si_unit(study.dimensions[v.sets[0]])
-            own = study.units.get(v.sets[0]) or v.unit or unit
-            inputs[v.name] = {"value": self.point[v.name], "unit": unit, "written": show(self.point[v.name], own)}
         found = {r.column: _plain(self.row[r.column]) for r in responses(study) if r.column not in ("status", "reason")}
-        block = {"inputs": inputs, "status": str(self.row["status"]), "reason": str(self.row["reason"]), "responses": found, "holds": self.holds}
+        block = {"inputs": self.inputs(), "status": str(self.row["status"]), "reason": str(self.row["reason"]), "responses": found, "holds": self.holds}
         return {"set_point": block, "limits": self.limit_lines(), "nearest_limit": self.nearest()}
 
     def tables(self) -> dict[str, pd.DataFrame]:

@@ -45,9 +45,8 @@ def tell_batch(found: OneBatch, terminal: Terminal) -> None:
     row, study = found.seen.row, found.study
     terminal.title(study.title)
     terminal.heading("Batch")
-    for variable in study.variables:
-        if variable.name in found.seen.point:
-            terminal.item(f"{variable.name}: {show(found.seen.point[variable.name], study.units.get(variable.sets[0]) or variable.unit)}")
+    for name, given in found.seen.inputs().items():
+        terminal.item(f"{name}: {given['written']}")
     terminal.item(f"status: {row['status']}" + (f" ({row['reason']})" if row["reason"] else ""))
     terminal.item(f"highest temperature: {in_words(row['max_temperature_K'], 'K')} after {duration(float(row['time_of_max_temperature_s']))}")
     if study.target is not None:

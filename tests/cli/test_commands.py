@@ -8,6 +8,7 @@ import subprocess
 import sys
 import time
 
+import pandas as pd
 import pytest
 
 from sweep.cli.main import main
@@ -62,6 +63,11 @@ def test_new_check_and_never_overwrite(here, capsys):
     assert text == (here / "start.toml").read_text()
 
 
+def test_new_says_what_to_type_for_a_name_with_spaces(here, capsys):
+    assert 0 == main(["new", "my study.toml"])
+    assert "sweep check 'my study.toml', then sweep run 'my study.toml'" in capsys.readouterr().out
+
+
 def test_new_where_there_is_no_folder(here, capsys):
     assert 4 == main(["new", "none/start.toml"])
     assert "is no folder" in capsys.readouterr().err
@@ -114,6 +120,23 @@ def test_batch_takes_a_path_of_the_study(here, capsys):
     assert 0 == main(["batch", "small.toml", "--no-figures", "--set", "vessel.U=500 W/m2/K", "--out", "elsewhere"])
     assert (here / "elsewhere" / "batch" / "summary.json").exists()
     capsys.readouterr()
+
+
+def test_batch_takes_a_path_that_a_variable_sets_and_says_what_was_set(here, capsys):
+    found = []
+    for setting in ("dose=1 mol/L", "recipe.charge.concentration.A=1 mol/L"):
+        main(["batch", "small.toml", "--no-figures", "--set", setting, "--set", "vessel.U=400 W/m2/K"])
+        told = capsys.readouterr().out
+        assert re.search(r"^  dose: 1 mol/L$", told, re.M)
+        assert re.search(r"^  vessel\.U: 400 W/m2/K$", told, re.M)
+        folder = here / "results" / "small" / "batch"
+        summary = json.loads((folder / "summary.json").read_text())
+        assert {"value": pytest.approx(1000.0), "unit": "mol/m^3", "written": "1 mol/L"} == summary["set_point"]["inputs"]["dose"]
+        inputs = pd.read_csv(folder / "analyses" / "inputs.csv").set_index("path")
+        assert ("1 mol/L", pytest.approx(1000.0)) == tuple(inputs.loc["recipe.charge.concentration.A", ["written", "value_si"]])
+        assert ("400 W/m2/K", 400.0) == tuple(inputs.loc["vessel.U", ["written", "value_si"]])
+        found.append(summary["set_point"])
+    assert found[0] == found[1]
 
 
 @pytest.mark.parametrize(
