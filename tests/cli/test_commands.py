@@ -164,6 +164,34 @@ def test_batch_refuses_two_settings_of_one_thing(here, capsys):
     assert "set twice" in capsys.readouterr().err
 
 
+AXES = 'axes = ["dose", "start"]'
+
+
+@pytest.mark.parametrize(
+    ("changes", "said", "unsaid"),
+    [
+        ({AXES: AXES}, ["over dose and start: every limit holds in", "dose up: 0."], ["the point itself"]),
+        ({'at_most = "62 degC"': 'at_most = "41 degC"'}, ["the point itself does not hold every limit"], ["no edge within", " to the edge"]),
+        ({"conversion = 0.9": "conversion = 0.99999", '"24 h"': '"6 h"', "[limits]": '[limits]\ntime_to_target = { at_most = "9 h" }'},
+         ["target not reached", "no value: never reached", "nearest limit: time_to_target, which has no value at the set-point"],
+         ["margin -\n", "no value: time_to_target"]),
+    ],
+    ids=["inside", "outside", "never reached"],
+)  # fmt: skip
+def test_answers_are_said_for_what_they_are(here, capsys, changes, said, unsaid):
+    text = (here / "small.toml").read_text()
+    for old, new in changes.items():
+        text = text.replace(old, new)
+    (here / "small.toml").write_text(text)
+    main(["batch", "small.toml", "--no-figures"])
+    main(["run", "small.toml", "--workers", "1"])
+    told = capsys.readouterr().out
+    assert [] == [words for words in said if words not in told], told
+    assert [] == [words for words in unsaid if words in told], told
+    main(["run", "small.toml", "--workers", "1"])
+    assert capsys.readouterr().out in told  # the same words from kept results
+
+
 def test_run_from_study_to_report(here, capsys):
     assert 0 == main(["run", "small.toml", "--workers", "1"])
     told = capsys.readouterr()
