@@ -64,8 +64,9 @@ def _check(options: argparse.Namespace, terminal: Terminal) -> int:
     from sweep.workflow.check import told
 
     study = read_study(options.study)
+    parts = told(study)  # before anything is printed: a list of points may have faults of its own
     terminal.title(study.title)
-    for heading, lines in told(study):
+    for heading, lines in parts:
         terminal.heading(heading)
         for line in lines:
             terminal.item(line)

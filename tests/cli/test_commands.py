@@ -83,6 +83,29 @@ def test_check_writes_nothing_and_speaks_the_studys_units(here, capsys):
     assert "points: 16 (factorial)" in told
 
 
+def test_check_says_batch_events_and_slice_in_the_units_written(here, capsys):
+    more = '''
+[[events]]
+time = "90 min"
+set = { "cooling.temperature" = "30 degC", "vessel.U" = "250 W/m2/K" }
+[[events]]
+time = "1 h"
+set = { "cooling.kind" = "adiabatic" }
+'''
+    text = SMALL.replace("[window]", 'third = { sets = "vessel.area", from = "3 m2", to = "6 m2", levels = 2 }\n[window]\nat = { third = "4 m2" }')
+    (here / "more.toml").write_text(text + more)
+    assert 0 == main(["check", "more.toml"])
+    told = capsys.readouterr().out
+    for line in ("ends after 6 h", "turnaround: 2 h", "at 1 h: cooling.kind = adiabatic", "window over dose and start, at third 4 m2",
+                 "at 90 min: cooling.temperature = 30 degC, vessel.U = 250 W/m2/K", "batch time, sought up to 24 h"):  # fmt: skip
+        assert f"  {line}\n" in told
+    (here / "more.toml").write_text(text.replace('batch_time = "6 h"', 'batch_time = "to target"').replace('turnaround = "2 h"', ""))
+    assert 0 == main(["check", "more.toml"])
+    told = capsys.readouterr().out
+    assert "ends when the target is reached, never before its last feed ends; at 24 h where it is not reached" in told
+    assert "turnaround: none" in told
+
+
 def test_check_of_a_faulty_study_lists_every_fault(here, capsys):
     text = SMALL.replace('batch_time = "6 h"', 'batch_time = "6 K"').replace('product = "R"', 'product = "Q"')
     (here / "bad.toml").write_text(text)
@@ -226,6 +249,20 @@ def test_run_of_a_changed_study_is_refused_and_fresh_moves_aside(here, capsys):
     assert "--fresh" in capsys.readouterr().err
     assert 0 == main(["run", "small.toml", "--quiet", "--fresh"])
     assert (here / "results" / "small.1" / "summary.json").exists()
+
+
+def test_list_that_is_missing_or_has_changed(here, capsys):
+    bare = SMALL[: SMALL.index("[window]")] + SMALL[SMALL.index("[failure]") :]
+    (here / "listed.toml").write_text(bare + '\n[plan]\nkind = "list"\nfile = "points.csv"\n')
+    assert 2 == main(["check", "listed.toml"])
+    told = capsys.readouterr()
+    assert ("", "plan.file: points.csv cannot be read: No such file or directory\n") == tuple(told)
+    (here / "points.csv").write_text("dose [mol/L]\n1\n2\n")
+    assert 0 == main(["run", "listed.toml", "--workers", "1"])
+    (here / "points.csv").write_text("dose [mol/L]\n1\n2.1\n")
+    capsys.readouterr()
+    assert 2 == main(["run", "listed.toml", "--workers", "1"])
+    assert re.search(r"another plan \(list_digest: [0-9a-f]{12} then, [0-9a-f]{12} now\); --fresh", capsys.readouterr().err)
 
 
 def test_report_of_no_results(here, capsys):
