@@ -99,7 +99,8 @@ def inputs(study: Study, point: Mapping[str, float] | None = None) -> pd.DataFra
         for path in study.paths_of(name):
             if value != study.values[path]:
                 said = show(value, study.units.get(path) or si_unit(study.dimensions[path]))
-                table.loc[table["path"] == path, ["written", "value_si", "source"]] = [said, value, f"set for this batch: {name}"]
+                for column, cell in (("written", said), ("value_si", value), ("source", f"set for this batch: {name}")):
+                    table[column] = table[column].mask(table["path"] == path, cell)
     return table
 
 
