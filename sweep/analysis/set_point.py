@@ -34,18 +34,26 @@ class SetPoint:
         return bool((self.margin >= 0.0).all())
 
     def nearest(self) -> dict[str, Any] | None:
-        """Return the limit with the smallest margin, counted in its response's interquartile range over the plan (in its bound without one)."""
+        """Return the limit with the smallest margin, counted in its response's interquartile range over the plan (in its bound without one).
+
+        A batch that runs to its target meets the target by being ended there: that margin of nothing is the nearest only where there is no other.
+        """
         scale = np.where(np.isfinite(self.spread) & (self.spread > 0.0), self.spread, [max(abs(r.bound), 1e-300) for r in self.rows])
         share = np.where(np.isnan(self.margin), -np.inf, self.margin / scale) if self.rows else np.zeros(0)
         if not self.rows:
             return None
-        k = int(share.argmin())
+        others = np.array([not self._met_by_ending(row, margin) for row, margin in zip(self.rows, self.margin, strict=True)])
+        k = int(np.where(others | ~others.any(), share, np.inf).argmin())
         of = "the interquartile range of this response over the plan" if np.isfinite(self.spread[k]) and self.spread[k] > 0.0 else "its bound"
         row = self.rows[k]
         return {
             "name": row.name, "sense": row.sense, "label": row.label, "margin": _number(self.margin[k]), "unit": row.unit,
             "share": _number(share[k]), "of": of,
         }  # fmt: skip
+
+    def _met_by_ending(self, row: LimitRow, margin: float) -> bool:
+        target = self.study.values.get("target.conversion")
+        return self.study.batch_to_target and margin >= 0.0 and (row.response, row.sense, row.bound) == ("conversion", "at_least", target)
 
     def limit_lines(self) -> list[dict[str, Any]]:
         """Return each limit with its value, margin, and whether it holds."""
@@ -60,16 +68,28 @@ class SetPoint:
             })  # fmt: skip
         return lines
 
+    def inputs(self) -> dict[str, dict[str, Any]]:
+        """Return what the point sets, SI and in the study's own unit: every variable, then the paths that were set by themselves.
+
+        A path takes its variable's place where the variable sets it alone.
+        """
+        study, found = self.study, dict[str, dict[str, Any]]()
+        own = {v.name: v.unit for v in study.variables}
+        names = [v.name if v.name in self.point else v.sets[0] for v in study.variables]
+        alone = {v.sets[0]: v.name for v in study.variables}
+        for given in (*(name for name in names if name in self.point), *(name for name in self.point if name not in names)):
+            name, path = alone.get(given, given), study.paths_of(given)[0]
+            unit = si_unit(study.dimensions[path])
+            written = show(self.point[given], study.units.get(path) or own.get(name) or unit)
+            found[name] = {"value": self.point[given], "unit": unit, "written": written}
+        return found
+
     def summary(self) -> dict[str, Any]:
         """Return the blocks set_point, limits and nearest_limit."""
         study = self.study
-        inputs = {}
-        for v in study.variables:
-            unit = si_unit(study.dimensions[v.sets[0]])
-            own = study.units.get(v.sets[0]) or v.unit or unit
-            inputs[v.name] = {"value": self.point[v.name], "unit": unit, "written": show(self.point[v.name], own)}
         found = {r.column: _plain(self.row[r.column]) for r in responses(study) if r.column not in ("status", "reason")}
-        block = {"inputs": inputs, "status": str(self.row["status"]), "reason": str(self.row["reason"]), "responses": found, "holds": self.holds}
+        status, reason = str(self.row["status"]), str(self.row["reason"])
+        block = {"inputs": self.inputs(), "status": status, "reason": reason, "responses": found, "holds": self.holds}
         return {"set_point": block, "limits": self.limit_lines(), "nearest_limit": self.nearest()}
 
     def tables(self) -> dict[str, pd.DataFrame]:

@@ -1,12 +1,12 @@
 """What the figures rest on, in words: inputs as written with their sources, assumptions, what was not assessed, cautions."""
 
 import tomllib
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from typing import Any
 
 import pandas as pd
 
-from sweep.base.units import si_unit
+from sweep.base.units import show, si_unit
 from sweep.study.model import Study
 
 CAUTIONS = (
@@ -89,8 +89,22 @@ def _flat(value: Any, path: str) -> Iterator[tuple[str, Any]]:
         yield path, value
 
 
-def inputs(study: Study) -> pd.DataFrame:
-    """Return every input as it is written, with its SI value where it is a quantity, and its source where one is named."""
+def inputs(study: Study, point: Mapping[str, float] | None = None) -> pd.DataFrame:
+    """Return every input as it is written, with its SI value where it is a quantity, and its source where one is named.
+
+    point: name (variable or path) -> SI of the batch that was marched; what it sets otherwise than the study stands in the study's place.
+    """
+    table = _written(study)
+    for name, value in (point or {}).items():
+        for path in study.paths_of(name):
+            if value != study.values[path]:
+                said = show(value, study.units.get(path) or si_unit(study.dimensions[path]))
+                for column, cell in (("written", said), ("value_si", value), ("source", f"set for this batch: {name}")):
+                    table[column] = table[column].mask(table["path"] == path, cell)
+    return table
+
+
+def _written(study: Study) -> pd.DataFrame:
     document = tomllib.loads(study.text)
     sources = {f"reactions.{r.name}": r.source for r in study.reactions if r.source}
     rows = []

@@ -1,6 +1,7 @@
 """The command line: arguments, exit statuses, and what is printed. Heavy imports wait until a command needs them."""
 
 import argparse
+import shlex
 import signal
 import sys
 from collections.abc import Callable, Sequence
@@ -53,7 +54,8 @@ def _new(options: argparse.Namespace, terminal: Terminal) -> int:
     from sweep.workflow.starter import new_study
 
     path = new_study(Path(options.file))
-    terminal.line(f"{path} written. Next: sweep check {path}, then sweep run {path}")
+    typed = shlex.quote(str(path)) if sys.platform != "win32" else f'"{path}"'
+    terminal.line(f"{path} written. Next: sweep check {typed}, then sweep run {typed}")
     return DONE
 
 
@@ -62,8 +64,9 @@ def _check(options: argparse.Namespace, terminal: Terminal) -> int:
     from sweep.workflow.check import told
 
     study = read_study(options.study)
+    parts = told(study)  # before anything is printed: a list of points may have faults of its own
     terminal.title(study.title)
-    for heading, lines in told(study):
+    for heading, lines in parts:
         terminal.heading(heading)
         for line in lines:
             terminal.item(line)

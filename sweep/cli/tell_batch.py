@@ -28,14 +28,15 @@ def difference(value: float | None, unit: str, own: str | None = None) -> str:
     return f"{from_si(value, own):+.4g} {own}" if own else f"{value:+.4g}"
 
 
-def limit_sentence(line: dict[str, Any], own: str | None = None) -> str:
-    """Return one limit with its value and margin as a sentence."""
+def limit_sentence(line: dict[str, Any], own: str | None = None, at_least: bool = False) -> str:
+    """Return one limit with its value and margin as a sentence; `at_least`: the value is only a lower bound."""
     verdict = "holds" if line["holds"] else "DOES NOT HOLD"
     bound = in_words(line["bound"], line["unit"], own)
     if line["value"] is None:
-        return f"{line['name']} {_SENSE[line['sense']]} {bound}: {verdict}, no value: {line['reason']}"
+        return f"{line['name']} {_SENSE[line['sense']]} {bound}: {verdict}, no value: {line['reason'].removeprefix(line['name'] + ': ')}"
+    least = "at least " if at_least else ""
     return (
-        f"{line['name']} {_SENSE[line['sense']]} {bound}: {verdict}, {in_words(line['value'], line['unit'], own)}, "
+        f"{line['name']} {_SENSE[line['sense']]} {bound}: {verdict}, {least}{in_words(line['value'], line['unit'], own)}, "
         f"margin {difference(line['margin'], line['unit'], own)}"
     )
 
@@ -45,19 +46,24 @@ def tell_batch(found: OneBatch, terminal: Terminal) -> None:
     row, study = found.seen.row, found.study
     terminal.title(study.title)
     terminal.heading("Batch")
-    for variable in study.variables:
-        if variable.name in found.seen.point:
-            terminal.item(f"{variable.name}: {show(found.seen.point[variable.name], study.units.get(variable.sets[0]) or variable.unit)}")
+    for name, given in found.seen.inputs().items():
+        terminal.item(f"{name}: {given['written']}")
     terminal.item(f"status: {row['status']}" + (f" ({row['reason']})" if row["reason"] else ""))
     terminal.item(f"highest temperature: {in_words(row['max_temperature_K'], 'K')} after {duration(float(row['time_of_max_temperature_s']))}")
     if study.target is not None:
-        terminal.item(f"conversion at the end: {row['conversion']:.6g}; target reached after {in_words(row['time_to_target_s'], 's')}")
-    terminal.item(f"largest cooling duty: {in_words(row['cooling_duty_W'], 'W')}; largest accumulation: {in_words(row['accumulation'], '1')}")
+        reached = f"target reached after {in_words(row['time_to_target_s'], 's')}" if row["time_to_target_s"] > 0.0 else "target not reached"
+        terminal.item(f"conversion at the end: {in_words(row['conversion'], '1')}; {reached}")
+    largest = (("cooling duty", "cooling_duty_W", "W"), ("accumulation", "accumulation", "1"))
+    known = [f"largest {name}: {in_words(row[column], unit)}" for name, column, unit in largest if not math.isnan(row[column])]
+    if known:
+        terminal.item("; ".join(known))
     if found.failed is not None:
         tell_failure(found.failed.summary(), terminal)
     terminal.heading("Limits")
     for line in found.seen.limit_lines():
-        terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}")))
+        censored = f"{line['name']}_censored"
+        at_least = censored in row and bool(row[censored] == True)  # noqa: E712 - a null is no bound
+        terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}"), at_least))
     if not found.seen.rows:
         terminal.item("none are written")
     terminal.line("")
@@ -72,7 +78,7 @@ def tell_failure(block: dict[str, Any], terminal: Terminal) -> None:
     if block["tmr_ad_s"] is None:
         terminal.item("time to maximum rate, T_D24: not assessed")
     else:
-        bound = "more than " if block["tmr_ad_censored"] else ""
+        bound = "at least " if block["tmr_ad_censored"] else ""
         terminal.item(f"shortest adiabatic time to maximum rate: {bound}{in_words(block['tmr_ad_s'], 's')}")
         above = "above " if block["td24_censored"] else ""
         terminal.item(f"T_D24: {above}{in_words(block['td24_K'], 'K')}")

@@ -2,6 +2,7 @@
 
 from typing import Any
 
+from sweep.base.units import show
 from sweep.cli.tell_batch import difference, in_words, limit_sentence, tell_failure
 from sweep.cli.terminal import Terminal
 from sweep.study.model import Study
@@ -17,19 +18,27 @@ def tell_run(found: Run, study: Study, terminal: Terminal) -> None:
     counts = ", ".join(f"{points[status]:,} {status}" for status in ("done", "runaway", "failed"))
     terminal.item(f"{points['planned']:,} points ({points['plan']}): {counts}{held}")
     terminal.heading("Set-point")
-    for name, given in summary["set_point"]["inputs"].items():
-        terminal.item(f"{name}: {given['written']}")
+    inputs = summary["set_point"]["inputs"]
+    for variable in study.variables:  # in the study's order, whether the block was computed now or is kept from an earlier run
+        terminal.item(f"{variable.name}: {inputs[variable.name]['written']}")
     for line in summary["limits"]:
-        terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}")))
-    nearest = summary["nearest_limit"]
-    if nearest is not None:
-        terminal.item(f"nearest limit: {nearest['name']}, margin {difference(nearest['margin'], nearest['unit'])}")
+        bound = bool(summary["set_point"]["responses"].get(f"{line['name']}_censored"))
+        terminal.item(limit_sentence(line, study.units.get(f"limits.{line['name']}.{line['sense']}"), bound))
+    if summary["nearest_limit"] is not None:
+        terminal.item(_nearest(summary["nearest_limit"], study))
     _tell_batch_time(summary["batch_time"], terminal)
     _tell_window(summary["window"], study, terminal)
     _tell_failure(summary["failure"], terminal)
     terminal.line("")
     terminal.line(f"report: {found.folder / 'report.html'}")
     terminal.line("This screens; it does not approve. Figures rest on the kinetics given; have hazards tested and reviewed by qualified people.")
+
+
+def _nearest(block: dict[str, Any], study: Study) -> str:
+    if block["margin"] is None:
+        return f"nearest limit: {block['name']}, which has no value at the set-point"
+    own = study.units.get(f"limits.{block['name']}.{block['sense']}")
+    return f"nearest limit: {block['name']}, margin {difference(block['margin'], block['unit'], own)}"
 
 
 def _tell_batch_time(block: dict[str, Any], terminal: Terminal) -> None:
@@ -49,8 +58,12 @@ def _tell_window(block: dict[str, Any], study: Study, terminal: Terminal) -> Non
     if "not_assessed" in block:
         terminal.item(f"not assessed: {block['not_assessed']}")
         return
-    terminal.item(f"over {' and '.join(block['axes'])}: every limit holds in {100.0 * block['safe_share']:.3g} % of the area")
-    units = {v.name: v.unit for v in study.variables}
+    units = {v.name: study.units.get(v.sets[0]) or v.unit for v in study.variables}
+    fixed = ", ".join(f"{name} {show(value, units[name])}" for name, value in block["at"].items())
+    at = f", at {fixed}" if fixed else ""
+    terminal.item(f"over {' and '.join(block['axes'])}{at}: every limit holds in {100.0 * block['safe_share']:.3g} % of the area")
+    if block["set_point"]["reason"] is not None:
+        terminal.item(f"set-point: {block['set_point']['reason']}")
     for edge in block["set_point"]["distances"]:
         if edge["distance"] is None:
             terminal.item(f"{edge['axis']} {edge['direction']}: no edge within its range")

@@ -40,7 +40,7 @@ def read_list(study: Study, file: Path) -> pd.DataFrame:
         with open(file, newline="", encoding="utf-8-sig") as text:
             lines = [(number, line) for number, line in enumerate(csv.reader(text), 1) if any(cell.strip() for cell in line)]
     except (OSError, UnicodeDecodeError, csv.Error) as error:
-        raise SweepError(f"plan.file: {file} cannot be read: {error}") from None
+        raise SweepError(f"plan.file: {file} cannot be read: {getattr(error, 'strerror', None) or error}") from None
     if len(lines) < 2:
         raise SweepError(f"plan.file: {file} holds no points; expected a header such as 'dosing_time [h]' and a line a point")
     faults: list[Fault] = []

@@ -35,7 +35,7 @@ def _limit_row(limit: Mapping[str, Any], results: Results) -> tuple[Cell, ...]:
     scale = limit_scale(limit)
     decimals = _decimals(limit, scale)
     value, margin = limit.get("value"), limit.get("margin")
-    reason = str(limit.get("reason") or "")
+    reason = str(limit.get("reason") or "").removeprefix(f"{limit['name']}: ")
     least = "at least " if lower_bound(results, limit["name"]) else ""
     shown = least + scale.text(value, decimals) if value is not None else f"no value{f': {reason}' if reason else ''}"
     bound = f"{SENSES[limit['sense']]} {scale.text(limit['bound'], decimals)}"
@@ -115,13 +115,24 @@ def _nearest(results: Results) -> tuple[str, ...]:
     return margin, f"that is {share(near['share'])} of {of}" if near.get("share") is not None else "it has no value"
 
 
+def held_elsewhere(results: Results) -> list[str]:
+    """Return the variables that the window's slice holds at another value than the set-point does, each with that value."""
+    inputs = results.block("set_point").get("inputs") or {}
+    at = results.block("window").get("at") or {}
+    moved = {name: value for name, value in at.items() if name in inputs and value != inputs[name].get("value")}
+    return [f"{plain(name)} {variable_scale(results, name).text(value)}" for name, value in moved.items()]
+
+
 def _window(results: Results) -> tuple[str, ...]:
     why, window = results.why_not("window"), results.block("window")
     if why:
         return (f"not assessed: {why}",)
     axes = listed([plain(axis) for axis in window.get("axes") or ()])
     inside = "inside" if (window.get("set_point") or {}).get("holds") else "outside"
-    return (f"the set-point lies {inside} the window of {axes}", f"every limit holds in {share(window.get('safe_share'))} of the range of these two")
+    fixed = held_elsewhere(results)
+    slice_ = f" at {listed(fixed)}, where the set-point does not lie" if fixed else ""
+    point = "its place on these axes lies" if fixed else "the set-point lies"
+    return (f"{point} {inside} the window of {axes}{slice_}", f"every limit holds in {share(window.get('safe_share'))} of the range of these two")
 
 
 def _failure(results: Results) -> tuple[str, ...]:

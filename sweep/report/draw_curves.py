@@ -11,6 +11,7 @@ LEFT, RIGHT, BOTTOM, GAP = 0.78, 2.05, 0.55, 0.14  # inches around and between t
 LINE = 0.15  # inches of one line of label text
 ROW = 0.18  # inches of one row of moments
 LABEL = 8.5  # points
+STEADY = 2.0  # K: the least that a panel of temperatures spans
 
 
 def _limits(panel: Panel) -> tuple[float, float]:
@@ -21,6 +22,8 @@ def _limits(panel: Panel) -> tuple[float, float]:
         return low - 0.07 * ((high - low) or 1.0), high + 0.07 * ((high - low) or 1.0)
     if panel.label.endswith("(%)") or panel.label.endswith("(kW)"):
         low = min(low, 0.0)
+    if panel.label.endswith("(°C)") and high - low < STEADY:  # what is held is drawn level: its rounding is no excursion
+        low, high = (low + high - STEADY) / 2, (low + high + STEADY) / 2
     air = 0.07 * ((high - low) or abs(high) or 1.0)
     return (low - air if low < 0.0 or not panel.label.endswith(("(%)", "(kW)")) else 0.0), high + air if panel.top is None else panel.top
 

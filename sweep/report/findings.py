@@ -3,7 +3,7 @@
 from collections.abc import Mapping
 from typing import Any
 
-from sweep.report.answers import limit_scale, responses_table, why_not
+from sweep.report.answers import held_elsewhere, limit_scale, responses_table, why_not
 from sweep.report.blocks import Block, Cell, Section, Table, Words, figure, heads, row
 from sweep.report.display import NONE, PERCENT, conversion, decimals_for, duration, kelvins, number, reach, scale_for, share, temperature
 from sweep.report.prepare_failure import feeds, reach_name
@@ -97,7 +97,8 @@ def window(results: Results, pictures: list[Block]) -> Section:
     axes = " and ".join(plain(axis) for axis in found.get("axes") or ())
     fixed = "; ".join(f"{plain(name)} {variable_scale(results, name).text(value)}" for name, value in (found.get("at") or {}).items())
     lines = [f"Window of {axes}{f', at {fixed}' if fixed else ''}: every limit holds in {share(found.get('safe_share'))} of the range."]
-    lines.append("The set-point lies inside." if inside else "The set-point lies outside: at least one limit does not hold there.")
+    point = "The set-point's place on these axes" if held_elsewhere(results) else "The set-point"
+    lines.append(f"{point} lies inside." if inside else f"{point} lies outside: at least one limit does not hold there.")
     if found.get("pieces") is not None:
         lines.append(pieces(found))
     lines += [resolved(found)] if found.get("resolution") and found.get("marches") else []

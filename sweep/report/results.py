@@ -9,7 +9,7 @@ from typing import Any
 
 import pandas as pd
 
-from sweep.base.errors import SweepError
+from sweep.base.errors import SurroundingsError, SweepError
 
 TABLES = (
     "set_point_profile", "batch_time", "batch_time_map", "window_grid", "window_boundary",
@@ -68,9 +68,9 @@ def _document(path: Path) -> dict[str, Any]:
     except FileNotFoundError:
         raise SweepError(f"{path.parent} is not a results folder: {path.name} is missing") from None
     except (OSError, ValueError) as error:
-        raise SweepError(f"{path} cannot be read: {error}") from error
+        raise SurroundingsError(f"{path} cannot be read: {error}") from error
     if not isinstance(found, dict):
-        raise SweepError(f"{path} cannot be read: it holds no table of answers")
+        raise SurroundingsError(f"{path} cannot be read: it holds no table of answers")
     return found
 
 
@@ -80,7 +80,7 @@ def _table(path: Path) -> pd.DataFrame:
     except pd.errors.EmptyDataError:
         return pd.DataFrame()
     except (OSError, ValueError) as error:
-        raise SweepError(f"{path} cannot be read: {error}") from error
+        raise SurroundingsError(f"{path} cannot be read: {error}") from error
     words = [name for name in table.columns if not pd.api.types.is_numeric_dtype(table[name])]
     for name in words:
         table[name] = table[name].map(_clean)

@@ -153,8 +153,14 @@ def _plan_record(study: Study, plan: Planned) -> dict[str, Any]:
 
 def _changed(before: Any, now: Any) -> str:
     if isinstance(before, dict) and isinstance(now, dict):
-        return ", ".join(f"{key}: {before.get(key)} then, {now.get(key)} now" for key in sorted({*before, *now}) if before.get(key) != now.get(key))
-    return f"digest {str(before)[:12]} then, {str(now)[:12]} now"
+        keys = [key for key in sorted({*before, *now}) if before.get(key) != now.get(key)]
+        return ", ".join(f"{key}: {_short(before.get(key))} then, {_short(now.get(key))} now" for key in keys)
+    return f"digest {_short(before)} then, {_short(now)} now"
+
+
+def _short(value: Any) -> str:
+    """Return a value in words, a digest by its first twelve signs."""
+    return str(value)[:12] if isinstance(value, str) and len(value) == 64 else str(value)
 
 
 def _move_aside(folder: Path) -> None:

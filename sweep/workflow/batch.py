@@ -68,7 +68,7 @@ def batch(
 
 
 def _write(study: Study, seen: SetPoint, failed: CoolingFailure | None, folder: Path) -> None:
-    found = {**seen.tables(), **(failed.tables() if failed else {}), "inputs": statements.inputs(study)}
+    found = {**seen.tables(), **(failed.tables() if failed else {}), "inputs": statements.inputs(study, seen.point)}
     for name, table in found.items():
         write_whole(folder / "analyses" / f"{name}.csv", as_csv(table))
     summary: dict[str, Any] = {

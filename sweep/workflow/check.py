@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from sweep.base.units import show, si_unit
 from sweep.plan import planned
 from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
-from sweep.study.model import Limit, Study, Variable
+from sweep.study.model import Event, Limit, Study, Variable
 
 _SENSE = {"at_most": "at most", "at_least": "at least"}
 
@@ -16,8 +16,9 @@ def told(study: Study) -> list[tuple[str, list[str]]]:
     parts = [
         ("Reactions", [_reaction(study, r) for r in seen.reactions]),
         ("Charge and feeds", [*_charge(study, seen), *(_feed(study, f) for f in seen.feeds)]),
+        ("Batch", list(_batch(study))),
         ("Cooling", list(_cooling(study, seen))),
-        ("Events", [f"at {_in(study, t.time, 's', 'recipe.batch_time')}: {_sets(t.sets)}" for t in study.events]),
+        ("Events", [_event(study, k, event) for k, event in enumerate(study.events)]),
         ("Target", list(_target(study))),
         ("Limits", [_limit(study, limit) for limit in study.limits]),
         ("Variables", [_variable(study, v) for v in study.variables]),
@@ -69,8 +70,24 @@ def _cooling(study: Study, seen: Understood) -> Iterator[str]:
         yield f"it carries at most {show(seen.duty_start, 'kW')}"
 
 
-def _sets(sets: object) -> str:
-    return ", ".join(f"{path} = {value if isinstance(value, str) else f'{value:g} (SI)'}" for path, value in dict(sets).items())  # type: ignore[call-overload]
+def _batch(study: Study) -> Iterator[str]:
+    longest = _written(study, "batch_time.longest")
+    if study.batch_to_target:
+        yield "ends when the target is reached, never before its last feed ends" + (f"; at {longest} where it is not reached" if longest else "")
+    else:
+        yield f"ends after {_written(study, 'recipe.batch_time')}"
+    turnaround = study.values["recipe.turnaround"]
+    yield f"turnaround: {_written(study, 'recipe.turnaround')}" if turnaround > 0.0 else "turnaround: none, so that the cycle is the batch alone"
+
+
+def _written(study: Study, path: str) -> str:
+    """Return a quantity in the unit it was written in; empty where it is not in the study."""
+    return show(study.values[path], study.units[path]) if path in study.values else ""
+
+
+def _event(study: Study, k: int, event: Event) -> str:
+    sets = [f"{path} = {value if isinstance(value, str) else _written(study, f'events.{k}.set.{path}')}" for path, value in event.sets.items()]
+    return f"at {_written(study, f'events.{k}.time')}: {', '.join(sets)}"
 
 
 def _target(study: Study) -> Iterator[str]:
@@ -95,8 +112,11 @@ def _asked(study: Study) -> Iterator[str]:
     plan = planned(study)
     yield f"points: {plan.size:,} ({plan.kind})"
     if study.window is not None:
-        yield f"window over {study.window.axes[0]} and {study.window.axes[1]}"
+        units = {v.name: study.units.get(v.sets[0]) or v.unit for v in study.variables}
+        held = [f"{name} {show(value, units[name])}" for name, value in study.window.at.items()]
+        yield f"window over {study.window.axes[0]} and {study.window.axes[1]}" + (f", at {', '.join(held)}" if held else "")
     if study.batch_time is not None:
-        yield "batch time"
+        longest = _written(study, "batch_time.longest")
+        yield "batch time" + (f", sought up to {longest}" if longest else "")
     if study.failure is not None:
         yield f"cooling failure, horizon {show(study.values['failure.horizon'], study.units['failure.horizon'])}"

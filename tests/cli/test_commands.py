@@ -8,6 +8,7 @@ import subprocess
 import sys
 import time
 
+import pandas as pd
 import pytest
 
 from sweep.cli.main import main
@@ -62,6 +63,11 @@ def test_new_check_and_never_overwrite(here, capsys):
     assert text == (here / "start.toml").read_text()
 
 
+def test_new_says_what_to_type_for_a_name_with_spaces(here, capsys):
+    assert 0 == main(["new", "my study.toml"])
+    assert "sweep check 'my study.toml', then sweep run 'my study.toml'" in capsys.readouterr().out
+
+
 def test_new_where_there_is_no_folder(here, capsys):
     assert 4 == main(["new", "none/start.toml"])
     assert "is no folder" in capsys.readouterr().err
@@ -75,6 +81,29 @@ def test_check_writes_nothing_and_speaks_the_studys_units(here, capsys):
     assert "max_temperature at most 62 degC" in told
     assert "dose: 0.5 mol/L to 2.5 mol/L, 4 levels, now 1.5 mol/L" in told
     assert "points: 16 (factorial)" in told
+
+
+def test_check_says_batch_events_and_slice_in_the_units_written(here, capsys):
+    more = '''
+[[events]]
+time = "90 min"
+set = { "cooling.temperature" = "30 degC", "vessel.U" = "250 W/m2/K" }
+[[events]]
+time = "1 h"
+set = { "cooling.kind" = "adiabatic" }
+'''
+    text = SMALL.replace("[window]", 'third = { sets = "vessel.area", from = "3 m2", to = "6 m2", levels = 2 }\n[window]\nat = { third = "4 m2" }')
+    (here / "more.toml").write_text(text + more)
+    assert 0 == main(["check", "more.toml"])
+    told = capsys.readouterr().out
+    for line in ("ends after 6 h", "turnaround: 2 h", "at 1 h: cooling.kind = adiabatic", "window over dose and start, at third 4 m2",
+                 "at 90 min: cooling.temperature = 30 degC, vessel.U = 250 W/m2/K", "batch time, sought up to 24 h"):  # fmt: skip
+        assert f"  {line}\n" in told
+    (here / "more.toml").write_text(text.replace('batch_time = "6 h"', 'batch_time = "to target"').replace('turnaround = "2 h"', ""))
+    assert 0 == main(["check", "more.toml"])
+    told = capsys.readouterr().out
+    assert "ends when the target is reached, never before its last feed ends; at 24 h where it is not reached" in told
+    assert "turnaround: none" in told
 
 
 def test_check_of_a_faulty_study_lists_every_fault(here, capsys):
@@ -116,6 +145,23 @@ def test_batch_takes_a_path_of_the_study(here, capsys):
     capsys.readouterr()
 
 
+def test_batch_takes_a_path_that_a_variable_sets_and_says_what_was_set(here, capsys):
+    found = []
+    for setting in ("dose=1 mol/L", "recipe.charge.concentration.A=1 mol/L"):
+        main(["batch", "small.toml", "--no-figures", "--set", setting, "--set", "vessel.U=400 W/m2/K"])
+        told = capsys.readouterr().out
+        assert re.search(r"^  dose: 1 mol/L$", told, re.M)
+        assert re.search(r"^  vessel\.U: 400 W/m2/K$", told, re.M)
+        folder = here / "results" / "small" / "batch"
+        summary = json.loads((folder / "summary.json").read_text())
+        assert {"value": pytest.approx(1000.0), "unit": "mol/m^3", "written": "1 mol/L"} == summary["set_point"]["inputs"]["dose"]
+        inputs = pd.read_csv(folder / "analyses" / "inputs.csv").set_index("path")
+        assert ("1 mol/L", pytest.approx(1000.0)) == tuple(inputs.loc["recipe.charge.concentration.A", ["written", "value_si"]])
+        assert ("400 W/m2/K", 400.0) == tuple(inputs.loc["vessel.U", ["written", "value_si"]])
+        found.append(summary["set_point"])
+    assert found[0] == found[1]
+
+
 @pytest.mark.parametrize(
     ("setting", "words"),
     [
@@ -139,6 +185,34 @@ def test_batch_refuses_two_settings_of_one_thing(here, capsys):
     assert "both set" in capsys.readouterr().err
     assert 2 == main(["batch", "small.toml", "--no-figures", "--set", "dose=1 mol/L", "--set", "dose=2 mol/L"])
     assert "set twice" in capsys.readouterr().err
+
+
+AXES = 'axes = ["dose", "start"]'
+
+
+@pytest.mark.parametrize(
+    ("changes", "said", "unsaid"),
+    [
+        ({AXES: AXES}, ["over dose and start: every limit holds in", "dose up: 0."], ["the point itself"]),
+        ({'at_most = "62 degC"': 'at_most = "41 degC"'}, ["the point itself does not hold every limit"], ["no edge within", " to the edge"]),
+        ({"conversion = 0.9": "conversion = 0.99999", '"24 h"': '"6 h"', "[limits]": '[limits]\ntime_to_target = { at_most = "9 h" }'},
+         ["target not reached", "no value: never reached", "nearest limit: time_to_target, which has no value at the set-point"],
+         ["margin -\n", "no value: time_to_target"]),
+    ],
+    ids=["inside", "outside", "never reached"],
+)  # fmt: skip
+def test_answers_are_said_for_what_they_are(here, capsys, changes, said, unsaid):
+    text = (here / "small.toml").read_text()
+    for old, new in changes.items():
+        text = text.replace(old, new)
+    (here / "small.toml").write_text(text)
+    main(["batch", "small.toml", "--no-figures"])
+    main(["run", "small.toml", "--workers", "1"])
+    told = capsys.readouterr().out
+    assert [] == [words for words in said if words not in told], told
+    assert [] == [words for words in unsaid if words in told], told
+    main(["run", "small.toml", "--workers", "1"])
+    assert capsys.readouterr().out in told  # the same words from kept results
 
 
 def test_run_from_study_to_report(here, capsys):
@@ -175,6 +249,20 @@ def test_run_of_a_changed_study_is_refused_and_fresh_moves_aside(here, capsys):
     assert "--fresh" in capsys.readouterr().err
     assert 0 == main(["run", "small.toml", "--quiet", "--fresh"])
     assert (here / "results" / "small.1" / "summary.json").exists()
+
+
+def test_list_that_is_missing_or_has_changed(here, capsys):
+    bare = SMALL[: SMALL.index("[window]")] + SMALL[SMALL.index("[failure]") :]
+    (here / "listed.toml").write_text(bare + '\n[plan]\nkind = "list"\nfile = "points.csv"\n')
+    assert 2 == main(["check", "listed.toml"])
+    told = capsys.readouterr()
+    assert ("", "plan.file: points.csv cannot be read: No such file or directory\n") == tuple(told)
+    (here / "points.csv").write_text("dose [mol/L]\n1\n2\n")
+    assert 0 == main(["run", "listed.toml", "--workers", "1"])
+    (here / "points.csv").write_text("dose [mol/L]\n1\n2.1\n")
+    capsys.readouterr()
+    assert 2 == main(["run", "listed.toml", "--workers", "1"])
+    assert re.search(r"another plan \(list_digest: [0-9a-f]{12} then, [0-9a-f]{12} now\); --fresh", capsys.readouterr().err)
 
 
 def test_report_of_no_results(here, capsys):

@@ -49,6 +49,13 @@ def test_a_level_curve_and_gaps_are_drawn(y: np.ndarray) -> None:
     assert ink(one_panel(y, (Moment("end", 6.0, 45.0),), (Level("limit", 45.0),))).png.startswith(b"\x89PNG")
 
 
+def test_a_held_temperature_is_drawn_level_though_its_last_digit_moves() -> None:
+    axes = draw_curves.draw(one_panel(np.array([50.0, 50.0, np.nextafter(50.0, 51.0), 50.0]))).axes[0]
+    low, high = axes.get_ylim()
+    assert 2.0 <= high - low <= 2.5
+    assert 50.0 == pytest.approx((low + high) / 2)
+
+
 def test_text_of_the_user_is_neither_mathematics_nor_markup_nor_missing_glyphs_an_error() -> None:
     svg = ink(one_panel(np.arange(5.0), (Moment("$\\frac{$ <b> --> & 反応 🜁", 1.0),), (Level("$x^", 2.0),))).svg
     assert ElementTree.fromstring(svg).tag.endswith("svg")

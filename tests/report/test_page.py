@@ -155,6 +155,20 @@ def test_a_target_missed_by_the_points_own_record_is_said_once(tmp_path: Path) -
     assert "time_to_target" not in text
 
 
+def test_a_slice_beside_the_set_point_does_not_claim_to_hold_it(tmp_path: Path) -> None:
+    def elsewhere(summary: dict[str, Any], *_: Any) -> None:
+        summary["window"]["at"] = {"amine": 2500.0}
+
+    text = page(tmp_path, changed(elsewhere)).text
+    assert "2.5 mol/L, where the set-point does not lie" in text
+    assert "its place on these axes lies inside" in text
+    assert "set-point lies inside" not in text.lower()
+
+
+def test_a_slice_through_the_set_point_says_where_that_lies(whole: str) -> None:
+    assert "the set-point lies inside the window of charge temperature and dosing time" in whole
+
+
 def test_standing_cautions_are_not_said_twice(tmp_path: Path) -> None:
     made = changed(lambda summary, *_: summary.update(cautions=["This program screens; it does not approve. A proposal."]))
     assert 1 == page(tmp_path, made).text.count("does not approve")
@@ -276,8 +290,9 @@ def test_hostile_text_is_shown_and_not_obeyed(tmp_path: Path) -> None:
 )
 def test_a_folder_that_cannot_be_read_is_an_error_with_its_place(tmp_path: Path, spoil: Callable[[Path], object], said: str) -> None:
     spoil(folder.write(tmp_path, *folder.whole()))
-    with pytest.raises(SweepError, match=re.escape(said)):
+    with pytest.raises(SweepError, match=re.escape(said)) as caught:
         sweep.report.make(tmp_path)
+    assert (2 if "missing" in said else 4) == caught.value.exit_status  # a wrong folder is the call's fault, a damaged one the disk's
 
 
 def test_one_batch_needs_no_manifest_and_draws_what_it_has(tmp_path: Path) -> None:

@@ -1,6 +1,7 @@
 """A run from study to answers: the schema, what is resumed, and what a study need not ask for."""
 
 import json
+from functools import partial
 from importlib.resources import files
 
 import jsonschema
@@ -8,6 +9,7 @@ import pandas as pd
 import pytest
 
 import sweep
+from sweep.analysis.set_point import look_at_set_point
 from sweep.study import read_text
 from sweep.workflow.run import run
 from tests.texts import SMALL, isothermal
@@ -52,6 +54,20 @@ def test_summary_keeps_its_schema_whatever_is_asked(tmp_path, schema, name):
     jsonschema.validate(written, schema)
     assert written["points"]["planned"] == sum(len(t) for t in found.points())
     assert written["not_assessed"]
+
+
+@pytest.mark.parametrize(
+    ("nearest", "text"),
+    [
+        ("max_temperature", QUICK.replace('batch_time = "6 h"', 'batch_time = "to target"').replace('"62 degC"', '"54 degC"')),
+        ("conversion", _cut(WHOLE["to target"], "[limits]")),
+        ("conversion", WHOLE["never reached"].replace('batch_time = "6 h"', 'batch_time = "to target"')),
+    ],
+    ids=["another limit", "no other", "not reached"],
+)
+def test_target_at_which_a_batch_is_ended_is_not_its_nearest_limit(nearest, text):
+    study = read_text(text)
+    assert nearest == look_at_set_point(study, partial(sweep.simulate, study, workers=1)).nearest()["name"]
 
 
 def test_report_stands_whatever_is_asked(tmp_path):

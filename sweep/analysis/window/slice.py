@@ -103,7 +103,7 @@ class Window:
                     "limit": None if edge.limit is None else self.labels[edge.limit],
                     "unit": self.axes[edge.axis].unit,
                 }
-                for edge in self.point.edges
+                for edge in (self.point.edges if self.point.reason is None else ())  # none was sought: `reason` says why
             ],
         }
 
