@@ -65,7 +65,8 @@ def productivity_of(study: Study, point: Mapping[str, float], table: pd.DataFram
     product = [s.name for s in study.species].index(study.target.product)
     formed = table[f"n_{study.target.product}_mol"].to_numpy() - plant.brought.total()[0, product]
     per = (product_mass(study) or 1.0) / vessel_volume(plant)[0]
-    return productivity_unit(study), per * formed / (table["time_s"].to_numpy() + values.get("recipe.turnaround")[0])
+    cycle = table["time_s"].to_numpy() + values.get("recipe.turnaround")[0]
+    return productivity_unit(study), per * formed / np.where(cycle > 0.0, cycle, np.nan)
 
 
 def _lines(study: Study, plant: Charged, times: Floats, state: Floats) -> dict[str, Floats]:

@@ -58,9 +58,13 @@ def _at(study: Study, values: Values, time: Floats) -> tuple[Values, NDKind]:
     """Return the quantities and the kind of cooling that hold from a time (N,) on."""
     sets: dict[str, float | Floats] = {}
     kind = np.full(values.count, KINDS.index(study.cooling_kind or "isothermal"))
+    since: dict[str, Floats] = {}  # per point, for a swept time may pass another event's
     for k, event in enumerate(study.events):
-        on = values.get(f"events.{k}.time", event.time) <= time * (1.0 + 1e-12)
+        when = values.get(f"events.{k}.time", event.time)
         for path, value in event.sets.items():
+            last = since.setdefault(path, np.full(values.count, -np.inf))
+            on = (when <= time * (1.0 + 1e-12)) & (when >= last)
+            since[path] = np.where(on, when, last)
             if isinstance(value, str):
                 kind = np.where(on, KINDS.index(value), kind)
             else:

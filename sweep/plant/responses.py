@@ -99,7 +99,7 @@ def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, toler
     with np.errstate(invalid="ignore"):
         bad = (code == DONE) & (np.asarray(found["energy_balance_error"]) > BALANCE)
     code = np.where(bad, UNBALANCED, code)
-    found.update(target_columns(study, plant, marched, end, moles))
+    found.update(target_columns(study, plant, marched, batch, moles))
     _by_species(study, plant, moles, found)
     _missing(found, reasons, why_not(study, plant, marched), heated, full)
     found["accumulation"] = largest_accumulation(study, plant, batch, tolerance) if heated and study.reactions else nothing

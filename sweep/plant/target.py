@@ -7,6 +7,7 @@ from sweep.kernel.engine import Marched
 from sweep.plant import rates, states
 from sweep.plant.onward import segment_at
 from sweep.plant.recipe import Charged
+from sweep.plant.samples import Batch
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
@@ -31,9 +32,9 @@ def vessel_volume(plant: Charged) -> Floats:
     return plant.values.get("vessel.volume", plant.brought.volume + plant.brought.feed_volume.sum(axis=1))
 
 
-def target_columns(study: Study, plant: Charged, marched: Marched, end: Floats, moles: Floats) -> dict[str, Floats]:
-    """Return conversion, times and productivities, each (N,); end (N,) s of the batch, moles (N, I) then."""
-    out, values = marched.out, plant.values
+def target_columns(study: Study, plant: Charged, marched: Marched, batch: Batch, moles: Floats) -> dict[str, Floats]:
+    """Return conversion, times and productivities, each (N,); moles (N, I) at the batch's end."""
+    out, values, end = marched.out, plant.values, batch.end
     turnaround = values.get("recipe.turnaround")
     crossed = np.isfinite(out[:, at.OUT_CROSSED])
     ok = crossed if study.batch_to_target else np.ones(values.count, dtype=bool)
@@ -51,12 +52,12 @@ def target_columns(study: Study, plant: Charged, marched: Marched, end: Floats, 
         found["conversion"] = np.where(crossed & (np.abs(found["conversion"] - wanted) < 1e-9), wanted, found["conversion"])
     found["highest_conversion"] = (out[:, at.OUT_REACTED_MAX] - at_start) / brought
     if study.target.product is not None:
-        found.update(_productive(study, plant, marched, end, moles, ok))
+        found.update(_productive(study, plant, marched, batch, moles, ok))
         found["most_productive_conversion"] = (marched.at_best[:, :nz] @ weights - at_start) / brought
     return found
 
 
-def _productive(study: Study, plant: Charged, marched: Marched, end: Floats, moles: Floats, ok: np.ndarray) -> dict[str, Floats]:
+def _productive(study: Study, plant: Charged, marched: Marched, batch: Batch, moles: Floats, ok: np.ndarray) -> dict[str, Floats]:
     """Return productivities: as written, at the target, and at the most productive time."""
     out, values, nz = marched.out, plant.values, plant.program.structure.sources.shape[0]
     unit, product, turnaround = productivity_unit(study), plant.program.structure.product, values.get("recipe.turnaround")
@@ -64,16 +65,24 @@ def _productive(study: Study, plant: Charged, marched: Marched, end: Floats, mol
     assert study.target is not None
     p = [s.name for s in study.species].index(str(study.target.product))
     formed = moles[:, p] - plant.brought.total()[:, p]
-    at_target = (marched.at_target[:, :nz] - plant.starts[:, :nz]) @ product
-    when = np.maximum(out[:, at.OUT_CROSSED], plant.brought.last_feed())
+    last_feed = plant.brought.last_feed()
+    when = np.maximum(out[:, at.OUT_CROSSED], last_feed)
+    there = np.where((out[:, at.OUT_CROSSED] < last_feed)[:, None], _state_at(batch, last_feed), marched.at_target)
+    at_target = (there[:, :nz] - plant.starts[:, :nz]) @ product
     charged = plant.starts[:, :nz] @ product  # amounts mode counts what was charged; the most productive time is of what is formed
     best = (marched.at_best[:, :nz] @ product - charged) / (out[:, at.OUT_BEST_TIME] + turnaround)
     return {
-        f"productivity_{unit}_per_m3_s": np.where(ok, per * formed / (end + turnaround), np.nan),
+        f"productivity_{unit}_per_m3_s": np.where(ok, per * formed / (batch.end + turnaround), np.nan),
         f"at_target_{unit}_per_m3_s": per * at_target / (when + turnaround),
         "most_productive_time_s": out[:, at.OUT_BEST_TIME],
         f"most_productive_{unit}_per_m3_s": per * best,
     }
+
+
+def _state_at(batch: Batch, time: Floats) -> Floats:
+    """Return the states (N, R) at the samples nearest to a time (N,) s that is one of the recipe's boundaries."""
+    nearest = np.abs(np.where(batch.inside, batch.times, np.inf) - time[:, None]).argmin(axis=1)
+    return batch.states[np.arange(time.size), nearest]
 
 
 def why_not(study: Study, plant: Charged, marched: Marched) -> np.ndarray:

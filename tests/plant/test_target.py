@@ -50,3 +50,27 @@ def test_batch_to_a_target_never_reached_has_no_cycle_time():
     assert pd.isna(row["cycle_time_s"])
     assert pd.isna(row["productivity_kg_per_m3_s"])
     assert "too slow" in row["reason"]
+
+
+def test_product_at_a_target_reached_before_the_last_feed_is_counted_when_that_ends():
+    """The batch does not end before its last feed: productivity "at target" is then that of the batch ended there."""
+    from pathlib import Path
+
+    text = (Path(__file__).parents[1] / "external" / "fed_batch.toml").read_text().replace("conversion = 0.985", "conversion = 0.5")
+    whole = _row(text)
+    to_target = _row(text.replace('batch_time = "6 h"', 'batch_time = "to target"'))
+    assert whole["time_to_target_s"] < 11_400.0
+    assert to_target["productivity_kg_per_m3_s"] == pytest.approx(whole["at_target_kg_per_m3_s"], rel=1e-6)
+
+
+def test_a_swept_event_that_passes_another_comes_after_it():
+    from sweep.plant import profile
+
+    first = '[[events]]\ntime = "1 h"\nset = { "cooling.temperature" = "30 degC" }\n'
+    events = first + first.replace("1 h", "2 h").replace("30", "60")
+    study = read_text(SMALL.replace("[target]", events + "[target]"))
+    swapped = events.replace('"1 h"', '"3 h"')
+    moved = profile(study, {"events.0.time": 10_800.0}, [21_600.0])["jacket_temperature_K"][0]
+    written = profile(read_text(SMALL.replace("[target]", swapped + "[target]")), {}, [21_600.0])["jacket_temperature_K"][0]
+    assert 303.15 == pytest.approx(moved)
+    assert written == pytest.approx(moved)
