@@ -61,12 +61,12 @@ def _march_samples(
 ) -> Moments:
     """March the failure at samples of the batches, and the decomposition where it may be the fastest of its batch.
 
-    At all samples where estimates may go astray or reactions compete; else where the estimates `found` are highest. The closed form is
-    shorter than the truth unless the decomposition speeds itself up: what it puts beyond the shortest march is slower.
+    At all samples where estimates may go astray; else where the estimates `found` are highest (`_suspicious`). The closed form is shorter
+    than the truth unless the decomposition speeds itself up: what it puts beyond the shortest march is slower.
     """
     wanted = batch.inside.copy()
-    if not astray and len(adiabatic.purposes(study, "synthesis")) < 2:
-        wanted &= _suspicious(batch, found)
+    if not astray:
+        wanted &= _suspicious(batch, found, len(adiabatic.purposes(study, "synthesis")) > 1)
     rows, columns = np.nonzero(wanted)
     marched = march_moments(study, plant, rows, batch.times[rows, columns], batch.states[rows, columns], rough, LITTLE)
     fastest = -np.log(plant.values.get("failure.horizon"))
@@ -75,13 +75,15 @@ def _march_samples(
     return decompose(study, plant, marched, np.isinf(marched.tmr) & (autocatalytic | (marched.urgency > fastest[rows] - WORTH)), rough)
 
 
-def _suspicious(batch: Batch, found: list[Floats]) -> np.ndarray:
-    """Return which samples (N, K) the estimates make worth a march: the top of each in each stretch, its neighbours, the ends."""
+def _suspicious(batch: Batch, found: list[Floats], competing: bool) -> np.ndarray:
+    """Return which samples (N, K) are worth a march: the top of each estimate in each stretch, its neighbours, the ends, and, where
+    reactions compete, every other one."""
     count = batch.times.shape[0]
     rows, last = np.arange(count), np.maximum(batch.inside.sum(axis=1) - 1, 0)
     end = batch.times[rows, last]
     stretch = np.minimum((batch.times / np.where(end > 0.0, end, 1.0)[:, None] * WINDOWS).astype(int), WINDOWS - 1)
     wanted = np.zeros_like(batch.inside)
+    wanted[:, ::2] = competing
     wanted[rows, last] = True
     for e in found:
         top = e.argmax(axis=1)

@@ -14,7 +14,7 @@ from sweep.plan import Planned
 from sweep.plant import evaluate
 from sweep.study.model import Study
 
-PIECE = 2048  # points; some tenths of a second of work
+PIECE = 1024  # points; some tenths of a second of work
 PROCESSES_FROM = 32_768  # points; below, threads are done before processes have started
 
 
