@@ -129,6 +129,9 @@ def summits_of(marched: Moments, score: Floats) -> np.ndarray:
 
 def first_of(marched: Moments, score: Floats, few: int) -> np.ndarray:
     """Return the places of each point's few highest scores."""
+    if few == 1:
+        place, _ = best_of(marched, score, int(marched.rows.max(initial=-1)) + 1)
+        return place[place >= 0]
     order = np.lexsort((-marched.time, score, marched.rows))[::-1]
     rows = marched.rows[order]
     begins = np.flatnonzero(np.diff(rows, prepend=-1))

@@ -14,7 +14,8 @@ from sweep.plan import Planned
 from sweep.plant import evaluate
 from sweep.study.model import Study
 
-PIECE = 1024  # points; some tenths of a second of work
+PIECE = 1024  # points of one call: what it touches stays in the processor's cache
+TASK, WAVE = 2048, 16  # points that a worker process takes at a time; tasks per worker before all wait for the last of them
 PROCESSES_FROM = 32_768  # points; below, threads are done before processes have started
 
 
@@ -50,33 +51,32 @@ def simulate(study: Study, points: pd.DataFrame, workers: int | None = None) -> 
     return pd.concat(tables) if len(tables) > 1 else tables[0]
 
 
-def _evaluate_rows(study: Study, rows: pd.DataFrame) -> pd.DataFrame:
-    """Evaluate a piece in a worker process."""
-    import pyarrow as pa
-
-    pa.set_cpu_count(1)
-    return evaluate(study, rows)
+def _evaluate_task(study: Study, rows: pd.DataFrame) -> pd.DataFrame:
+    """Evaluate the pieces of a task in a worker."""
+    tables = [evaluate(study, rows.iloc[a : a + PIECE]) for a in range(0, len(rows), PIECE)]
+    return pd.concat(tables) if len(tables) > 1 else tables[0]
 
 
 def in_order(study: Study, plan: Planned, starts: list[int], size: int, workers: int | None) -> Iterator[tuple[int, pd.DataFrame]]:
     """Yield (start, table) of stretches of a plan of `size` rows from each of `starts`, in that order.
 
-    Stretches are evaluated in waves of a few per worker, so that results never pile up.
+    Stretches are evaluated in waves of some tasks per worker, so that results never pile up.
     """
     from joblib import Parallel, delayed
 
     number = cores(workers)
-    pieces = [(start, a, min(a + PIECE, start + size, plan.size)) for start in starts for a in range(start, min(start + size, plan.size), PIECE)]
-    if number == 1 or len(pieces) == 1:
-        yield from _joined(((start, evaluate(study, plan.rows(a, b))) for start, a, b in pieces), size, plan.size)
+    total = sum(min(size, plan.size - start) for start in starts)
+    processes = total >= PROCESSES_FROM
+    step = TASK if processes else PIECE
+    tasks = [(start, a, min(a + step, start + size, plan.size)) for start in starts for a in range(start, min(start + size, plan.size), step)]
+    if number == 1 or len(tasks) == 1:
+        yield from _joined(((start, _evaluate_task(study, plan.rows(a, b))) for start, a, b in tasks), size, plan.size)
         return
-    processes = sum(b - a for _, a, b in pieces) >= PROCESSES_FROM
     with Parallel(n_jobs=number, backend="loky" if processes else "threading", return_as="generator", max_nbytes=None) as parallel:
 
         def results() -> Iterator[tuple[int, pd.DataFrame]]:
-            for wave in (pieces[k : k + 4 * number] for k in range(0, len(pieces), 4 * number)):
-                work = _evaluate_rows if processes else evaluate
-                tables = parallel(delayed(work)(study, plan.rows(a, b)) for _, a, b in wave)
+            for wave in (tasks[k : k + WAVE * number] for k in range(0, len(tasks), WAVE * number)):
+                tables = parallel(delayed(_evaluate_task)(study, plan.rows(a, b)) for _, a, b in wave)
                 yield from zip((start for start, _, _ in wave), tables, strict=True)
 
         yield from _joined(results(), size, plan.size)
