@@ -156,7 +156,7 @@ def _missing(found: dict[str, Floats | list[str]], reasons: list[list[str]], cau
         reasons[n].append("per_product: there is no product")
     if not heated:
         for reason in reasons:
-            reason.append("heat_release, accumulation: heats of reaction are not given")
+            reason.append("heat_release, cooling_duty, accumulation, energy_balance_error: heats of reaction are not given")
     elif not full:
         for reason in reasons:
             reason.append("cooling_duty, energy_balance_error: heat capacities are not given")
