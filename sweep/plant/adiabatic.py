@@ -1,6 +1,6 @@
 """What the contents do without cooling: the synthesis to its highest temperature, the decomposition to its largest dT/dt.
 
-Definitions: DESIGN words MTSR and TMRad in DEVELOPERS.md. Both are marches of the same balances with the cooling, stirrer and losses
+Definitions: DEVELOPERS.md, Equations. Both are marches of the same balances with the cooling, stirrer and losses
 left out; the vessel's wall only where the study says so.
 """
 
@@ -21,7 +21,7 @@ from sweep.study.model import Study
 LONG = 1e9  # s, some thirty years: by then a synthesis has done what it will do
 FASTER = 1.01  # a largest dT/dt that is not this many times the first is "at once": no acceleration worth the name
 STILL = 0.01  # K; a rise smaller than this is none
-SMALL_RISE = 50.0  # K; below it a decomposition without an acceleration is no runaway (CHECKS of severity: common practice)
+SMALL_RISE = 50.0  # K; below it a decomposition without an acceleration is no runaway (common practice, no source)
 
 
 @dataclass(frozen=True)

@@ -1,4 +1,4 @@
-"""Adiabatic batches against exponential integrals and heat balances (CHECKS B3, B5; recomputed with mpmath)."""
+"""Adiabatic batches against exponential integrals and heat balances (closed forms recomputed with mpmath)."""
 
 import pytest
 

@@ -64,7 +64,7 @@ def _dosing(da: float, eps: float, rise: float = 150.0, end: float = 10000.0, re
     [(10, 0.2, 0.35810260313313, 0.72791317961727), (20, 0.4, 0.4115798297666, 0.79315897761819), (50, 0.5, 0.45756573602956, 0.86393015420462)],
 )
 def test_dosing_with_growing_volume(da, eps, half, whole):
-    """C4: dX/dth = Da (1-X)(th-X)/(1+eps th), 25-digit Taylor series (computed reference, not published)."""
+    """dX/dth = Da (1-X)(th-X)/(1+eps th), 25-digit Taylor series (computed reference, not published)."""
     from sweep.plant import profile
 
     lines = profile(read_text(_dosing(da, eps)), {}, [5000.0, 10000.0])
@@ -73,7 +73,7 @@ def test_dosing_with_growing_volume(da, eps, half, whole):
 
 
 def test_mtsr_against_the_time_of_failure():
-    """C4: MTSR(th) = Tp + acc dTad (1+eps)/(1+eps th); definition after Stoessel, semi-batch (from memory)."""
+    """MTSR(th) = Tp + acc dTad (1+eps)/(1+eps th); definition after Stoessel, semi-batch (from memory)."""
     expected = [69.1114936699, 71.7746876807, 75.4735297908, 81.3131177198, 91.0261533573]
     found = failure_times(read_text(_dosing(20, 0.4)), {}, [1000.0, 2500.0, 5000.0, 7500.0, 10000.0])
     assert pytest.approx(expected, abs=0.003) == (found["mtsr_K"] - 273.15).tolist()
@@ -145,7 +145,7 @@ CASES = [
 
 @pytest.mark.parametrize(("T0", "energy", "q0", "cp", "rise", "closed", "exact"), CASES)
 def test_time_to_maximum_rate_of_first_order(T0, energy, q0, cp, rise, closed, exact):
-    """D1: closed form (Townsend & Tou, Thermochim. Acta 37 (1980) 1, from memory) and the exact first-order integral to the
+    """closed form (Townsend & Tou, Thermochim. Acta 37 (1980) 1, from memory) and the exact first-order integral to the
     temperature of the largest rate (computed with mpmath)."""
     found = evaluate(read_text(_decomposing(T0, energy, q0, cp, rise)), pd.DataFrame(index=[0])).iloc[0]
     # one second of isothermal batch passes before the latest failure; the least over the batch is at its start or end within q0/(cp rise)
@@ -156,7 +156,7 @@ def test_time_to_maximum_rate_of_first_order(T0, energy, q0, cp, rise, closed, e
 
 @pytest.mark.parametrize(("T0", "energy", "q0", "cp", "rise"), [c[:5] for c in CASES[:3]])
 def test_time_to_maximum_rate_of_zero_order(T0, energy, q0, cp, rise):
-    """D1: exact Arrhenius zero order from T0 to T0 + rise, t = [G(T) - G(T0)] / (rate / k), G = T e^(x/T) - x Ei(x/T), x = E/R."""
+    """exact Arrhenius zero order from T0 to T0 + rise, t = [G(T) - G(T0)] / (rate / k), G = T e^(x/T) - x Ei(x/T), x = E/R."""
     x, T1 = energy / R, T0 + rise
 
     def G(T):
@@ -168,7 +168,7 @@ def test_time_to_maximum_rate_of_zero_order(T0, energy, q0, cp, rise):
 
 
 def test_t_d24_with_exact_kinetics():
-    """D2, first case with exact first-order kinetics and a rise of 300 K: 375.6346917 K (computed); its closed form alone gives 374.187 K."""
+    """First-order decomposition with exact first-order kinetics and a rise of 300 K: 375.6346917 K (computed); its closed form alone gives 374.187 K."""
     text = _decomposing(350.0, 1e5, 10, 1800, 300, at=423.15)
     found = evaluate(read_text(text), pd.DataFrame(index=[0])).iloc[0]
     assert 375.6346917 == pytest.approx(found["td24_K"], abs=0.003)
@@ -177,7 +177,7 @@ def test_t_d24_with_exact_kinetics():
 
 
 def test_small_rise_without_acceleration_is_censored():
-    """D4: a rise below 50 K whose rate falls at once is no runaway; the horizon stands as a lower bound."""
+    """a rise below 50 K whose rate falls at once is no runaway; the horizon stands as a lower bound."""
     found = evaluate(read_text(_decomposing(450.0, 6e4, 10, 2000, 5)), pd.DataFrame(index=[0])).iloc[0]
     assert found["tmr_ad_censored"]
     assert 2_592_000.0 == found["tmr_ad_s"]

@@ -1,4 +1,4 @@
-"""Dosing that is fast, and dosing of first order, against their closed forms (CHECKS C1, C3; recomputed)."""
+"""Dosing that is fast, and dosing of first order, against their closed forms (recomputed)."""
 
 import math
 

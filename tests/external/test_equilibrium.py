@@ -1,4 +1,4 @@
-"""Heat balance and equilibrium that move with temperature, against their closed forms (CHECKS B5a, B5b; recomputed)."""
+"""Heat balance and equilibrium that move with temperature, against their closed forms (recomputed)."""
 
 import pandas as pd
 import pytest

@@ -1,4 +1,4 @@
-"""Heating, jackets and reaction heat against their closed forms (CHECKS B5, recomputed; jacket forms: Kern 1950, ch. 18, from memory)."""
+"""Heating, jackets and reaction heat against their closed forms (recomputed; jacket forms: Kern 1950, ch. 18, from memory)."""
 
 import math
 

@@ -1,4 +1,4 @@
-"""Isothermal batches against their closed forms (CHECKS: formulas of Levenspiel, 3rd ed. 1999, ch. 3; numbers recomputed from them)."""
+"""Isothermal batches against their closed forms (formulas of Levenspiel, 3rd ed. 1999, ch. 3; numbers recomputed from them)."""
 
 import pandas as pd
 import pytest
@@ -94,7 +94,7 @@ def test_intermediate_of_a_series(ratio, when, highest, left):
     ],
 )
 def test_series_and_parallel(set_point, kappa, left, intermediate):
-    """A + B -> R, R + B -> S: R over A is free of time and of B (CHECKS B2f); the last row is not at the maximum."""
+    """A + B -> R, R + B -> S: R over A is free of time and of B; the last row is not at the maximum."""
     text = isothermal(
         f"A + B -> R | 1e-3 L/mol/s\nR + B -> S | {1e-3 * kappa!r} L/mol/s",
         species="A B R S",
@@ -106,7 +106,7 @@ def test_series_and_parallel(set_point, kappa, left, intermediate):
 
 
 def test_autocatalysis(set_point):
-    """CHECKS B2g; 100 kJ/mol makes the largest rate, 1e-3 mol/L/s, a heat of 100 kW in 1 m3."""
+    """Autocatalysis in closed form; 100 kJ/mol makes the largest rate, 1e-3 mol/L/s, a heat of 100 kW in 1 m3."""
     reaction = 'A + R -> 2 R | 1e-3 L/mol/s | heat = { value = "-100 kJ/mol" }'
     text = isothermal(reaction, charge='A = "1.98 mol/L", R = "0.02 mol/L"', conversion=0.9) + '[cooling]\nkind = "isothermal"\n'
     found = set_point(text)
@@ -117,7 +117,7 @@ def test_autocatalysis(set_point):
 
 
 def test_rate_constant_follows_arrhenius():
-    """CHECKS B2i: the times of one conversion stand as the rate constants."""
+    """Arrhenius: the times of one conversion stand as the rate constants."""
     rate = '[reactions.r0]\nequation = "A -> R"\nrate_constant = {{ value = "1e-3 1/s", at = "{at} K", activation_energy = "{energy} J/mol" }}\n'
     text = isothermal("A -> R | 1 1/s", conversion=0.5)
     start, end = text.index("[reactions.r0]"), text.index("[recipe]")
@@ -150,7 +150,7 @@ def test_parallel_orders(set_point):
 
 @pytest.mark.parametrize(("k_td", "k_t", "conversion"), [(0.1, 0.41622116142502, 0.34046560921221), (1.0, 1.1461932206206, 0.68215556710063)])
 def test_most_productive_batch_time_with_turnaround(set_point, k_td, k_t, conversion):
-    """First order: e^x = 1 + x + k td at x = k t (CHECKS G; roots recomputed)."""
+    """First order: e^x = 1 + x + k td at x = k t (roots recomputed)."""
     found = set_point(isothermal("A -> R | 1e-3 1/s", turnaround=f"{1000.0 * k_td} s", batch_time="10000 s"))
     assert 1000.0 * k_t == pytest.approx(found["most_productive_time_s"], rel=1e-4)
     assert conversion == pytest.approx(found["most_productive_conversion"], rel=1e-4)

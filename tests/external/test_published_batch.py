@@ -1,4 +1,4 @@
-"""A published adiabatic batch: Fogler, Elements of Chemical Reaction Engineering, 3rd ed., example 9-1 (CHECKS B4).
+"""A published adiabatic batch: Fogler, Elements of Chemical Reaction Engineering, 3rd ed., example 9-1.
 
 Hydrolysis of propylene oxide, first order in the oxide. Printed (pp. 538 to 540): 833 s, 582 degR at X = 0.515, and a table of temperatures.
 Kinetic and thermal inputs from memory; they give every printed entry to its digits. The exact integral of the same equations is

@@ -1,6 +1,6 @@
 """Published stiff problems written as studies: every coefficient is a rate constant or a stoichiometric number.
 
-Mazzia and Magherini, Test Set for IVP Solvers, rel. 2.4 (2008), HIRES, OREGO and ROBER; digits recomputed in 113 bits (CHECKS A1 to A3).
+Mazzia and Magherini, Test Set for IVP Solvers, rel. 2.4 (2008), HIRES, OREGO and ROBER; digits recomputed in 113 bits.
 """
 
 import numpy as np

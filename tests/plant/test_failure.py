@@ -129,7 +129,7 @@ AUTOCATALYTIC = (
 
 
 def test_autocatalytic_decomposition_is_marched_and_its_closed_form_warned_of():
-    """CHECKS T11: the closed form is many times too long for A + B -> 2 B with little B."""
+    """The closed form is many times too long for A + B -> 2 B with little B."""
     from sweep.analysis.failure import fail_cooling
 
     study = read_text(AUTOCATALYTIC)

@@ -13,7 +13,7 @@ def _row(text):
 
 
 def test_equilibrium_is_named_with_the_highest_conversion():
-    """A <=> R with K = 4 stands still at 0.8 (CHECKS B2a)."""
+    """A <=> R with K = 4 stands still at 0.8."""
     text = isothermal("A <=> R | 2e-3 1/s | equilibrium_constant = { value = 4 }", conversion=0.9)
     row = _row(text)
     assert pd.isna(row["time_to_target_s"])
