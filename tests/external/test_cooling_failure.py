@@ -168,7 +168,7 @@ def test_time_to_maximum_rate_of_zero_order(T0, energy, q0, cp, rise):
 
 
 def test_t_d24_with_exact_kinetics():
-    """First-order decomposition with exact first-order kinetics and a rise of 300 K: 375.6346917 K (computed); its closed form alone gives 374.187 K."""
+    """Exact first-order kinetics and a rise of 300 K: 375.6346917 K (computed); its closed form alone gives 374.187 K."""
     text = _decomposing(350.0, 1e5, 10, 1800, 300, at=423.15)
     found = evaluate(read_text(text), pd.DataFrame(index=[0])).iloc[0]
     assert 375.6346917 == pytest.approx(found["td24_K"], abs=0.003)

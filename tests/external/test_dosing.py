@@ -71,7 +71,7 @@ def test_fast_reaction_against_a_coolant():
 
 
 def test_fast_reaction_without_cooling():
-    """C1's adiabatic rise: what is made of B, 120 kJ/mol, warms the contents and the cold feed."""
+    """The adiabatic rise: what is made of B, 120 kJ/mol, warms the contents and the cold feed."""
     text = FAST.format(k=1.0, cooling='kind = "adiabatic"')
     line = profile(read_text(text), {}, [4000.0]).iloc[0]
     charged, fed = 5000.0 * 200.0, 2000.0 * 360.0
@@ -114,7 +114,7 @@ relative = 1e-9
     [(0.5, 0.78693868057473), (1.0, 0.63212055882856), (2.0, 0.43233235838169), (5.0, 0.19865241060018), (10.0, 0.099995460007024), (50.0, 0.02)],
 )
 def test_accumulation_of_first_order_dosing(set_point, product, expected):
-    """C3: at the end of dosing (1 - exp(-k tD))/(k tD), whatever volume the feed adds; there it is largest."""
+    """at the end of dosing (1 - exp(-k tD))/(k tD), whatever volume the feed adds; there it is largest."""
     text = FIRST_ORDER.format(k=product / 1000.0, end=max(2000.0, math.ceil(12000.0 / product)))
     assert expected == pytest.approx(set_point(text)["accumulation"], rel=1e-7)
     line = profile(read_text(text), {}, [1000.0]).iloc[0]

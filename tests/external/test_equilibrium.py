@@ -36,7 +36,7 @@ relative = 1e-9
 
 @pytest.mark.parametrize(("conversion", "expected"), [(0.25, 372.4775862069), (0.5, 428.70357142857)])
 def test_adiabatic_temperature_at_a_conversion(set_point, conversion, expected):
-    """B5a: T = (X (-dH) + S T0 + X dCp T_R)/(S + X dCp); S = 450 J/K a mole of A, dCp = -60 J/mol/K."""
+    """T = (X (-dH) + S T0 + X dCp T_R)/(S + X dCp); S = 450 J/K a mole of A, dCp = -60 J/mol/K."""
     text = RISE.format(cp=90, conversion=conversion)
     when = set_point(text)["time_to_target_s"]
     assert expected == pytest.approx(profile(read_text(text), {}, [when]).iloc[0]["temperature_K"], abs=1e-5)
@@ -50,7 +50,7 @@ def test_adiabatic_temperature_of_the_whole_rise(set_point, cp, expected):
 
 
 def test_heat_of_reaction_at_the_temperature_it_runs_at(set_point):
-    """B5a: dH(320 K) = -91311 J/mol by Kirchhoff; the release is largest at once, at k n = 1e-3 mol/s."""
+    """dH(320 K) = -91311 J/mol by Kirchhoff; the release is largest at once, at k n = 1e-3 mol/s."""
     assert 91.311 == pytest.approx(set_point(RISE.format(cp=90, conversion=0.5))["heat_release_W"], rel=1e-9)
 
 
@@ -85,7 +85,7 @@ relative = 1e-9
     [(60, [13.936613888754, 1.5506569486678, 0.19862531598584]), (100, [14.274596812273, 1.7353621520303, 0.25845033968399])],
 )
 def test_equilibrium_moves_by_van_t_hoff(cp, expected):
-    """B5b: ln(K2/K1) = ((dH - T_R dCp)/R)(1/T1 - 1/T2) + (dCp/R) ln(T2/T1), K from what is left at the batch's end."""
+    """ln(K2/K1) = ((dH - T_R dCp)/R)(1/T1 - 1/T2) + (dCp/R) ln(T2/T1), K from what is left at the batch's end."""
     study = read_text(VAN_T_HOFF.format(cp=cp))
     found = evaluate(study, pd.DataFrame({"recipe.charge.temperature": [330.0, 373.15, 423.15]}))
     x = found["conversion"]

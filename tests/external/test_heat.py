@@ -39,7 +39,7 @@ def water(cooling: str, U: str = "500 W/m2/K", start: str = "20 degC", batch_tim
 
 
 def test_heating_up_by_a_constant_coolant():
-    """B5c: m 1000 kg, c 4180 J/kg/K, UA 2500 W/K, 20 to 120 degC: T(1800 s) = 85.923255844138 degC."""
+    """m 1000 kg, c 4180 J/kg/K, UA 2500 W/K, 20 to 120 degC: T(1800 s) = 85.923255844138 degC."""
     study = read_text(water('kind = "coolant"\ntemperature = "120 degC"'))
     line = profile(study, {}, [1800.0, 2690.9801895898]).set_index("time_s")["temperature_K"]
     assert 85.923255844138 + 273.15 == pytest.approx(line.iloc[0], abs=1e-5)
@@ -47,7 +47,7 @@ def test_heating_up_by_a_constant_coolant():
 
 
 def test_well_mixed_jacket_with_a_small_hold_up():
-    """B5d: W c 6270 W/K: effective UA W UA/(W + UA) = 1787.3432155074 W/K once the jacket is quasi-steady (hold-up 1 mL)."""
+    """W c 6270 W/K: effective UA W UA/(W + UA) = 1787.3432155074 W/K once the jacket is quasi-steady (hold-up 1 mL)."""
     flow = 6270.0 / (1000.0 * 4180.0)
     cooling = f'kind = "jacket"\ninlet = "120 degC"\nflow = "{flow!r} m3/s"\nhold_up = "1e-6 m3"\n{COOLANT}'
     line = profile(read_text(water(cooling)), {}, [3600.0]).iloc[0]
@@ -118,7 +118,7 @@ relative = 1e-9
     ],
 )
 def test_second_order_dosing_at_constant_volume(da, expected):
-    """C2: dX/dth = Da (1 - X)(E th - X), closed form in error functions; the feed's volume is made negligible."""
+    """dX/dth = Da (1 - X)(E th - X), closed form in error functions; the feed's volume is made negligible."""
     text = DOSING.format(k=da / 1000.0 / 1000.0, excess=1.0, batch_time=2000)
     line = profile(read_text(text), {}, [250.0, 500.0, 750.0, 1000.0])
     assert expected == pytest.approx(line["conversion"].tolist(), rel=1e-6)
@@ -126,7 +126,7 @@ def test_second_order_dosing_at_constant_volume(da, expected):
 
 @pytest.mark.parametrize(("a", "expected"), [(1.0, 0.68392199507327), (10.0, 0.25227927748367), (100.0, 0.079788456080287)])
 def test_accumulation_at_the_stoichiometric_point(a, expected):
-    """C2: X_acc = sqrt(2/(pi a)) / (erf(sqrt(a/2)) + sqrt(2/(pi a)) exp(-a/2)), a = Da/E; equimolar dosing ends there."""
+    """X_acc = sqrt(2/(pi a)) / (erf(sqrt(a/2)) + sqrt(2/(pi a)) exp(-a/2)), a = Da/E; equimolar dosing ends there."""
     text = DOSING.format(k=a / 1000.0 / 1000.0, excess=1.0, batch_time=2000)
     line = profile(read_text(text), {}, [1000.0]).iloc[0]
     assert expected == pytest.approx(line["accumulation"], rel=1e-6)
