@@ -1,15 +1,20 @@
 """A list of points from a CSV file beside the study, units in the header: `dosing_time [h]`."""
 
+from __future__ import annotations
+
 import csv
 import re
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 
 from sweep.base.errors import Fault, StudyError, SweepError
 from sweep.base.units import UnitFault, to_si
 from sweep.study.model import Study
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 _HEADER = re.compile(r"^\s*([A-Za-z_][\w.]*)\s*(?:\[\s*([^\]]*?)\s*\])?\s*$")
 
@@ -36,6 +41,8 @@ def _heading(study: Study, file: Path, cell: str, faults: list[Fault]) -> tuple[
 
 def read_list(study: Study, file: Path) -> pd.DataFrame:
     """Return the points of a list (SI); StudyError with every fault, SweepError where it cannot be read or is empty."""
+    import pandas as pd
+
     try:
         with open(file, newline="", encoding="utf-8-sig") as text:
             lines = [(number, line) for number, line in enumerate(csv.reader(text), 1) if any(cell.strip() for cell in line)]

@@ -1,15 +1,20 @@
 """Which points are evaluated: full factorial, Latin hypercube, Sobol' sequence, or a list."""
 
+from __future__ import annotations
+
 from collections.abc import Callable
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 from numpy.typing import NDArray
 
 from sweep.base.seeds import stream
 from sweep.plan.listed import read_list
 from sweep.study.model import Study, Variable
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 DEFAULT_POINTS = 1024  # of a Sobol' sequence, where neither a plan nor levels are written
 _Floats = NDArray[np.float64]
@@ -26,6 +31,8 @@ class Planned:
 
     def rows(self, start: int, stop: int) -> pd.DataFrame:
         """Return the points from `start` up to `stop`."""
+        import pandas as pd
+
         stop = min(stop, self.size)
         return pd.DataFrame(self._between(start, stop), columns=list(self.columns), index=pd.RangeIndex(start, stop))
 

@@ -1,10 +1,12 @@
 """One batch and its cooling failures: MTSR and time to maximum rate against the time of failure, and the path after a failure."""
 
+from __future__ import annotations
+
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 
 from sweep.base.errors import SweepError
 from sweep.kernel import layout as at
@@ -17,6 +19,9 @@ from sweep.plant.recipe import Charged, charge_plant
 from sweep.plant.sense import one_point
 from sweep.plant.values import Floats
 from sweep.study.model import Study
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 DRAWN = 101  # moments that draw well
 _PATH_TIMES = 241
@@ -49,6 +54,8 @@ def failure_times(study: Study, point: Mapping[str, float] | None = None, times:
 
     Times in any order; NaN beyond the batch's end. SweepError where the study asks for no failure.
     """
+    import pandas as pd
+
     plant = _one(study, point)
     tolerance = float(study.values["accuracy.relative"])
     end = batch_end(plant, tolerance)
@@ -125,6 +132,8 @@ def _flow_along(plant: Charged, failed: adiabatic.Failed, state: Floats, fed: Fl
 
 def _stages(study: Study, now: rates.Flow, known: np.ndarray) -> np.ndarray:
     """Return which kind of reaction gives off more heat at each time."""
+    import pandas as pd
+
     share = [now.heat[:, adiabatic.purposes(study, p)].sum(axis=1) for p in ("synthesis", "decomposition")]
     total = np.abs(share[0]) + np.abs(share[1])
     telling = known & (total > _STILL * total.max(initial=0.0))
@@ -155,6 +164,8 @@ def _first(times: Floats, T: Floats, level: float) -> float | None:
 
 def _lines(times: Floats, T: Floats, stage: np.ndarray) -> pd.DataFrame:
     """Return some lines of the path that draw well: spread over time and over temperature."""
+    import pandas as pd
+
     known = np.flatnonzero(np.isfinite(T))
     spread = np.interp(np.linspace(0.0, 1.0, _PATH_TIMES), np.linspace(0.0, 1.0, known.size), known).astype(int)
     rise = np.searchsorted(T[known], np.linspace(T[known[0]], T[known[-1]], _PATH_TIMES))

@@ -1,11 +1,16 @@
 """The limits of a study, and by how much each point holds them."""
 
+from __future__ import annotations
+
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 
 from sweep.plant.values import Floats
+
+if TYPE_CHECKING:
+    import pandas as pd
 from sweep.study.model import Study
 
 

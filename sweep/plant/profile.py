@@ -1,9 +1,11 @@
 """One batch over time."""
 
+from __future__ import annotations
+
 from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
@@ -15,6 +17,9 @@ from sweep.plant.target import product_mass, productivity_unit, vessel_volume
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
+if TYPE_CHECKING:
+    import pandas as pd
+
 DRAWN = 401  # times that draw well
 
 
@@ -23,6 +28,8 @@ def profile(study: Study, point: Mapping[str, float] | None = None, times: Seque
 
     Columns: time, temperatures, volume, amounts, conversion, heat release, cooling duty, accumulation, MTSR were cooling lost then.
     """
+    import pandas as pd
+
     plant = charge_plant(study, one_point(study, point))
     wanted = np.asarray(times, dtype=np.float64) if times is not None else drawn_times(plant, float(study.values["accuracy.relative"]))
     order = np.argsort(wanted, kind="stable")

@@ -1,9 +1,10 @@
 """The responses of a batch: names, units, and how each comes from what a march left."""
 
-from typing import NamedTuple
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
-import pandas as pd
 
 from sweep.base.status import DONE, OUTCOMES, UNBALANCED
 from sweep.kernel import layout as at
@@ -16,6 +17,9 @@ from sweep.plant.sense import blank, sensible_values
 from sweep.plant.target import CAUSES, productivity_unit, target_columns, why_not
 from sweep.plant.values import Floats
 from sweep.study.model import Study
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 _TRACE = 1e-12  # of all that is brought in; less of a product than this is none
 BALANCE = 1e-3  # an energy balance worse than this is a failed point
@@ -69,6 +73,8 @@ def responses(study: Study) -> tuple[Response, ...]:
 
 def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     """Return inputs and responses of each point, same index. points: a column per variable or dotted path, SI."""
+    import pandas as pd
+
     values = sensible_values(study, points)
     plant = charge_plant(study, values)
     tolerance = float(study.values.get("accuracy.relative", 1e-6))

@@ -3,10 +3,12 @@
 A point is refused before it is marched; the written set-point stands in for it, so that its neighbours are marched as ever.
 """
 
+from __future__ import annotations
+
 from collections.abc import Mapping
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 from numpy.typing import NDArray
 
 from sweep.base.errors import SweepError
@@ -15,6 +17,9 @@ from sweep.plant.charge import brought_in
 from sweep.plant.chemistry import names
 from sweep.plant.values import Values, values_of
 from sweep.study.model import Study
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 SLACK = 1e-9  # relative; what a volume may exceed by rounding
 
@@ -31,6 +36,8 @@ def sensible_values(study: Study, points: pd.DataFrame) -> Values:
 
 def one_point(study: Study, point: Mapping[str, float] | None) -> Values:
     """Return the quantities of a single point, SI; SweepError where it cannot be computed."""
+    import pandas as pd
+
     values = sensible_values(study, pd.DataFrame({name: [value] for name, value in (point or {}).items()}, index=[0]))
     for reason in values.refused.values():
         raise SweepError(f"this point cannot be computed: {reason}")
@@ -55,6 +62,8 @@ def _impossible(study: Study, values: Values) -> list[tuple[NDArray[np.bool_], s
 
 def blank(values: Values, table: pd.DataFrame) -> pd.DataFrame:
     """Return responses with the refused points as failed rows: status, reason, and null for everything else."""
+    import pandas as pd
+
     if not values.refused:
         return table
     outcome, refused = OUTCOMES[BAD_INPUT], pd.Series(np.isin(np.arange(values.count), list(values.refused)), index=table.index)

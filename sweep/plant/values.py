@@ -1,14 +1,19 @@
 """The quantities of a study for many points at once: what is written, overlaid by each point's columns and by events."""
 
+from __future__ import annotations
+
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 from numpy.typing import NDArray
 
 from sweep.base.errors import SweepError
 from sweep.study.model import Bound, Study, differs, unset
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 Floats = NDArray[np.float64]
 
@@ -35,11 +40,11 @@ class Values:
             raise SweepError(f"{path} is not written in the study, and this question needs it")
         return self.get(path)
 
-    def overlaid(self, sets: Mapping[str, float | Floats]) -> "Values":
+    def overlaid(self, sets: Mapping[str, float | Floats]) -> Values:
         """Return these quantities with some replaced."""
         return Values(self.count, {**self.given, **sets}, self.refused)
 
-    def refusing(self, refused: Mapping[int, str], written: Mapping[str, float]) -> "Values":
+    def refusing(self, refused: Mapping[int, str], written: Mapping[str, float]) -> Values:
         """Return these quantities with the written ones at the points that are refused."""
         given = dict(self.given)
         rows = list(refused)

@@ -52,6 +52,15 @@ def test_help_loads_nothing_heavy():
     assert "set()" == found.stderr.strip()
 
 
+def test_check_loads_neither_tables_nor_the_kernel(here):
+    code = (
+        "import sys\nfrom sweep.cli.main import main\nmain(['check', 'small.toml'])\n"
+        "print({'pandas', 'numba', 'matplotlib', 'pyarrow'} & set(sys.modules), file=sys.stderr)"
+    )
+    found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert "set()" == found.stderr.strip()
+
+
 def test_new_check_and_never_overwrite(here, capsys):
     assert 0 == main(["new", "start.toml"])
     text = (here / "start.toml").read_text()
