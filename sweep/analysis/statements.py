@@ -40,6 +40,11 @@ def assumptions(study: Study) -> list[str]:
         )  # fmt: skip
         wall = "counts" if settings is not None and settings.wall else "is left out (thermal inertia 1)"
         found.append(f"When cooling fails the feeds {feeds}; decomposition, stirrer and losses are left out of MTSR; the vessel's wall {wall}.")
+        found.append(
+            "A decomposition that does not speed up by 1 % or more has no time to maximum rate: where less than 50 K of rise is left the horizon "
+            "stands as a bound, else zero. Close to that boundary the shortest time in a batch can be much shorter than the one shown; read the "
+            "adiabatic rise beside it."
+        )
         found.append("T_D24 is searched from -50 to 500 degC, on the mixture whose time to maximum rate is shortest.")
     return found
 
