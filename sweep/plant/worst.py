@@ -96,7 +96,7 @@ def _suspicious(batch: Batch, found: list[Floats], competing: bool) -> np.ndarra
 
 def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolerance: float, found: list[Floats], worth: float) -> Moments:
     """March the failures between the samples where the estimates `found` are highest, and where they bend; and those at a second summit that
-    is nearly as high; and where the reactant that runs out first changes, for there the curves have a kink."""
+    is nearly as high; and where the reactant that runs out first changes, for there the curves have a kink; and where the batch itself is hottest."""
     every, times, states_there = [np.zeros(0, dtype=int)], [np.zeros(0)], [np.zeros((0, batch.states.shape[2]))]
     for which, estimate in enumerate(found):
         top, second, near = _summits(estimate, NEARLY[which])
@@ -106,12 +106,19 @@ def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolera
                 every.append(np.repeat(rows, time.shape[1]))
                 times.append(time.ravel())
                 states_there.append(state.reshape(-1, state.shape[2]))
-    for rows, before, time in moments.kinks(study, plant, batch):
+    for rows, before, time in (*moments.kinks(study, plant, batch), _hottest(batch)):
         state = states_at(plant, rows, batch.times[rows, before], batch.states[rows, before], time[:, None], tolerance)
         every.append(rows)
         times.append(time)
         states_there.append(state[:, 0])
     return march_grid(study, plant, np.concatenate(every), np.concatenate(times)[:, None], np.concatenate(states_there)[:, None], rough, worth)
+
+
+def _hottest(batch: Batch) -> tuple[np.ndarray, np.ndarray, Floats]:
+    """Return points (M,), the sample before, and when each is hottest (s): MTSR is nowhere below the temperature of the batch itself."""
+    rows = np.flatnonzero((batch.hottest > 0.0) & (batch.hottest < batch.end) & batch.inside[:, 0])
+    before = np.maximum((batch.inside & (batch.times <= batch.hottest[:, None])).sum(axis=1) - 1, 0)
+    return rows, before[rows], batch.hottest[rows]
 
 
 def _summits(estimate: Floats, nearly: float) -> tuple[np.ndarray, np.ndarray, np.ndarray]:

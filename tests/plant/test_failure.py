@@ -161,3 +161,12 @@ def test_a_rate_that_still_rises_at_the_horizon_is_a_bound(demo):
         at_horizon = found["tmr_ad_s"] >= 2_592_000.0
         assert at_horizon.any()
         assert (found["tmr_ad_censored"] == 1.0)[at_horizon].all()
+
+
+def test_mtsr_is_nowhere_below_the_temperature_of_the_batch(demo):
+    """Batches that nearly run away are hottest within seconds, between the samples."""
+    text = COOLED.replace('"-80 kJ/mol"', '"-300 kJ/mol"').replace('value = "2e-4 1/s"', 'value = "3e-3 1/s"')
+    study = read_text(text)
+    table = evaluate(study, pd.DataFrame({"start": np.linspace(300.0, 330.0, 24)}))
+    assert (table["status"] == "done").all()
+    assert (table["mtsr_K"] >= table["max_temperature_K"] - 0.01).all()
