@@ -23,7 +23,7 @@ FINE = 33  # between the neighbours of the highest one
 @dataclass(frozen=True)
 class Batch:
     """times (N, K) s ascending, states (N, K, R), inside (N, K): up to the batch's end and marched; end (N,) s, at_end (N, R);
-    hottest (N,) s: when its temperature is highest."""
+    hottest (N,) s: when its temperature is highest, peak (N,) K."""
 
     times: Floats
     states: Floats
@@ -31,6 +31,7 @@ class Batch:
     end: Floats
     at_end: Floats
     hottest: Floats
+    peak: Floats
 
 
 def march_batches(plant: Charged, tolerance: float) -> tuple[Marched, Batch]:
@@ -50,7 +51,7 @@ def march_batches(plant: Charged, tolerance: float) -> tuple[Marched, Batch]:
     end, at_end = _end(marched)
     inside = (times <= end[:, None]) & np.isfinite(marched.samples[:, :, 0])
     times = np.where(np.isnan(times), end[:, None], times)  # places without a sample, outside
-    return marched, Batch(times, marched.samples, inside, end, at_end, marched.out[:, at.OUT_T_MAX_TIME])
+    return marched, Batch(times, marched.samples, inside, end, at_end, marched.out[:, at.OUT_T_MAX_TIME], marched.out[:, at.OUT_T_MAX])
 
 
 def _times(plant: Charged, end: Floats) -> Floats:

@@ -18,6 +18,7 @@ from sweep.study.model import Study
 WINDOWS = 4  # stretches of the batch, in each of which the most suspicious moment is marched
 WORTH = 0.3  # of the closed form's logarithm: the truth is some 5 to 30 % longer, so a moment less urgent by more than this is not marched
 NONE = -1.0  # no moment is: near the worst one the closed form alone tells which is worse
+NEAR_PEAK = 5.0  # K
 NEARLY = (1.5, 0.1)  # K, and of the closed form's logarithm: a second summit that is lower by less is looked at as closely
 LITTLE = 0.1  # likewise among all samples of a batch, to begin with
 FIRST = 3  # moments of a point that are marched again: where the time to maximum rate jumps, the very worst may fall to either side
@@ -106,7 +107,7 @@ def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolera
                 every.append(np.repeat(rows, time.shape[1]))
                 times.append(time.ravel())
                 states_there.append(state.reshape(-1, state.shape[2]))
-    for rows, before, time in (*moments.kinks(study, plant, batch), _hottest(batch)):
+    for rows, before, time in (*moments.kinks(study, plant, batch), _hottest(batch, found[0].max(axis=1))):
         state = states_at(plant, rows, batch.times[rows, before], batch.states[rows, before], time[:, None], tolerance)
         every.append(rows)
         times.append(time)
@@ -114,9 +115,10 @@ def _march_tops(study: Study, plant: Charged, batch: Batch, rough: float, tolera
     return march_grid(study, plant, np.concatenate(every), np.concatenate(times)[:, None], np.concatenate(states_there)[:, None], rough, worth)
 
 
-def _hottest(batch: Batch) -> tuple[np.ndarray, np.ndarray, Floats]:
-    """Return points (M,), the sample before, and when each is hottest (s): MTSR is nowhere below the temperature of the batch itself."""
-    rows = np.flatnonzero((batch.hottest > 0.0) & (batch.hottest < batch.end) & batch.inside[:, 0])
+def _hottest(batch: Batch, mtsr: Floats) -> tuple[np.ndarray, np.ndarray, Floats]:
+    """Return points (M,), the sample before, and when each is hottest (s), where that comes near the highest estimate `mtsr` (N,) of its
+    samples: MTSR is nowhere below the temperature of the batch itself."""
+    rows = np.flatnonzero((batch.peak > mtsr - NEAR_PEAK) & (batch.hottest > 0.0) & (batch.hottest < batch.end) & batch.inside[:, 0])
     before = np.maximum((batch.inside & (batch.times <= batch.hottest[:, None])).sum(axis=1) - 1, 0)
     return rows, before[rows], batch.hottest[rows]
 
