@@ -33,6 +33,14 @@ class Batch:
     hottest: Floats
     peak: Floats
 
+    def last(self) -> np.ndarray:
+        """Return the place (N,) of each batch's last sample inside."""
+        return np.maximum(self.inside.sum(axis=1) - 1, 0)
+
+    def over(self) -> Floats:
+        """Return the time (N,) s of each batch's last sample inside."""
+        return np.where(self.inside, self.times, 0.0).max(axis=1)
+
 
 def march_batches(plant: Charged, tolerance: float) -> tuple[Marched, Batch]:
     """March batches from start to the longest time; return what that left, and samples up to each batch's end.
