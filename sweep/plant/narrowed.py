@@ -18,7 +18,7 @@ CLOSE = 0.0025  # of the batch time; the marches left and right of the worst one
 FLANK = 0.9 * CLOSE  # how far from it the first two are
 ROUNDS = 7  # of marches where they are not near: after the flanks each in thirds of the bracket before
 NEARLY = (1.5, 0.1)  # K, and of the closed form's logarithm: a second summit that is lower by less is looked at as closely
-GAIN = (1e-3, 1e-4)  # likewise: the top of the parabola is marched where it promises more than this
+GAIN = (3e-4, 1e-5)  # likewise: the top of the parabola is marched where it promises more than this
 
 
 @dataclass(frozen=True)

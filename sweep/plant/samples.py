@@ -17,7 +17,7 @@ from sweep.study.model import Study
 
 SAMPLES = 33  # evenly from the start to the batch's end, beside the recipe's own boundaries
 SAME = 1e-9  # of the batch time; two moments closer than this are one
-FINE = 33  # between the neighbours of the highest one
+FINE = 17  # between the neighbours of the highest one
 
 
 @dataclass(frozen=True)
@@ -81,8 +81,8 @@ def largest_accumulation(study: Study, plant: Charged, batch: Batch, tolerance: 
     """Return the largest accumulation up to the batch's end, (N,): the highest sample, refined between its neighbours."""
 
     def share(rows: np.ndarray, times: Floats, state: Floats) -> Floats:
-        known = np.isfinite(state[:, :, 0])
-        return np.where(known, states.accumulation(study, plant, rows, np.nan_to_num(state, nan=300.0), np.nan_to_num(times)), -np.inf)
+        value = states.accumulation(study, plant, rows, state, times)
+        return np.where(np.isfinite(value), value, -np.inf)
 
     rows = np.arange(plant.values.count)
     value = np.where(batch.inside, share(rows, batch.times, batch.states), -np.inf)
