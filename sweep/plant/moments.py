@@ -26,7 +26,7 @@ COLDEST = 100.0  # K; an endothermic completion is estimated no colder
 Estimate = Callable[[np.ndarray, Floats, Floats], Floats]  # points (M,), times (M, K), states (M, K, R) -> (M, K)
 
 
-def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> tuple[Floats, list[Floats], Floats]:
+def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> tuple[Floats, dict[int, Floats], Floats]:
     """Return the temperature (N, K) that complete synthesis would reach after a failure, the moles left, (N, K) each, and the volume (m3)."""
     nz, values = plant.program.structure.sources.shape[0], plant.values
     moles, T = states.amounts_of(plant, rows, state, times), np.ascontiguousarray(state[:, :, nz])
@@ -34,19 +34,19 @@ def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats
     share = states.share_at(plant, rows, times + delay)
     if delay.any():
         coming = share - states.share_at(plant, rows, times)
-        moles = [n + np.einsum("nfk,nf->nk", coming, plant.brought.fed[rows, :, i]) for i, n in enumerate(moles)]
+        moles = {i: n + np.einsum("nfk,nf->nk", coming, plant.brought.fed[rows, :, i]) for i, n in moles.items()}
     heat, left = states.completed(study, moles, states.reference_heats(study, plant)[rows])
     wall = values.get("vessel.heat_capacity")[rows] * float(study.failure is not None and study.failure.wall)
     cp = plant.cp[rows]
     powers = range(1, plant.program.structure.cp_terms)
     capacity = wall[:, None] + np.zeros(T.shape)
-    for i, n in enumerate(moles):
+    for i, n in moles.items():
         capacity += n * sum((cp[:, i, k, None] * T**k for k in powers), cp[:, i, 0, None])
     volume = plant.brought.volume[rows, None] + np.einsum("nfk,nf->nk", share, plant.brought.feed_volume[rows])
     return T + heat / capacity, left, volume
 
 
-def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles: list[Floats], volume: Floats) -> Floats:
+def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles: dict[int, Floats], volume: Floats) -> Floats:
     """Return minus the logarithm of the closed form of the time to maximum rate (N, K), up to a constant per point."""
     block = plant.blocks[rows, 0]
     terms, _, _ = rates.parts_of_block(plant, block)
@@ -66,7 +66,7 @@ def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles
                         rate = rate * (np.abs(x) + delta) ** factor.extra
                 total += np.maximum(rate * given_off[:, j][:, None], 0.0) * energy * R / T**2
             k += len(reaction)
-        capacity = sum(n * plant.cp[rows, i, 0, None] for i, n in enumerate(moles))
+        capacity = sum(n * plant.cp[rows, i, 0, None] for i, n in moles.items())
         found = np.log(total / np.where(capacity > 0.0, capacity, 1.0))
     return np.where(np.isnan(found), -np.inf, found)
 

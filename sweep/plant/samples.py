@@ -17,7 +17,7 @@ from sweep.study.model import Study
 
 SAMPLES = 33  # evenly from the start to the batch's end, beside the recipe's own boundaries
 SAME = 1e-9  # of the batch time; two moments closer than this are one
-FINE = 17  # between the neighbours of the highest one
+FINE = 33  # between the neighbours of the highest one
 
 
 @dataclass(frozen=True)
