@@ -9,10 +9,12 @@ from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import pytest
+from joblib import Parallel, delayed
 
 from sweep.kernel import cache, code
 from sweep.kernel.compiler import object_code
 from tests.kernel import tiny
+from tests.kernel.marching import marched
 
 SHARES = 2928  # 1000 (1 + 1/2 + ... + 1/10) = 2928.97
 PACKAGE = Path(cache.__file__).parents[1]
@@ -218,6 +220,28 @@ def test_march_is_compiled_from_no_other_file():
     names = set(subprocess.run([sys.executable, "-c", asked], capture_output=True, text=True, check=True).stdout.split())
     assert "sweep.kernel.jacobian" in names
     assert {"sweep", "sweep.base", "sweep.base.status"} == {name for name in names if not name.startswith("sweep.kernel")}
+
+
+@pytest.mark.long
+def test_march_just_compiled_loaded_and_compiled_again_are_the_same_bytes(tmp_path, monkeypatch):
+    """Processes of their own with caches of their own; the second of them loads what the first compiled, without numba."""
+    told = []
+    for home, seed in (("first", "1"), ("first", "2"), ("second", "3")):
+        monkeypatch.setenv("SWEEP_CACHE_DIR", str(tmp_path / home))
+        monkeypatch.setenv("PYTHONHASHSEED", seed)
+        told.append(subprocess.run([sys.executable, "-m", "tests.kernel.marching"], capture_output=True, text=True, check=True).stdout.split())
+    assert ["numba", "no-numba", "numba"] == [words[0] for words in told]
+    assert 1 == len({words[1] for words in told})
+    assert 1 == len({path.read_bytes() for path in tmp_path.rglob("march.o")})
+
+
+@pytest.mark.long
+def test_worker_process_loads_the_march_without_numba():
+    code.march_code()
+    told = Parallel(n_jobs=2, backend="loky")(delayed(marched)() for _ in range(4))
+    assert {told[0]} == set(told)
+    assert "no-numba" == told[0][0]
+    assert marched()[1] == told[0][1]
 
 
 def test_changed_kernel_does_not_see_the_old_code(tmp_path, monkeypatch):
