@@ -4,9 +4,11 @@ A change in any kernel file makes a folder of its own, so old code never runs. A
 its folder's and its bytes: machine code that was damaged or moved is not read, and never runs.
 """
 
+import contextlib
 import hashlib
 import os
 import platform
+import stat
 import tempfile
 from functools import cache
 from importlib.metadata import version
@@ -49,12 +51,26 @@ def _writable(folder: Path) -> bool:
     return True
 
 
+def _of_this_user(home: Path) -> bool:
+    """Make a folder that this user alone can write, and tell whether it is: in a place that all may write to, somebody else may have made it,
+    and what lies in it would run as ours."""
+    with contextlib.suppress(OSError):
+        home.mkdir(mode=0o700, parents=True, exist_ok=True)
+        found = home.lstat()
+        return not hasattr(os, "getuid") or (stat.S_ISDIR(found.st_mode) and found.st_uid == os.getuid() and not found.st_mode & 0o022)
+    return False
+
+
 @cache
 def folder() -> Path | None:
     """Return the first writable place for compiled code, or None where there is none."""
     name = f"kernel-{digest()}"
     given = os.environ.get("SWEEP_CACHE_DIR")
-    homes = [Path(given)] if given else [Path(platformdirs.user_cache_dir("sweep-reactor")), Path(tempfile.gettempdir()) / "sweep-reactor"]
+    if given:
+        homes = [Path(given)]
+    else:
+        shared = Path(tempfile.gettempdir()) / f"sweep-reactor-{os.getuid() if hasattr(os, 'getuid') else 0}"
+        homes = [Path(platformdirs.user_cache_dir("sweep-reactor")), *([shared] if _of_this_user(shared) else [])]
     return next((home / name for home in homes if _writable(home / name)), None)
 
 

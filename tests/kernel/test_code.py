@@ -114,6 +114,19 @@ def test_runs_where_nothing_can_be_kept(folder, monkeypatch, shares):
     assert 2 == compiler.calls
 
 
+def test_shared_place_that_others_can_write_is_not_used(tmp_path, monkeypatch):
+    """Where the home cannot hold the cache, a folder in the temporary place does: this user's alone, for what lies in it is run."""
+    (tmp_path / "no folder").write_text("")
+    monkeypatch.setattr(cache.platformdirs, "user_cache_dir", lambda _: str(tmp_path / "no folder" / "below"))
+    monkeypatch.setattr(cache.tempfile, "gettempdir", lambda: str(tmp_path))
+    monkeypatch.delenv("SWEEP_CACHE_DIR", raising=False)
+    found = cache.folder.__wrapped__()
+    assert tmp_path == found.parents[1]
+    assert 0o700 == found.parent.stat().st_mode & 0o777
+    found.parent.chmod(0o777)
+    assert cache.folder.__wrapped__() is None
+
+
 def test_threads_that_ask_at_once_compile_once(folder, shares):
     compiler, ready = Compiler(shares), threading.Barrier(8)
 
