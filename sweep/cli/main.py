@@ -13,7 +13,7 @@ from sweep.cli.terminal import Terminal
 
 DONE, SOME_FAILED, WRONG, INTERRUPTED, SURROUNDINGS = range(5)
 _EPILOG = """exit status: 0 done; 1 done, but points failed or a limit does not hold in `batch`; 2 the study or the call is wrong;
-3 interrupted, `run` goes on where it stopped; 4 the surroundings failed (disk, lock, damaged store).
+3 interrupted, `run` goes on where it stopped; 4 the surroundings failed (disk, lock, damaged store, cluster).
 
 The program screens; it does not approve: figures rest on the kinetics given, hazards need calorimetric testing and a review by qualified
 people under local codes."""
@@ -39,7 +39,11 @@ def _parser() -> argparse.ArgumentParser:
     batch.add_argument("--no-figures", action="store_true", help="write the tables only")
     run = commands.add_parser("run", help="all that the study asks for; goes on where an interrupted run stopped")
     run.add_argument("study", metavar="STUDY", help="a study file (TOML)")
-    run.add_argument("--workers", type=int, metavar="N", help="how many cores (default: all)")
+    run.add_argument("--workers", type=int, metavar="N", help="how many of this machine's cores (default: all)")
+    run.add_argument(
+        "--cluster", metavar="ADDRESS",
+        help="have the plan's points evaluated by the workers of the dask scheduler at tcp://HOST:PORT or tls://HOST:PORT (analyses stay here)",
+    )  # fmt: skip
     run.add_argument("--fresh", action="store_true", help="move earlier results aside and start again")
     report = commands.add_parser("report", help="figures and report again, from stored results")
     report.add_argument("folder", metavar="FOLDER", help="a results folder")
@@ -111,7 +115,7 @@ def _run(options: argparse.Namespace, terminal: Terminal) -> int:
     terminal.compiling()
     from sweep.workflow.run import run
 
-    found = run(study, options.out, options.workers, options.fresh, terminal.progress, terminal.note)
+    found = run(study, options.out, options.workers, options.fresh, terminal.progress, terminal.note, cluster=options.cluster)
     tell_run(found, study, terminal)
     return SOME_FAILED if found.summary["points"]["failed"] else DONE
 

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any, Literal, NamedTuple
 
 import numpy as np
 
-from sweep.base.status import DONE, OUTCOMES, UNBALANCED
+from sweep.base.status import CRASHED, DONE, OUTCOMES, UNBALANCED
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched
 from sweep.plant import states
@@ -82,6 +82,16 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     found = _respond(study, plant, marched, batch, tolerance)
     table = blank(values, _table(responses(study), found, points.index))
     return pd.concat([points, table], axis=1)
+
+
+def crashed(study: Study, points: pd.DataFrame) -> pd.DataFrame:
+    """Return inputs and responses of points whose evaluation ended its process: failed, with the reason, and null for everything else."""
+    import pandas as pd
+
+    outcome, count, columns = OUTCOMES[CRASHED], len(points), responses(study)
+    null: dict[str, Any] = {"float": np.full(count, np.nan), "text": [""] * count, "bool": [None] * count, "int": [None] * count}
+    found = {r.column: null[r.kind] for r in columns} | {"status": [outcome.status] * count, "reason": [outcome.sentence] * count}
+    return pd.concat([points, _table(columns, found, points.index)], axis=1)
 
 
 def _table(columns: tuple[Response, ...], found: dict[str, Floats | list[str]], index: pd.Index[Any]) -> pd.DataFrame:

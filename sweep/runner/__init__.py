@@ -4,6 +4,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from sweep.runner.cluster import checked_address
     from sweep.runner.parallel import simulate
     from sweep.runner.progress import Progress, Watcher
     from sweep.runner.run import sweep_points
@@ -11,9 +12,9 @@ if TYPE_CHECKING:
 
 _HOME = {
     "simulate": "parallel", "Progress": "progress", "Watcher": "progress", "sweep_points": "run", "Store": "store",
-    "read_manifest": "store", "read_points": "store",
+    "read_manifest": "store", "read_points": "store", "checked_address": "cluster",
 }  # fmt: skip
-__all__ = ["Progress", "Store", "Watcher", "read_manifest", "read_points", "simulate", "sweep_points"]
+__all__ = ["Progress", "Store", "Watcher", "checked_address", "read_manifest", "read_points", "simulate", "sweep_points"]
 
 
 def __getattr__(name: str) -> Any:

@@ -1,22 +1,41 @@
 """The points of a plan, evaluated and stored; an interrupted run goes on where it stopped."""
 
 import time
+from collections.abc import Callable, Generator
+from contextlib import closing
+
+import pandas as pd
 
 from sweep.runner.parallel import in_order
 from sweep.runner.progress import Meter, Watcher
 from sweep.runner.store import ROWS, Store
 
 
-def sweep_points(store: Store, workers: int | None = None, watcher: Watcher | None = None) -> int:
-    """Evaluate what a store lacks; return how many points were computed now."""
+def sweep_points(
+    store: Store, workers: int | None = None, watcher: Watcher | None = None, cluster: str | None = None, tell: Callable[[str], None] | None = None
+) -> int:
+    """Evaluate what a store lacks, on this machine's cores or on a cluster; return how many points were computed now."""
     missing = store.missing()
     size = store.plan.size
     lacking = sum(min(ROWS, size - start) for start in missing)
     meter = Meter(size, size - lacking, watcher)
     store.save()
     begun = time.monotonic()
-    for start, table in in_order(store.study, store.plan, missing, ROWS, workers):
-        store.add_points(start, table)
-        meter.add(len(table))
-        store.log(what="points", start=start, rows=len(table), seconds=round(time.monotonic() - begun, 3))
+    with closing(_tables(store, missing, workers, cluster, tell)) as tables:
+        for start, table in tables:
+            store.add_points(start, table)
+            meter.add(len(table))
+            store.log(what="points", start=start, rows=len(table), seconds=round(time.monotonic() - begun, 3))
     return lacking
+
+
+def _tables(
+    store: Store, missing: list[int], workers: int | None, cluster: str | None, tell: Callable[[str], None] | None
+) -> Generator[tuple[int, pd.DataFrame], None, None]:
+    """Yield (start, table) of each file that is missing."""
+    if cluster is not None and missing:
+        from sweep.runner.cluster import on_cluster
+
+        yield from on_cluster(store.study, store.plan, missing, ROWS, cluster, tell, store.log)
+    else:
+        yield from in_order(store.study, store.plan, missing, ROWS, workers)

@@ -20,7 +20,7 @@ from sweep.analysis.window import window
 from sweep.base.records import canonical
 from sweep.plan import planned
 from sweep.plant import limits, margins
-from sweep.runner import Store, Watcher, read_manifest, read_points, simulate, sweep_points
+from sweep.runner import Store, Watcher, checked_address, read_manifest, read_points, simulate, sweep_points
 from sweep.study.model import Study
 from sweep.workflow.results import as_csv, folder_of
 
@@ -52,17 +52,19 @@ class Run:
 
 def run(
     study: Study, out: str | Path | None = None, workers: int | None = None, fresh: bool = False,
-    watcher: Watcher | None = None, tell: Teller | None = None, figures: bool = True,
+    watcher: Watcher | None = None, tell: Teller | None = None, figures: bool = True, cluster: str | None = None,
 ) -> Run:  # fmt: skip
     """Compute all that a study asks for into a results folder, going on where an interrupted run stopped.
 
     out: the folder (default results/<study's file name>/); workers: default all cores; fresh: move earlier results aside; watcher: told how
-    far the points are; tell: told what is being done. SweepError, ForeignResultsError, SurroundingsError as their names say.
+    far the points are; tell: told what is being done; cluster: the address of a dask scheduler whose workers evaluate the plan's points
+    (analyses are this machine's). SweepError, ForeignResultsError, SurroundingsError as their names say.
     """
     folder, plan = folder_of(study, out), planned(study)
     say = tell or (lambda _: None)
+    address = None if cluster is None else checked_address(cluster)  # before anything is written
     with Store(folder, study, plan, fresh) as store:
-        sweep_points(store, workers, watcher)
+        sweep_points(store, workers, watcher, address, say)
         steps = _Steps(store, study, workers, say)
         summary = steps.summary()
         store.add("summary.json", canonical(summary, indent=1) + "\n")
