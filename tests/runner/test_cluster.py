@@ -5,6 +5,7 @@ import os
 import re
 import shutil
 import signal
+import socket
 import subprocess
 import sys
 import time
@@ -181,6 +182,55 @@ def test_cluster_that_goes_away_leaves_a_run_that_goes_on_here(tmp_path, study, 
     assert not (tmp_path / "out" / ".lock").exists()
     assert 600 - 128 * len(done) + 40 * ("000004.parquet" in done) == _run(tmp_path / "out", study)
     assert undisturbed == _points(tmp_path / "out")
+
+
+def _begun(folder, address, study=SHORT):
+    """Start a long run as a user does, and return its process once a file of points is there."""
+    (folder / "long.toml").write_text(study.replace("levels = 20", "levels = 400").replace("levels = 30", "levels = 400"))
+    call = [sys.executable, "-m", "sweep.cli.main", "run", "long.toml", "--cluster", address]
+    process = subprocess.Popen(call, stderr=subprocess.PIPE, text=True)
+    until = time.monotonic() + 120.0
+    while time.monotonic() < until and process.poll() is None and not any((folder / "results" / "long" / "points").glob("0*.parquet")):
+        time.sleep(0.05)
+    return process
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="signals as POSIX has them")
+def test_interrupted_run_leaves_the_cluster_free(here, shared):
+    process = _begun(here, shared.scheduler_address)
+    process.send_signal(signal.SIGINT)
+    _, said = process.communicate(timeout=60)
+    assert 3 == process.returncode
+    assert "goes on where it stopped" in said
+    assert not (here / "results" / "long" / ".lock").exists()
+    until = time.monotonic() + 20.0
+    while shared.scheduler.tasks and time.monotonic() < until:
+        time.sleep(0.1)
+    assert 0 == len(shared.scheduler.tasks)
+    assert 2 == len(shared.scheduler.workers)
+
+
+@pytest.mark.long
+def test_scheduler_that_is_killed_ends_the_run_in_words(here):
+    with socket.socket() as free:
+        free.bind(("127.0.0.1", 0))
+        address = f"tcp://127.0.0.1:{free.getsockname()[1]}"
+    dask_at = [sys.executable, "-m", "dask"]
+    quiet = {"stdout": subprocess.DEVNULL, "stderr": subprocess.DEVNULL}
+    options = ["--dashboard-address", "127.0.0.1:0"]
+    scheduler = subprocess.Popen([*dask_at, "scheduler", "--host", "127.0.0.1", "--port", address.rpartition(":")[2], *options], **quiet)
+    workers = subprocess.Popen([*dask_at, "worker", address, "--nworkers", "2", "--nthreads", "1", *options], **quiet)
+    try:
+        process = _begun(here, address)
+        scheduler.kill()
+        _, said = process.communicate(timeout=60)
+        assert 4 == process.returncode
+        assert f"the cluster at {address} went away: " in said
+        assert "the points that are done stay" in said
+    finally:
+        for each in (scheduler, workers):
+            each.terminate()
+            each.wait(30)
 
 
 def test_workers_that_differ_are_refused_by_name(here, capsys):
