@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import asyncio
 import contextlib
 import importlib
 import importlib.util
@@ -9,6 +10,7 @@ import logging
 import re
 import warnings
 from collections.abc import Generator, Iterator
+from concurrent.futures import ThreadPoolExecutor
 from typing import TYPE_CHECKING
 
 import pandas as pd
@@ -22,7 +24,7 @@ from sweep.study.model import Study
 if TYPE_CHECKING:
     from distributed import Client
 
-INSTALL = "pip install 'sweep-reactor[cluster]'"
+INSTALL = "pip install '.[cluster]' in a clone of the program, see the README"
 _ADDRESS = re.compile(r"(?:(?P<scheme>[a-z]+)://)?(?P<host>[\w.-]+|\[[0-9a-fA-F:.%]+\]):(?P<port>\d{1,5})", re.ASCII)
 _QUIET = ("distributed", "distributed.client")  # loggers that would write over the progress; what matters is said by the errors below
 
@@ -80,6 +82,7 @@ def _connected(address: str) -> Iterator[Client]:
 
     with _quiet():
         try:
+            _probe(address)
             with warnings.catch_warnings():
                 warnings.simplefilter("ignore", VersionMismatchWarning)  # versions are compared below, and a difference ends the run
                 client = distributed.Client(address, timeout=patience(), set_as_default=False)
@@ -90,6 +93,28 @@ def _connected(address: str) -> Iterator[Client]:
         finally:
             with contextlib.suppress(Exception):
                 client.close(timeout=5)
+
+
+def _probe(address: str) -> None:
+    """Raise what is wrong with an address: a client would wait for ever at a port that is not dask's, and complain when it goes."""
+    from distributed.core import rpc
+    from distributed.security import Security
+
+    security = Security().get_connection_args("client")
+    if address.startswith("tls:") and security.get("ssl_context") is None:
+        raise ValueError("no certificates are given")
+
+    async def ask() -> str:
+        async with rpc(address, timeout=patience(), connection_args=security) as there:
+            return str((await there.identity())["type"])
+
+    with ThreadPoolExecutor(1) as thread:  # a caller may have an event loop of its own
+        try:
+            found = thread.submit(lambda: asyncio.run(asyncio.wait_for(ask(), patience() + 1.0))).result()
+        except MemoryError:  # a greeting of another kind, read as the length of a message
+            raise ValueError("what listens there is no dask scheduler") from None
+    if found != "Scheduler":
+        raise ValueError(f"a dask {found.lower()} listens there, not a scheduler")
 
 
 @contextlib.contextmanager

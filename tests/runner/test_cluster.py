@@ -9,6 +9,7 @@ import socket
 import subprocess
 import sys
 import time
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import dask
@@ -264,6 +265,37 @@ def test_nobody_at_the_address(here, impatient, capsys):
     assert re.search(r"no cluster can be reached at tcp://127\.0\.0\.1:1: .*; start it with `dask scheduler`", capsys.readouterr().err)
 
 
+def test_worker_is_no_scheduler(shared, study, impatient):
+    (worker, _) = shared.scheduler.workers
+    with pytest.raises(SurroundingsError, match="a dask worker listens there, not a scheduler"):
+        next(on_cluster(study, planned(study), [0], 600, worker))
+
+
+@pytest.mark.parametrize("answer", [b"", b"HTTP/1.0 400 Bad request\r\n\r\n<!DOCTYPE HTML>"], ids=["silent", "a web server"])
+def test_something_else_at_the_address(study, impatient, answer):
+    begun = time.monotonic()
+    with socket.create_server(("127.0.0.1", 0)) as server, ThreadPoolExecutor(1) as thread:
+        held = []
+
+        def talk():
+            while True:
+                try:
+                    held.append(server.accept()[0])
+                    held[-1].sendall(answer)
+                except OSError:
+                    return
+
+        thread.submit(talk)
+        try:
+            with pytest.raises(SurroundingsError, match="no cluster can be reached"):
+                next(on_cluster(study, planned(study), [0], 600, f"tcp://127.0.0.1:{server.getsockname()[1]}"))
+        finally:
+            server.shutdown(socket.SHUT_RDWR)
+            for each in held:
+                each.close()
+    assert time.monotonic() - begun < 20.0
+
+
 def test_cluster_without_workers(here, impatient, capsys):
     with _cluster(here, workers=0) as started:
         assert 4 == main(["run", "short.toml", "--cluster", started.scheduler_address])
@@ -290,7 +322,7 @@ def test_addresses(address, written):
 def test_package_that_is_absent(here, monkeypatch, capsys):
     monkeypatch.setattr(cluster.importlib.util, "find_spec", lambda name: None)
     assert 2 == main(["run", "short.toml", "--cluster", "tcp://127.0.0.1:1"])
-    assert "pip install 'sweep-reactor[cluster]'" in capsys.readouterr().err
+    assert "pip install '.[cluster]'" in capsys.readouterr().err
     assert not (here / "results").exists()
 
 
@@ -335,4 +367,7 @@ def test_tls_by_dasks_own_configuration(tmp_path, study, impatient, small_files,
             _run(tmp_path / "plain", study, address.replace("tls", "tcp"))
         with dask.config.set(dict.fromkeys(files)), pytest.raises(SurroundingsError, match="certificates come from dask's configuration"):
             _run(tmp_path / "bare", study, address)
+        gone = {"distributed.comm.tls.ca-file": str(tmp_path / "gone.pem")}
+        with dask.config.set(gone), pytest.raises(SurroundingsError, match=r"No such file.*certificates come"):
+            _run(tmp_path / "gone", study, address)
     assert undisturbed == _points(tmp_path / "out")
