@@ -37,6 +37,7 @@ from sweep.runner import remote
 flag = pathlib.Path(FLAG)
 def slow(study, points):
     if flag.exists() and int(flag.read_text()) in points.index:
+        time.sleep(1.0)  # a nanny whose worker dies before it knows that it has started may not start another
         os.kill(os.getpid(), signal.SIGKILL)
     time.sleep(0.1)
     return evaluate(study, points)
@@ -71,9 +72,16 @@ def folder(tmp_path_factory):
 
 
 @pytest.fixture(scope="module")
-def shared(folder):
+def started(folder):
     with _cluster(folder, preload=SLOW) as started:
         yield started
+
+
+@pytest.fixture
+def shared(started):
+    """The cluster of this module, both of its workers up again after the test before."""
+    started.wait_for_workers(2, timeout=60)
+    return started
 
 
 @pytest.fixture(scope="module")
