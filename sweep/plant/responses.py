@@ -6,12 +6,13 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from sweep.base.status import DONE, OUTCOMES, UNBALANCED
+from sweep.base.status import DONE, OUTCOMES, RESTLESS, UNBALANCED
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched
 from sweep.plant import states
+from sweep.plant.course import charge_plant
 from sweep.plant.failure import failure_figures
-from sweep.plant.recipe import TOO_HOT, Charged, charge_plant, has_heat_capacities
+from sweep.plant.recipe import TOO_HOT, Charged, has_heat_capacities
 from sweep.plant.samples import Batch, largest_accumulation, march_batches
 from sweep.plant.sense import blank, sensible_values
 from sweep.plant.target import CAUSES, productivity_unit, target_columns, why_not
@@ -105,6 +106,7 @@ def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, toler
     with np.errstate(invalid="ignore"):
         bad = (code == DONE) & (np.asarray(found["energy_balance_error"]) > BALANCE)
     code = np.where(bad, UNBALANCED, code)
+    code = np.where(plant.happened.restless, RESTLESS, code)
     found.update(target_columns(study, plant, marched, batch, moles))
     _by_species(study, plant, moles, found)
     _missing(found, reasons, why_not(study, plant, marched), heated, full)

@@ -5,7 +5,7 @@ from collections.abc import Mapping
 from itertools import product
 from typing import NamedTuple
 
-from sweep.study.model import FAILURE, Charge, Feed, Limit, Reaction, Species, Target, Variable
+from sweep.study.model import FAILURE, Charge, Event, Feed, Limit, Reaction, Species, Target, Variable
 from sweep.study.reader import Reader
 
 _MOST_CORNERS = 5  # variables; beyond, only the set-point is looked at
@@ -88,6 +88,22 @@ def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Rea
             f"at most failure.horizon, {horizon:g} s",
             "what lies beyond the horizon is not seen",
         )
+
+
+def check_conditions(reader: Reader, events: tuple[Event, ...], reactions: tuple[Reaction, ...], target: Target | None, kinds: set[str]) -> None:
+    """Fault conditions on what the batch does not have."""
+    for event in events:
+        when = event.when
+        if when is None:
+            continue
+        name = when.path.rpartition(".")[0]
+        if when.quantity == "conversion" and target is None:
+            reader.fault(name, "conversion", "[target]", "it counts on the target species")
+        if when.quantity == "jacket_temperature" and not kinds & {"jacket", "coolant"}:
+            reader.fault(name, "jacket_temperature", 'cooling.kind "jacket" or "coolant"', "without a jacket it has no temperature")
+        if when.quantity in ("heat_release", "cooling_duty"):
+            for reaction in reactions:
+                reader.needed(f"reactions.{reaction.name}.heat.value", f"the condition on {when.quantity} needs the heats")
 
 
 class Brought(NamedTuple):

@@ -60,11 +60,40 @@ class Feed:
 
 
 @dataclass(frozen=True)
-class Event:
-    """At a time (s) quantities, or the kind of cooling, change."""
+class Change:
+    """A value given by what it was: how "times" or "plus"; the number stands among the study's values."""
 
-    time: float
-    sets: Mapping[str, float | str]
+    how: str
+
+
+@dataclass(frozen=True)
+class Condition:
+    """A quantity of the batch, above or below a level; path: where the level stands among the study's values.
+
+    quantity: "temperature", "jacket_temperature", "volume", "conversion", "heat_release", "cooling_duty", or "n" (moles) and "c"
+    (concentration) of a species.
+    """
+
+    quantity: str
+    species: str | None
+    sense: str
+    path: str
+
+
+@dataclass(frozen=True)
+class Event:
+    """At a time (s), or when a condition is met, quantities or the kind of cooling change.
+
+    sets: path -> value (SI), kind of cooling, change, or "restored" (a deviation's: what the recipe has there); path: where the event's own
+    quantities stand; once: false where it is armed again; deviation: it overrides the recipe's own events.
+    """
+
+    time: float | None
+    sets: Mapping[str, float | str | Change]
+    path: str = ""
+    when: Condition | None = None
+    once: bool = True
+    deviation: bool = False
 
 
 @dataclass(frozen=True)

@@ -7,7 +7,7 @@ from typing import Any
 
 from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
-from sweep.study import batch, checks, doubts, equipment, question, substances
+from sweep.study import batch, checks, doubts, equipment, events, question, substances
 from sweep.study.lines import lines_of
 from sweep.study.model import FAILURE, Study
 from sweep.study.reader import Reader
@@ -73,10 +73,11 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     reactions = substances.read_reactions(reader, part["reactions"], species)
     equipment.read_vessel(reader, part["vessel"])
     heats = any(f"reactions.{r.name}.heat.value" in reader.values for r in reactions)
-    kinds = batch.kinds_set(document.get("events", []))
+    kinds = events.kinds_set(events.set_tables(document.get("events", [])))
     kind = equipment.read_cooling(reader, given("cooling"), kinds, heats)
     charge, feeds, to_target = batch.read_recipe(reader, part["recipe"], names)
-    events = batch.read_events(reader, document.get("events", []))
+    can = events.settable(reader, reactions, feeds)
+    happens = events.EventReader(reader, names, can).read(document.get("events", []), "events")
     brought = {*charge.amounts, *charge.concentrations, charge.balance, *(s for f in feeds for s in f.species)}
     target = question.read_target(reader, given("target"), names, {s for s in brought if s})
     if to_target and target is None:
@@ -95,18 +96,19 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     checks.check_thermal(reader, species, reactions, isothermal, why)
     checks.check_equilibria(reader, reactions)
     checks.check_limits(reader, limits, reactions, target)
+    checks.check_conditions(reader, happens, reactions, target, {kind, *kinds})
     checks.check_heat_capacities(reader, species, variables)
     checks.check_fill(reader, charge, feeds, variables, target)
     if reader.faults:
         return None
     doubts.warn_ranges(reader, reactions, variables)
     doubts.warn_jacket(reader, kind, reactions, charge, feeds)
-    doubts.warn_recipe(reader, events, feeds, to_target)
+    doubts.warn_recipe(reader, happens, feeds, to_target)
     doubts.warn_heat_capacities(reader, species)
     doubts.warn_rates(reader, reactions, not isothermal or "recipe.charge.temperature" in reader.swept)
     return Study(
         name=name, file=reader.file, folder=folder, text=text, digest=digest(document), title=title, seed=seed, species=species,
-        reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=events, batch_to_target=to_target,
+        reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=happens, batch_to_target=to_target,
         target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
         values=reader.values, units=reader.units, dimensions=reader.dimensions, bounds=reader.bounds, asks_failure=asks_failure,
         warnings=tuple(reader.warnings),

@@ -14,7 +14,7 @@ from sweep.study.model import HOTTEST, Bound, unset
 
 _PLANNED = """
     uncertain correlations sensitivity risk ranges optimum scenarios deviations fit vessels
-    recipe.phases rate when pressure max_pressure
+    recipe.phases rate pressure max_pressure
 """
 LATER = frozenset(_PLANNED.split())  # keys that are planned and not there
 
