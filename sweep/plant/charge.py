@@ -106,12 +106,14 @@ def brought_in(study: Study, values: Values) -> Brought:
     for f, feed in enumerate(study.feeds):
         path = f"recipe.feeds.{feed.name}"
         for name in feed.species:
-            if name not in feed.equivalents:
+            if name not in feed.equivalents or values.has(f"{path}.amount.{name}"):
                 fed[:, f, index[name]] = values.need(f"{path}.amount.{name}")
     fixed = charged + fed.sum(axis=1)
     for f, feed in enumerate(study.feeds):
         path = f"recipe.feeds.{feed.name}"
         for name, of in feed.equivalents.items():
+            if values.has(f"{path}.amount.{name}"):
+                continue  # resolved already, before a deviation
             fed[:, f, index[name]] = values.need(f"{path}.amount.{name}.equivalents") * fixed[:, index[of]]
         start[:, f] = values.get(f"{path}.start")
         end[:, f] = start[:, f] + values.need(f"{path}.duration")

@@ -44,7 +44,7 @@ def by_time(study: Study, values: Values) -> Happenings:
     when = np.zeros((values.count, len(columns)))
     for h, k in enumerate(columns):
         event = study.events[k]
-        when[:, h] = values.get(f"{event.path}.time", event.time or 0.0)
+        when[:, h] = values.get(f"{event.path}.time", event.time or 0.0) + (values.get(event.since) if event.since else 0.0)
     return Happenings(columns, when, when, np.zeros(values.count, dtype=bool))
 
 

@@ -56,10 +56,11 @@ def set_tables(raw: object) -> list[object]:
 
 
 class EventReader:
-    """Reads events into a Reader. names: the species; can: what can be set; deviation: the events are a scenario's."""
+    """Reads events into a Reader. names: the species; can: what can be set; since: of a scenario's events, where the moment stands from which
+    their times are counted."""
 
-    def __init__(self, reader: Reader, names: set[str], can: Mapping[str, str], deviation: bool = False) -> None:
-        self.reader, self.names, self.can, self.deviation = reader, names, can, deviation
+    def __init__(self, reader: Reader, names: set[str], can: Mapping[str, str], since: str = "") -> None:
+        self.reader, self.names, self.can, self.since, self.deviation = reader, names, can, since, bool(since)
 
     def read(self, raw: object, where: str) -> tuple[Event, ...]:
         """Return the events of a list, by time; `where`: its path."""
@@ -104,7 +105,7 @@ class EventReader:
         time = reader.values.get(f"{path}.time")
         if (when is None) == (time is None):
             return None
-        return Event(time, sets, path, when, once, self.deviation)
+        return Event(time, sets, path, when, once, self.deviation, self.since)
 
     def _condition(self, path: str, table: object) -> Condition | None:
         """Return { temperature = { above = "75 degC" } } as a condition."""

@@ -7,13 +7,13 @@ from typing import Any
 
 from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
-from sweep.study import batch, checks, doubts, equipment, events, question, substances
+from sweep.study import batch, checks, doubts, equipment, events, question, scenarios, substances
 from sweep.study.lines import lines_of
 from sweep.study.model import FAILURE, Study
 from sweep.study.reader import Reader
 
 _SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
-             "accuracy", "plan", "window", "batch_time", "failure")  # fmt: skip
+             "accuracy", "plan", "window", "batch_time", "failure", "scenarios", "deviations")  # fmt: skip
 _LARGEST_FILE = 4_000_000  # characters
 
 
@@ -73,7 +73,9 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     reactions = substances.read_reactions(reader, part["reactions"], species)
     equipment.read_vessel(reader, part["vessel"])
     heats = any(f"reactions.{r.name}.heat.value" in reader.values for r in reactions)
-    kinds = events.kinds_set(events.set_tables(document.get("events", [])))
+    first = str(part["cooling"].get("kind", "isothermal"))
+    deviations = scenarios.with_usual(reader, document, species, reactions, first, document)
+    kinds = events.kinds_set(events.set_tables(document.get("events", []))) | scenarios.kinds_of(deviations)
     kind = equipment.read_cooling(reader, given("cooling"), kinds, heats)
     charge, feeds, to_target = batch.read_recipe(reader, part["recipe"], names)
     can = events.settable(reader, reactions, feeds)
@@ -85,18 +87,23 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     _accuracy(reader, part["accuracy"])
     failure = question.read_failure(reader, given("failure"))
     batch_time = question.read_batch_time(reader, given("batch_time"))
-    limits = question.read_limits(reader, part["limits"], species, target)
+    named = scenarios.Responses(question.columns_of(reader, species, target))
+    deviating = scenarios.ScenarioReader(reader, names, can, feeds).read(deviations, named)
+    limits = question.read_limits(reader, part["limits"], species, target, {s.name for s in deviating})
+    deviating = question.asked_of(deviating, limits)
     variables = question.read_variables(reader, part["variables"])
     reader.swept = {path for v in variables for path in v.sets}
     plan = question.read_plan(reader, given("plan"), variables, folder)
     window = question.read_window(reader, given("window"), variables)
     asks_failure = failure is not None or any(limit.name in FAILURE for limit in limits)
-    isothermal = {kind, *kinds} == {"isothermal"} and not asks_failure
-    why = "cooling failure needs an energy balance" if asks_failure else f"a cooling of kind {kind} needs an energy balance"
+    asks_any = asks_failure or any(s.asks_failure for s in deviating)
+    isothermal = {kind, *kinds} == {"isothermal"} and not asks_any
+    why = "cooling failure needs an energy balance" if asks_any else f"a cooling of kind {kind} needs an energy balance"
     checks.check_thermal(reader, species, reactions, isothermal, why)
     checks.check_equilibria(reader, reactions)
     checks.check_limits(reader, limits, reactions, target)
-    checks.check_conditions(reader, happens, reactions, target, {kind, *kinds})
+    for several in (happens, *(s.events for s in deviating)):
+        checks.check_conditions(reader, several, reactions, target, {kind, *kinds})
     checks.check_heat_capacities(reader, species, variables)
     checks.check_fill(reader, charge, feeds, variables, target)
     if reader.faults:
@@ -111,7 +118,7 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
         reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=happens, batch_to_target=to_target,
         target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
         values=reader.values, units=reader.units, dimensions=reader.dimensions, bounds=reader.bounds, asks_failure=asks_failure,
-        warnings=tuple(reader.warnings),
+        warnings=tuple(reader.warnings), scenarios=deviating,
     )  # fmt: skip
 
 

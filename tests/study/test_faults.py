@@ -389,8 +389,6 @@ LATER = {
     "risk": "[risk]\ndraws = 4096",
     "ranges": "[ranges]",
     "optimum": "[optimum]\nminimise = 'cycle_time'",
-    "scenarios": "[scenarios.coolant_lost]\nevents = []",
-    "deviations": "[deviations]",
     "fit": "[fit]",
 }
 
