@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT = range(6)
+DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT, RESTLESS = range(7)
 
 
 @dataclass(frozen=True)
@@ -46,5 +46,11 @@ OUTCOMES = (
         "failed",
         "an input makes no sense at this point",
         "look at the reason named beside it",
+    ),
+    Outcome(
+        RESTLESS,
+        "failed",
+        "its events by condition fired, or were armed again, more than 200 times",
+        "widen the hysteresis of an event that is armed again",
     ),
 )

@@ -60,7 +60,7 @@ def begin_segment(s, w, lane, blocks, point, segments):  # type: ignore[no-untyp
 
 
 @compiled
-def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, times, n_times, whose):  # type: ignore[no-untyped-def]
+def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, times, n_times, levels, whose):  # type: ignore[no-untyped-def]
     """Load a point into a lane; return 1 where it is over before it began."""
     put_integer(whose, lane, point)
     shift, n, nz = 8 * lane, entry(s, at.N_ROWS), entry(s, at.N_STATES)
@@ -75,6 +75,10 @@ def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, times
         keep(place, name, 0.0)
     for k in range(at.N_CONSTANTS):
         keep(place, at.CONSTANTS + k, number(constants, point * at.N_CONSTANTS + k))
+    for k in range(entry(s, at.N_WATCHES)):
+        keep(row(s, w, at.W_LEVEL) + shift, k, number(levels, point * entry(s, at.N_WATCHES) + k))
+    keep(place, at.L_EVENT, -1.0)
+    keep(place, at.L_EVENT_THETA, 2.0)
     keep(place, at.L_SEGMENT, -1.0)
     keep(place, at.L_T_MAX, of_lane(y, nz))
     keep(place, at.L_REACTED_MAX, reacted)
@@ -163,9 +167,12 @@ def take_samples(s, w, lane, times, n_times, samples, whose):  # type: ignore[no
 
 
 @compiled
-def settle(s, w, lane, blocks, point, segments, hot, landed, short, most_steps):  # type: ignore[no-untyped-def]
+def settle(s, w, lane, blocks, point, segments, met, hot, landed, short, most_steps):  # type: ignore[no-untyped-def]
     """After a step: go on with the next segment, or return 1 when the point is over, its status noted."""
     place = row(s, w, at.W_LANE) + 8 * lane
+    if met:
+        keep(place, at.L_TIME, of_lane(place, at.L_EVENT_TIME))
+        return 1
     if hot:
         keep(place, at.L_STATUS, 1.0 * RUNAWAY)
         return 1
@@ -188,6 +195,7 @@ def leave(s, w, lane, out, out_length, whose):  # type: ignore[no-untyped-def]
     for k in range(at.LEFT):
         value = of_lane(place, k)
         put(target, k, math.nan if value <= -_NEVER else value)
+    put(target, at.OUT_EVENT, of_lane(place, at.L_EVENT))
     left, each = states_left(s, out, out_length, point)
     for i in range(entry(s, at.N_ROWS)):
         put(left + AT_LAST * each, i, of_lane(row(s, w, at.W_Y) + shift, i))

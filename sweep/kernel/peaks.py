@@ -56,6 +56,40 @@ def crossing(cubic, level):  # type: ignore[no-untyped-def]
 
 
 @compiled
+def first_reach(cubic):  # type: ignore[no-untyped-def]
+    """Return the least fraction of the step at which a cubic is not below zero; 2 where it is below all along.
+
+    Between its extremes a cubic rises or falls throughout, so that one which comes up and goes back inside the step is not missed.
+    """
+    y0, y1, p, q = cubic
+    if y0 >= 0.0:
+        return 0.0
+    a, b, c = -3.0 * q, 2.0 * (q - p), y1 - y0 + p
+    early, late = 2.0, 2.0
+    spread = b * b - 4.0 * a * c
+    if spread > 0.0:
+        half = -0.5 * (b + math.copysign(math.sqrt(spread), b))
+        early = half / a if a != 0.0 else 2.0
+        late = c / half if half != 0.0 else 2.0
+        if early > late:
+            early, late = late, early
+    low = 0.0
+    for k in range(3):
+        high = early if k == 0 else (late if k == 1 else 1.0)
+        if low < high <= 1.0:
+            if on_cubic(cubic, high) >= 0.0:
+                for _ in range(60):
+                    middle = 0.5 * (low + high)
+                    if on_cubic(cubic, middle) >= 0.0:
+                        high = middle
+                    else:
+                        low = middle
+                return high
+            low = high
+    return 2.0
+
+
+@compiled
 def productivity_slope(cubic, theta, time, h, turnaround):  # type: ignore[no-untyped-def]
     """Return the sign-giving part of d(P / (t + turnaround))/dt, times h."""
     y0, y1, p, q = cubic

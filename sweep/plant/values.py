@@ -42,6 +42,11 @@ class Values:
             raise SweepError(f"{path} is not written in the study, and this question needs it")
         return self.get(path)
 
+    def take(self, rows: NDArray[np.int_]) -> Values:
+        """Return the quantities of some of the points."""
+        given = {path: value[rows] if isinstance(value, np.ndarray) and value.ndim else value for path, value in self.given.items()}
+        return Values(int(rows.size), given)
+
     def overlaid(self, sets: Mapping[str, float | Floats]) -> Values:
         """Return these quantities with some replaced."""
         return Values(self.count, {**self.given, **sets}, self.refused, self.chosen)
