@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT = range(6)
+DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT, CRASHED = range(7)
 
 
 @dataclass(frozen=True)
@@ -46,5 +46,11 @@ OUTCOMES = (
         "failed",
         "an input makes no sense at this point",
         "look at the reason named beside it",
+    ),
+    Outcome(
+        CRASHED,
+        "failed",
+        "the evaluation of this point crashed the process that did it",
+        "the other points stand; a crash is a fault of the program or of the machine, not of the study: report it with this point",
     ),
 )

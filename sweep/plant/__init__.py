@@ -4,10 +4,10 @@ from sweep.plant.criticality import class_sentence
 from sweep.plant.failed_batch import FailurePath, failure_path, failure_times
 from sweep.plant.limits import LimitRow, holds, limits, margins
 from sweep.plant.profile import batch_longest, productivity_of, profile
-from sweep.plant.responses import Response, evaluate, responses
+from sweep.plant.responses import Response, crashed, evaluate, responses
 from sweep.plant.understood import Understood, understood
 
 __all__ = [
-    "FailurePath", "LimitRow", "Response", "Understood", "batch_longest", "class_sentence", "evaluate", "failure_path", "failure_times",
+    "FailurePath", "LimitRow", "Response", "Understood", "batch_longest", "class_sentence", "crashed", "evaluate", "failure_path", "failure_times",
     "holds", "limits", "margins", "productivity_of", "profile", "responses", "understood",
 ]  # fmt: skip

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from sweep.base.status import DONE, OUTCOMES, UNBALANCED
+from sweep.base.status import CRASHED, DONE, OUTCOMES, UNBALANCED
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched
 from sweep.plant import states
@@ -83,6 +83,19 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     columns = {r.column: pd.Series(found[r.column], index=points.index, dtype=_DTYPES[r.kind]) for r in responses(study)}
     table = blank(values, pd.DataFrame(columns).set_axis(points.index))
     return pd.concat([points, table], axis=1)
+
+
+def crashed(study: Study, points: pd.DataFrame) -> pd.DataFrame:
+    """Return inputs and responses of points whose evaluation ended its process: failed, with the reason, and null for everything else."""
+    import pandas as pd
+
+    outcome = OUTCOMES[CRASHED]
+    known = {"status": outcome.status, "reason": outcome.sentence}
+    null = {"float": np.nan, "text": "", "bool": pd.NA, "int": pd.NA}
+    columns = {
+        r.column: pd.Series([known.get(r.column, null[r.kind])] * len(points), index=points.index, dtype=_DTYPES[r.kind]) for r in responses(study)
+    }
+    return pd.concat([points, pd.DataFrame(columns)], axis=1)
 
 
 def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, tolerance: float) -> dict[str, Floats | list[str]]:
