@@ -8,7 +8,7 @@ import unicodedata
 from collections.abc import Iterator
 from typing import TYPE_CHECKING, TextIO
 
-from sweep.base.errors import SurroundingsError
+from sweep.base.errors import SurroundingsError, one_line
 
 if TYPE_CHECKING:
     from sweep.runner import Progress
@@ -48,15 +48,15 @@ class Terminal:
 
     def title(self, text: str) -> None:
         """Print what a result is about."""
-        self.line(text)
+        self.line(one_line(text))
 
     def heading(self, text: str) -> None:
         """Print a heading."""
-        self.line(f"\n{text}")
+        self.line(f"\n{one_line(text)}")
 
     def item(self, text: str) -> None:
         """Print a line of a list."""
-        self.line(f"  {text}")
+        self.line(f"  {one_line(text)}")
 
     def note(self, text: str) -> None:
         """Say what is being done."""

@@ -200,7 +200,7 @@ class Crew:
             if self._closed:
                 raise SurroundingsError("the run was stopped")
             if self._crashes > CRASHES:
-                raise SurroundingsError(f"worker processes crashed {CRASHES} times (the last by {how}); the points that are done stay")
+                raise SurroundingsError(f"worker processes crashed more than {CRASHES} times (the last by {how}); the points that are done stay")
             if self.note is not None:
                 self.note(what="worker ended", how=how, start=str(rows.index[0]), rows=len(rows), worker=worker.process.pid)
         return blamed, how

@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from sweep import __version__
-from sweep.base.errors import ForeignResultsError, SurroundingsError
+from sweep.base.errors import ForeignResultsError, SurroundingsError, one_line
 from sweep.base.records import digest
 from sweep.plan import Planned
 from sweep.study.model import Study
@@ -101,7 +101,7 @@ def _changes(path: str, before: Any, now: Any) -> Iterator[str]:
         return
     for key in dict.fromkeys([*now, *before]):
         if key not in now or key not in before or before[key] != now[key]:
-            yield from _changes(f"{path}.{key}" if path else str(key), before.get(key), now.get(key))
+            yield from _changes(one_line(f"{path}.{key}" if path else str(key)), before.get(key), now.get(key))
 
 
 def _short(value: Any) -> str:
@@ -111,4 +111,5 @@ def _short(value: Any) -> str:
     if isinstance(value, str) and len(value) == 64:
         return value[:12]
     text = json.dumps(value, ensure_ascii=False, default=str) if isinstance(value, (dict, list)) else str(value)
+    text = one_line(text)
     return text if len(text) <= _LONGEST else f"{text[: _LONGEST - 3]}..."
