@@ -20,7 +20,7 @@ from sweep.runner.crew import Crew, Note
 from sweep.runner.worker import PIECE, evaluate_rows
 from sweep.study.model import Study
 
-TASK, AHEAD = 2048, 16  # points that a worker process takes at a time; tasks per worker that are begun before the first of them is asked for
+TASK, AHEAD = 4096, 8  # points that a worker process takes at a time; tasks per worker that are begun before the first of them is asked for
 PROCESSES_FROM = 32_768  # points; below, threads are done before processes have started
 Rows = Callable[[], pd.DataFrame]
 

@@ -17,7 +17,7 @@ import pandas as pd
 from sweep.plant import evaluate
 from sweep.study.model import Study
 
-PIECE = 1024  # points of one call: what it touches stays in the processor's cache
+PIECE = 4096  # points of one call: what a call costs beside its points is small, and what it touches is still some megabytes
 IDLE = 300.0  # s without a task after which a worker ends by itself
 READY = "ready"
 

@@ -31,7 +31,7 @@ def test_point_that_crashes_its_worker_is_named_and_the_others_stand(study, undi
     assert [WHY, WHY] == failed["reason"].tolist()
     deaths = [line for line in map(json.loads, (out / "log.jsonl").read_text().splitlines()) if line["what"] == "worker ended"]
     assert {"SIGSEGV"} == {line["how"] for line in deaths}
-    assert [2048, 2048, 128, 128, 8, 8, 1, 1, 1, 1] == sorted((line["rows"] for line in deaths), reverse=True)
+    assert [4096, 4096, 256, 256, 16, 16, 1, 1, 1, 1] == sorted((line["rows"] for line in deaths), reverse=True)
 
 
 def test_crash_in_the_main_process_is_survived_by_the_same_command(tmp_path):
