@@ -13,7 +13,7 @@ from sweep.cli.terminal import Terminal
 
 DONE, SOME_FAILED, WRONG, INTERRUPTED, SURROUNDINGS = range(5)
 _EPILOG = """exit status: 0 done; 1 done, but points failed or a limit does not hold in `batch`; 2 the study or the call is wrong;
-3 interrupted, `run` goes on where it stopped; 4 the surroundings failed (disk, lock, damaged store).
+3 interrupted, `run` goes on where it stopped; 4 the surroundings failed (disk, lock, damaged store, closed output).
 
 The program screens; it does not approve: figures rest on the kinetics given, hazards need calorimetric testing and a review by qualified
 people under local codes."""

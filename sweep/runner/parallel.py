@@ -1,7 +1,7 @@
 """Points on all cores: pieces of a table, evaluated by threads or by processes, in their order.
 
 The march runs outside Python's lock, so threads share one compiled kernel and nothing is copied; processes are for long plans, where
-their start-up is small and a crash costs one piece.
+their start-up is small and a crash costs one piece, or for any where a crash has to be outlived.
 """
 
 import contextlib
