@@ -118,13 +118,15 @@ class Risk:
         """Return for each limited response, over its values, how probable it is that the response lies beyond: above for a limit `at_most`,
         below for one `at_least`. A draw without a value lies beyond every one."""
         parts = []
+        tail = np.geomspace(1.0 / max(len(self.drawn), 2), 0.5, _CURVE // 2)  # the curve is read where few draws lie beyond
+        levels = np.unique(np.concatenate([tail, np.linspace(0.0, 1.0, _CURVE // 2)]))
         for k, row in enumerate(self.rows):
             size = self.margin[:, k]
             beyond = np.sort(np.where(np.isnan(size), -np.inf, size))
             known = beyond[np.isfinite(beyond)]
             if not known.size:
                 continue
-            at = np.unique(np.quantile(known, np.linspace(0.0, 1.0, _CURVE), method="inverted_cdf"))
+            at = np.unique(np.quantile(known, levels, method="inverted_cdf"))
             counts = np.searchsorted(beyond, at, side="left")
             ends = np.array([wilson(int(c), beyond.size, self.settings.confidence) for c in counts])
             value = row.bound - at if row.sense == "at_most" else row.bound + at

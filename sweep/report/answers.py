@@ -4,10 +4,10 @@ from collections.abc import Mapping
 from typing import Any
 
 from sweep.report.blocks import Answers, Block, Cell, Section, Table, Words, figure, heads, row, verdict
-from sweep.report.display import Scale, conversion, decimals_for, duration, reach, scale_for, share, temperature
+from sweep.report.display import PERCENT, Scale, conversion, decimals_for, duration, reach, scale_for, share, temperature
 from sweep.report.prepare_window import limit_label, variable_scale
 from sweep.report.results import Results
-from sweep.report.wording import listed, plain, sentence, several, split_unit, words
+from sweep.report.wording import input_name, listed, plain, sentence, several, split_unit, words
 
 SENSES = {"at_most": "at most", "at_least": "at least"}
 
@@ -148,11 +148,66 @@ def _failure(results: Results) -> tuple[str, ...]:
     return tuple(lines)
 
 
+def probability(value: float) -> str:
+    """Return a probability in per cent, with the digits that tell it from none and from all."""
+    away = min(value, 1.0 - value)
+    return share(value) if away >= 1e-3 or away == 0.0 else PERCENT.text(value, decimals_for(100.0 * away, 2))
+
+
+def risk(results: Results) -> tuple[str, ...]:
+    """Return the probability that all limits hold, and the time that nearly all batches need."""
+    if why := results.why_not("risk"):
+        return (f"not assessed: {why}",)
+    found, lines = results.block("risk"), list[str]()
+    together = found.get("all_hold")
+    if together:
+        interval = f"{probability(together['low'])} to {probability(together['high'])}"
+        lines.append(f"all limits hold with {probability(together['probability'])} ({share(found['confidence'])} interval {interval})")
+    worst = min(found.get("limits") or (), key=lambda limit: limit["probability"], default=None)
+    if worst is not None and worst["probability"] < 1.0:
+        lines.append(f"least sure: {words(worst['label'])}, {probability(worst['probability'])}")
+    lines += batch_time_line(found)
+    return tuple(lines) or ("no limits are set: percentiles only",)
+
+
+def batch_time_line(found: Mapping[str, Any]) -> list[str]:
+    """Return the batch time that most batches need, with its bound; nothing without a target."""
+    time = found.get("batch_time")
+    if not time:
+        return []
+    if time.get("time_s") is None:
+        return [f"no batch time reaches the target in {share(time['coverage'])} of batches: {time.get('reason')}"]
+    bound = f"at most {duration(time['bound_s'])} with {share(time['confidence'])} confidence" if time.get("bound_s") is not None else time["reason"]
+    return [f"{share(time['coverage'])} of batches reach the target within {duration(time['time_s'])} ({bound})"]
+
+
+def decides(results: Results) -> tuple[str, ...]:
+    """Return the input whose better knowledge buys most, and what moves the least sure limit."""
+    if why := results.why_not("sensitivity"):
+        return (f"not assessed: {why}",)
+    found, lines = results.block("sensitivity"), list[str]()
+    halved = (found.get("halved_spread") or {}).get("inputs") or ()
+    best = next((one for one in halved if one["rise_low"] > 0.0), None)
+    if best is not None:
+        gain = PERCENT.change(best["rise"], digits=2)
+        lines.append(f"{input_name(best['input'])}: with half its spread the probability that all limits hold rises by {gain}")
+    elif halved:
+        lines.append("no input whose halved spread would raise the probability that all limits hold beyond the noise of the draws")
+    for one in found.get("responses") or ():
+        if one.get("shares") and len(lines) < 4:
+            first = one["shares"][0]
+            name = words(split_unit(one["response"])[0])
+            lines.append(f"{name}: {input_name(first['input'])} has {share(first['total'])} of its variance")
+    return tuple(lines) or ("nothing moves any of the responses",)
+
+
 def section(results: Results) -> Section:
     """Return the page's first section."""
     asked = (
         ("What to set", _set(results)), ("How long to run", _run(results)), ("Nearest limit", _nearest(results)),
         ("Operating window", _window(results)), ("If cooling fails at the worst moment", _failure(results)),
+        ("With what probability the limits hold", risk(results)),
+        ("What decides", decides(results)),
     )  # fmt: skip
     blocks: list[Block] = [headline(results), Answers(asked), limits_table(results)]
     warnings = tuple(sentence(text) for text in results.summary.get("warnings") or ())
