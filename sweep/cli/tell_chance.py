@@ -32,7 +32,9 @@ def tell_risk(block: dict[str, Any], terminal: Terminal) -> None:
     time = block["batch_time"]
     if time is not None:
         found = "no time within the march" if time["time_s"] is None else in_words(time["time_s"], "s")
-        sure = f"at most {in_words(time['bound_s'], 's')} with {percent(time['confidence'])} confidence" if time["bound_s"] is not None else time["reason"]
+        sure = time["reason"]
+        if time["bound_s"] is not None:
+            sure = f"at most {in_words(time['bound_s'], 's')} with {percent(time['confidence'])} confidence"
         terminal.item(f"{percent(time['coverage'])} of batches reach the target within {found} ({sure})")
 
 

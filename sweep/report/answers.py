@@ -65,7 +65,9 @@ def headline(results: Results) -> Words:
     broken = [words(limit_label(limit, results)) for limit in limits if not limit["holds"]]
     if not broken:
         every = "The limit holds" if len(limits) == 1 else f"All {len(limits)} limits hold"
-        return Words((f"{every} at the set-point, on the kinetics given.",), look="good")
+        together = results.block("risk").get("all_hold")
+        surely = f" With what is uncertain drawn, all hold with a probability of {stated(together)}." if together else ""
+        return Words((f"{every} at the set-point, on the kinetics given.{surely}",), look="good")
     do = "does" if len(broken) == 1 else "do"
     return Words((f"{len(broken)} of {several(len(limits), 'limit')} {do} not hold at the set-point: {listed(broken)}.",), look="bad")
 
@@ -154,6 +156,13 @@ def probability(value: float) -> str:
     return share(value) if away >= 1e-3 or away == 0.0 else PERCENT.text(value, decimals_for(100.0 * away, 2))
 
 
+def stated(counted: Mapping[str, Any]) -> str:
+    """Return a counted probability; where no draw failed, or none held, only what bounds it: none of many is not never."""
+    if counted["holding"] == counted["draws"]:
+        return f"above {probability(counted['low'])}"
+    return f"below {probability(counted['high'])}" if counted["holding"] == 0 else probability(counted["probability"])
+
+
 def risk(results: Results) -> tuple[str, ...]:
     """Return the probability that all limits hold, and the time that nearly all batches need."""
     if why := results.why_not("risk"):
@@ -162,10 +171,10 @@ def risk(results: Results) -> tuple[str, ...]:
     together = found.get("all_hold")
     if together:
         interval = f"{probability(together['low'])} to {probability(together['high'])}"
-        lines.append(f"all limits hold with {probability(together['probability'])} ({share(found['confidence'])} interval {interval})")
+        lines.append(f"all limits hold with a probability of {stated(together)} ({share(found['confidence'])} interval {interval})")
     worst = min(found.get("limits") or (), key=lambda limit: limit["probability"], default=None)
     if worst is not None and worst["probability"] < 1.0:
-        lines.append(f"least sure: {words(worst['label'])}, {probability(worst['probability'])}")
+        lines.append(f"least sure: {words(worst['label'])}, {stated(worst)}")
     lines += batch_time_line(found)
     return tuple(lines) or ("no limits are set: percentiles only",)
 

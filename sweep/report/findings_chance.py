@@ -5,7 +5,7 @@ from typing import Any
 
 import pandas as pd
 
-from sweep.report.answers import SENSES, batch_time_line, limit_scale, probability
+from sweep.report.answers import SENSES, batch_time_line, limit_scale, probability, stated
 from sweep.report.blocks import Block, Cell, Section, Table, Words, figure, heads, row, table
 from sweep.report.display import NONE, number, scale_for, share
 from sweep.report.results import Results
@@ -47,7 +47,7 @@ def _headline(found: Mapping[str, Any]) -> Words:
     if not together:
         return Words((f"The study has no limits: percentiles only, {drawn}.",), look="warning")
     interval = f"{share(found['confidence'])} interval {probability(together['low'])} to {probability(together['high'])}"
-    said = f"All limits hold with a probability of {probability(together['probability'])} ({interval}), {drawn}."
+    said = f"All limits hold with a probability of {stated(together)} ({interval}), {drawn}."
     if together["holding"] == together["draws"]:
         said += f" No draw failed, which is not never: the probability of failing is at most {probability(1.0 - together['low'])}."
     return Words((said,), look="good" if together["low"] >= 0.95 else "warning" if together["probability"] >= 0.5 else "bad")
@@ -59,7 +59,7 @@ def _limit_row(limit: Mapping[str, Any], found: Mapping[str, Any]) -> tuple[Cell
     why = ", ".join(ends) or ("too few draws fail to tell" if limit["probability"] > 0.5 else "nothing drives it beyond chance")
     cells = row(
         words(limit["label"]), f"{SENSES[limit['sense']]} {scale.text(limit['bound'])}", f"{limit['holding']:,} of {limit['draws']:,}",
-        probability(limit["probability"]), f"{probability(limit['low'])} to {probability(limit['high'])}",
+        stated(limit), f"{probability(limit['low'])} to {probability(limit['high'])}",
     )  # fmt: skip
     return (*cells, Cell(why))
 

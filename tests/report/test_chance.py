@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 
 from sweep.report import draw, draw_chance, prepare_chance
-from sweep.report.answers import probability
+from sweep.report.answers import probability, stated
 from sweep.report.curves import Absent, Facets, Ranking, Rankings
 from sweep.report.results import Results, read
 from sweep.report.wording import input_name
@@ -29,13 +29,13 @@ def whole(tmp_path_factory: pytest.TempPathFactory) -> str:
 @pytest.mark.parametrize(
     "said",
     [
-        "all limits hold with 92.7 % (95 % interval 91.9 % to 93.5 %)",
+        "all limits hold with a probability of 92.7 % (95 % interval 91.9 % to 93.5 %)",
         "least sure: conversion, 92.7 %",
         "95 % of batches reach the target within 6.1 h (at most 6.12 h with 95 % confidence)",
         "k acylation: with half its spread the probability that all limits hold rises by 4.2 percentage points",
         "MTSR: k acylation + Ea acylation has 95.7 % of its variance",
         "from 4,096 draws of 4 uncertain inputs (latin-hypercube)",
-        "MTSR at most 80 °C 4,096 of 4,096 100 % 99.906 % to 100 % too few draws fail to tell",
+        "MTSR at most 80 °C 4,096 of 4,096 above 99.906 % 99.906 % to 100 % too few draws fail to tell",
         "conversion at least 98.5 % 3,799 of 4,096 92.7 % 91.9 % to 93.5 % k acylation low, control error of charge temperature low",
         "MTSR 3.2 × 10⁻⁵ 1.1 × 10⁻⁵ to 9.3 × 10⁻⁵ 4,600",
         "any limit – 0 to 2 × 10⁻⁸ 7,300 No failure down to 1e-08.",
@@ -55,6 +55,7 @@ def test_no_draw_that_failed_is_not_never(tmp_path: Path) -> None:
     summary, manifest, tables = folder.whole()
     summary["risk"]["all_hold"] = {**summary["risk"]["all_hold"], "holding": 4096, "probability": 1.0, "low": 0.99906, "high": 1.0}
     text = page(tmp_path, (summary, manifest, tables)).text
+    assert "all limits hold with a probability of above 99.906 %" in text
     assert "No draw failed, which is not never: the probability of failing is at most 0.094 %." in text
 
 
@@ -85,6 +86,12 @@ def test_nothing_buys_certainty(tmp_path: Path) -> None:
 def test_probabilities_are_told_from_none_and_from_all() -> None:
     expected = ["0 %", "0.0031 %", "0.050 %", "1.25 %", "92.6 %", "99.9 %", "99.9969 %", "100 %"]
     assert expected == [probability(p).replace("\u00a0", " ") for p in (0.0, 3.1e-5, 5e-4, 0.0125, 0.926, 0.999, 0.999969, 1.0)]
+
+
+def test_none_of_many_is_stated_as_a_bound() -> None:
+    counted = {"draws": 4096, "low": 0.0, "high": 9.4e-4}
+    assert "below 0.094\u00a0%" == stated({**counted, "holding": 0, "probability": 0.0})
+    assert "above 99.906\u00a0%" == stated({**counted, "holding": 4096, "probability": 1.0, "low": 0.99906, "high": 1.0})
 
 
 def test_names_of_inputs() -> None:
