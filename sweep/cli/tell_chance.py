@@ -22,7 +22,7 @@ def tell_risk(block: dict[str, Any], terminal: Terminal) -> None:
         drivers = ", ".join(one["input"] for one in line["drivers"][:2])
         terminal.item(f"{line['label']}: {_share(line)}" + (f"; driven by {drivers}" if drivers else ""))
     if block["all_hold"] is not None:
-        terminal.item(f"all limits hold with a probability of {_share(block['all_hold'])}")
+        terminal.item(f"all limits together: {_share(block['all_hold'])}")
     for one in block["rare"]:
         what = "any limit" if one["label"] == "all limits" else one["label"]
         if one["probability"] is None:
@@ -31,17 +31,22 @@ def tell_risk(block: dict[str, Any], terminal: Terminal) -> None:
             terminal.item(f"failing of {what}: {one['probability']:.2g}, {one['low']:.2g} to {one['high']:.2g} (subset simulation)")
     time = block["batch_time"]
     if time is not None:
-        found = "no time within the march" if time["time_s"] is None else in_words(time["time_s"], "s")
-        sure = time["reason"]
-        if time["bound_s"] is not None:
-            sure = f"at most {in_words(time['bound_s'], 's')} with {percent(time['confidence'])} confidence"
-        terminal.item(f"{percent(time['coverage'])} of batches reach the target within {found} ({sure})")
+        terminal.item(_batch_time(time))
+
+
+def _batch_time(time: dict[str, Any]) -> str:
+    if time["time_s"] is None:
+        return f"no batch time reaches the target in {percent(time['coverage'])} of batches: {time['reason']}"
+    sure = time["reason"]
+    if time["bound_s"] is not None:
+        sure = f"at most {in_words(time['bound_s'], 's')} with {percent(time['confidence'])} confidence"
+    return f"{percent(time['coverage'])} of batches reach the target within {in_words(time['time_s'], 's')} ({sure})"
 
 
 def _share(line: dict[str, Any]) -> str:
     """Return a share with its interval; where no draw failed, what failing is bounded by."""
     if line["holding"] == line["draws"]:
-        return f"holds in all {line['draws']:,} draws; failing is at most {percent(1.0 - line['low'])}"
+        return f"holds in all {line['draws']:,} draws; the probability of failing is at most {percent(1.0 - line['low'])}"
     return f"{percent(line['probability'])} ({percent(line['low'])} to {percent(line['high'])})"
 
 
@@ -54,13 +59,13 @@ def tell_sensitivity(block: dict[str, Any], terminal: Terminal) -> None:
         if one["undefined"] is not None:
             terminal.item(f"{one['response']}: undefined, {one['undefined']}")
         else:
-            ranked = ", ".join(f"{row['input']} {percent(max(row['total'], 0.0))}" for row in one["shares"][:3])
+            ranked = ", ".join(f"{row['input']} {100.0 * row['total']:.3g} %" for row in one["shares"][:3])
             terminal.item(f"{one['response']}, shares of its variance: {ranked}")
     spread = block["halved_spread"]
     if "not_assessed" in spread:
         terminal.item(f"which input should be known better: not assessed, {spread['not_assessed']}")
         return
-    terminal.item(f"all limits hold with {percent(spread['probability'])}; were one input's spread halved:")
+    terminal.item(f"all limits together, with one input's spread halved (now {_share(spread)}):")
     for row in spread["inputs"]:
         rise = f"{100.0 * row['rise']:+.2g} points ({100.0 * row['rise_low']:+.2g} to {100.0 * row['rise_high']:+.2g})"
         terminal.item(f"  {row['input']}: {percent(row['probability'])}, {rise}")

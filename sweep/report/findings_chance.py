@@ -132,7 +132,7 @@ def _worth(found: Mapping[str, Any]) -> Words:
         return Words(("Halving the spread of any one input would not raise the probability that all limits hold beyond the noise of the draws.",))
     best = surely[0]
     ends = f"{number(100.0 * best['rise_low'], 1)} to {number(100.0 * best['rise_high'], 1)} percentage points"
-    before, after = probability(spread["probability"]), probability(best["probability"])
+    before, after = stated(spread), probability(best["probability"])
     return Words((
         f"Measuring {input_name(best['input'])} better buys most: with half its spread the probability that all limits hold rises from {before} to "
         f"{after} (by {ends}).",

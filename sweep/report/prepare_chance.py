@@ -6,7 +6,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from sweep.report.answers import limit_scale, probability
+from sweep.report.answers import limit_scale, probability, stated
 from sweep.report.curves import Absent, Array, Facet, Facets, Ranking, Rankings
 from sweep.report.results import Results
 from sweep.report.wording import input_name, split_unit, words
@@ -97,7 +97,7 @@ def halved(results: Results) -> Rankings | Absent:
     rows = pd.DataFrame(spread["inputs"])
     values = [100.0 * _numbers(rows, key) for key in ("rise", "rise_low", "rise_high")]
     caption = (
-        f"Rise of the probability that all limits hold, now {probability(spread['probability'])}, were the spread of one input halved; the same "
+        f"Rise of the probability that all limits hold, now {stated(spread)}, were the spread of one input halved; the same "
         f"{spread['draws']:,} draws for each. Lines: {100.0 * block['confidence']:.3g} % intervals."
     )
     numbers = pd.DataFrame({

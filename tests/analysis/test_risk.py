@@ -89,6 +89,20 @@ def test_rare_failures_with_a_known_answer(rare):
     assert 0.2 < line["probability"] / ndtr(-4.0) < 5.0 and line["high"] < 1.0 - found["limits"][0]["low"]
 
 
+def test_a_limit_that_only_holds_or_not_does_not_hide_another():
+    """The conversion stands at its target in every draw, as where a batch is ended there; accumulation fails with probability Phi(-4)."""
+    extra = "[limits]\naccumulation = { at_most = 4 }\n[risk]\ndraws = 1024"
+    (line,) = risk_of(lambda x: np.full(len(x), 0.5), extra=extra, accumulation=lambda x: x[:, 0])["rare"]
+    assert line["low"] <= ndtr(-4.0) <= line["high"] < 1e-3
+
+
+def test_where_nothing_moves_the_draws_own_bound_stands():
+    found = risk_of(lambda x: np.full(len(x), 0.5))
+    (line,) = found["rare"]
+    assert (None, 0.0) == (line["probability"], line["low"])
+    assert pytest.approx(1.0 - found["limits"][0]["low"]) == line["high"]
+
+
 def test_what_is_seen_is_not_sought():
     assert [] == risk_of()["rare"]
 
