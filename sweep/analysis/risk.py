@@ -1,7 +1,7 @@
 """Risk at the set-point: the probability that each limit holds, and what decides it, from draws of all that is uncertain."""
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -118,13 +118,15 @@ class Risk:
         """Return for each limited response, over its values, how probable it is that the response lies beyond: above for a limit `at_most`,
         below for one `at_least`. A draw without a value lies beyond every one."""
         parts = []
+        tail = np.geomspace(1.0 / max(len(self.drawn), 2), 0.5, _CURVE // 2)  # the curve is read where few draws lie beyond
+        levels = np.unique(np.concatenate([tail, np.linspace(0.0, 1.0, _CURVE // 2)]))
         for k, row in enumerate(self.rows):
             size = self.margin[:, k]
             beyond = np.sort(np.where(np.isnan(size), -np.inf, size))
             known = beyond[np.isfinite(beyond)]
             if not known.size:
                 continue
-            at = np.unique(np.quantile(known, np.linspace(0.0, 1.0, _CURVE), method="inverted_cdf"))
+            at = np.unique(np.quantile(known, levels, method="inverted_cdf"))
             counts = np.searchsorted(beyond, at, side="left")
             ends = np.array([wilson(int(c), beyond.size, self.settings.confidence) for c in counts])
             value = row.bound - at if row.sense == "at_most" else row.bound + at
@@ -166,27 +168,34 @@ def _rare(
         return {}
     if settings.rare == "together":
         failing = np.array([np.count_nonzero(~holds(margin)) / max(len(margin), 1)])
-    spread = np.array([_spread(margin[:, k]) for k in range(len(rows))])
+    spread = _spreads(margin, np.array([row.bound for row in rows]), study.values["accuracy.relative"])
+    bound = 1.0 - share(np.ones(len(margin), dtype=bool), settings.confidence, settings.interval).low
 
     def least(which: NDArray[np.intp]) -> Callable[[NDArray[np.float64]], NDArray[np.float64]]:
         def margin_of(score: NDArray[np.float64]) -> NDArray[np.float64]:
             from scipy.special import ndtr
 
-            found = margins(study, evaluate(Draws(study, ndtr(score)).at(point)))[:, which] / spread[which]
-            return np.asarray(np.where(np.isnan(found).any(axis=1), np.nan, found.min(axis=1)))
+            found = margins(study, evaluate(Draws(study, ndtr(score)).at(point)))[:, which]
+            scaled = np.where(spread[which] > 0.0, found / np.where(spread[which] > 0.0, spread[which], 1.0), np.where(found >= 0.0, np.inf, -np.inf))
+            return np.asarray(np.where(np.isnan(found).any(axis=1), np.nan, scaled.min(axis=1)))
 
         return margin_of
 
-    dimensions = len(dimensions_of(study))
-    return {
-        label: rare_failure(least(which), dimensions, settings.rare_draws, settings.confidence, stream(study.seed, "rare", label))
-        for (label, which), seen in zip(sought.items(), failing, strict=True)
-        if seen < RARE
-    }
+    dimensions, found = len(dimensions_of(study)), dict[str, Rare]()
+    for (label, which), seen in zip(sought.items(), failing, strict=True):
+        if seen < RARE:
+            one = rare_failure(least(which), dimensions, settings.rare_draws, settings.confidence, stream(study.seed, "rare", label))
+            bounded = one.probability is None and seen == 0.0  # then the draws' own bound stands too
+            found[label] = replace(one, high=min(one.high, bound)) if bounded else one
+    return found
 
 
-def _spread(margin: NDArray[np.float64]) -> float:
-    """Return by how much a margin varies, so that limits in different units can be compared; 1 where it does not."""
-    known = margin[np.isfinite(margin)]
-    size = float(known.std()) if known.size else 0.0
-    return size if size > 0.0 else 1.0
+def _spreads(margin: NDArray[np.float64], bound: NDArray[np.float64], tolerance: float) -> NDArray[np.float64]:
+    """Return by how much each margin (N, L) varies, (L,), so that limits in different units can be compared; 0 where one only holds or does not,
+    as that of a target at which the batch is ended: it does not move beyond the march's tolerance."""
+    found = np.zeros(margin.shape[1])
+    for k in range(found.size):
+        known = margin[np.isfinite(margin[:, k]), k]
+        if known.size and np.ptp(known) > 10.0 * tolerance * abs(bound[k]):
+            found[k] = known.std()
+    return found
