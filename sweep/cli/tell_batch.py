@@ -4,6 +4,7 @@ import math
 from typing import Any
 
 from sweep.base.units import from_si, show
+from sweep.cli.tell_deviations import tell_deviations
 from sweep.cli.terminal import Terminal, duration
 from sweep.workflow.batch import OneBatch
 
@@ -59,6 +60,8 @@ def tell_batch(found: OneBatch, terminal: Terminal) -> None:
         terminal.item("; ".join(known))
     if found.failed is not None:
         tell_failure(found.failed.summary(), terminal)
+    if found.deviations is not None:
+        tell_deviations(found.deviations.lines(), terminal)
     terminal.heading("Limits")
     for line in found.seen.limit_lines():
         censored = f"{line['name']}_censored"

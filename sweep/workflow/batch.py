@@ -7,6 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from sweep.analysis import statements
+from sweep.analysis.deviations import Deviations, look_at_deviations
 from sweep.analysis.failure import CoolingFailure, fail_cooling
 from sweep.analysis.set_point import SetPoint, look_at_set_point
 from sweep.base.errors import SweepError
@@ -17,16 +18,19 @@ from sweep.study.model import Study
 from sweep.workflow.results import as_csv, folder_of
 
 SCHEMA = 1
+NO_SCENARIOS = "the study has no [scenarios] and no [deviations]"
 
 
 @dataclass(frozen=True)
 class OneBatch:
-    """seen: the batch and its limits; failed: its cooling failures, None where the study asks for none; folder: where it is written."""
+    """seen: the batch and its limits; failed: its cooling failures, None where the study asks for none; folder: where it is written;
+    deviations: the batch under each scenario, None where there is none."""
 
     study: Study
     seen: SetPoint
     failed: CoolingFailure | None
     folder: Path
+    deviations: Deviations | None = None
 
 
 def point_of(study: Study, settings: Mapping[str, str]) -> dict[str, float]:
@@ -59,21 +63,24 @@ def batch(
     seen = look_at_set_point(study, evaluate, (), point)
     failed = fail_cooling(study, seen.row, point) if study.asks_failure and seen.row["status"] == "done" else None
     folder = folder_of(study, out) / "batch"
-    _write(study, seen, failed, folder)
+    deviations = look_at_deviations(study, point) if study.scenarios else None
+    _write(study, seen, failed, deviations, folder)
     if figures:
         from sweep import report
 
         report.batch(folder)
-    return OneBatch(study, seen, failed, folder)
+    return OneBatch(study, seen, failed, folder, deviations)
 
 
-def _write(study: Study, seen: SetPoint, failed: CoolingFailure | None, folder: Path) -> None:
-    found = {**seen.tables(), **(failed.tables() if failed else {}), "inputs": statements.inputs(study, seen.point)}
+def _write(study: Study, seen: SetPoint, failed: CoolingFailure | None, deviations: Deviations | None, folder: Path) -> None:
+    more = (failed.tables() if failed else {}) | (deviations.tables() if deviations else {})
+    found = {**seen.tables(), **more, "inputs": statements.inputs(study, seen.point)}
     for name, table in found.items():
         write_whole(folder / "analyses" / f"{name}.csv", as_csv(table))
     summary: dict[str, Any] = {
         "schema": SCHEMA, "study": {"name": study.name, "title": study.title, "digest": study.digest, "seed": study.seed},
         **seen.summary(), "failure": failed.summary() if failed else {"not_assessed": "not asked for, or the batch did not come to its end"},
+        "deviations": deviations.summary() if deviations else {"not_assessed": NO_SCENARIOS},
         "cautions": statements.cautions(study), "assumptions": statements.assumptions(study), "not_assessed": statements.not_assessed(study),
     }  # fmt: skip
     write_whole(folder / "summary.json", canonical(summary, indent=1) + "\n")

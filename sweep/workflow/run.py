@@ -11,6 +11,7 @@ import pandas as pd
 
 from sweep.analysis import statements
 from sweep.analysis.batch_time import best_batch_time
+from sweep.analysis.deviations import look_at_deviations
 from sweep.analysis.failure import fail_cooling
 from sweep.analysis.overview import overlook
 from sweep.analysis.set_point import SetPoint, look_at_set_point
@@ -114,6 +115,7 @@ class _Steps:
         blocks["batch_time"] = self._batch_time()
         blocks["window"] = self._window()
         blocks["failure"] = self._failure()
+        blocks["deviations"] = self._deviations()
         self.store.add("analyses/inputs.csv", as_csv(statements.inputs(study)))
         warnings = [f"{w.key}: {w.found}; expected {w.expected}; {w.because}" for w in study.warnings]
         return {
@@ -142,6 +144,11 @@ class _Steps:
         if not self.study.asks_failure:
             return {"not_assessed": "the study has no [failure], and no limit asks for one of its figures"}
         return self._kept("failure", "cooling failure", lambda: fail_cooling(self.study, self._set_point().row))
+
+    def _deviations(self) -> dict[str, Any]:
+        if not self.study.scenarios:
+            return {"not_assessed": "the study has no [scenarios] and no [deviations]"}
+        return self._kept("deviations", "deviations", lambda: look_at_deviations(self.study, self._set_point().point))
 
 
 def stored(folder: str | Path) -> dict[str, Any] | None:
