@@ -34,8 +34,9 @@ class Brought:
     pieces: Pieces | None = None
 
     def share(self, time: Floats) -> Floats:
-        """Return which share of each feed is in at a time (N,) s: (N, F)."""
-        return self.share_of(np.arange(time.size), time[:, None])[:, :, 0]
+        """Return which share of each feed is in at a time (N,) or times (N, K) s: (N, F) or (N, F, K)."""
+        rows = np.arange(time.shape[0])
+        return self.share_of(rows, time) if time.ndim == 2 else self.share_of(rows, time[:, None])[:, :, 0]
 
     def share_of(self, rows: np.ndarray, time: Floats) -> Floats:
         """Return which share of each feed is in at times (M, K) s of points `rows` (M,): (M, F, K)."""

@@ -13,7 +13,7 @@ from sweep.base.errors import SurroundingsError, SweepError
 
 TABLES = (
     "set_point_profile", "batch_time", "batch_time_map", "window_grid", "window_boundary",
-    "failure_times", "failure_path", "limits", "failed_points", "inputs",
+    "failure_times", "failure_path", "limits", "failed_points", "inputs", "measured",
 )  # fmt: skip
 
 
