@@ -34,7 +34,7 @@ def _parser() -> argparse.ArgumentParser:
     batch.add_argument("study", metavar="STUDY", help="a study file (TOML)")
     batch.add_argument(
         "--set", action="append", default=[], metavar="NAME=VALUE", dest="settings",
-        help='a variable or a dotted path of the study, with its unit: --set dosing_time="2 h" (repeatable)',
+        help='a variable, an uncertain input or a dotted path of the study, with its unit: --set dosing_time="2 h" (repeatable)',
     )  # fmt: skip
     batch.add_argument("--data", metavar="FILE.csv", help="a measured batch, units in the header (time [min], temperature [degC], ...), laid over it")
     batch.add_argument("--no-figures", action="store_true", help="write the tables only")

@@ -64,7 +64,7 @@ def march(
     tolerance: relative error allowed per step; levels: (N, watches), what the structure's watches compare with (infinite: not armed; a point
     ends where one is met). Raises ValueError where a shape does not fit the program.
     """
-    from sweep.kernel.march import march as compiled_march  # loads numba and the compiled kernel, which reading a study does not need
+    from sweep.kernel.code import march_code  # loads LLVM, which reading a study does not need
 
     n, segments = blocks.shape[:2]
     rows = program.structure.rows
@@ -82,11 +82,13 @@ def march(
     scratch = Scratch(program)
     whose = np.zeros(LANES, dtype=np.int64)
     if n:
-        compiled_march(
+        handed_out = march_code()(
             program.integers.ctypes.data, program.floats.ctypes.data, blocks.ctypes.data, starts.ctypes.data, constants.ctypes.data,
             n, segments, times.ctypes.data, times.shape[1], levels.ctypes.data, out.ctypes.data, out.shape[1], samples.ctypes.data, scratch.address,
             whose.ctypes.data, float(tolerance), most_steps,
         )  # fmt: skip
+        if handed_out != n:
+            raise RuntimeError(f"the kernel took {handed_out} points of {n}")
     if not scratch.is_sound():
         raise RuntimeError("the kernel wrote outside its scratch memory: its tables do not fit it; nothing of this march can be trusted")
     ends = [out[:, at.OUT_STATES + k * rows : at.OUT_STATES + (k + 1) * rows] for k in range(4)]

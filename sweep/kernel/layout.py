@@ -6,6 +6,7 @@ coefficient share a position. Names, units and shapes stand here once; the kerne
 
 LANES = 16  # batches that are marched side by side
 STRIDE = 8 * LANES  # bytes of one vector in memory
+MARCH_TAKES = "qqqqqqqqqqqqqqqdq"  # arguments of the compiled march: q an integer or address, d a double
 
 # header of the integer table --------------------------------------------------------------------------------------------
 N_SPECIES, N_STATES, N_REACTIONS, N_ROWS = 0, 1, 2, 3  # species, chemical states z, reactions, all states

@@ -12,11 +12,11 @@ from sweep.kernel.layout import LANES
 from sweep.kernel.linear import factorise
 from sweep.kernel.memory import entry, integer, load, row, store
 from sweep.kernel.step import GAMMA_INVERSE, dense_output, error_of_step, stages
-from sweep.kernel.vector import bits, compiled_and_kept, lowest, mask_of, where
+from sweep.kernel.vector import bits, compiled, lowest, mask_of, where
 from sweep.kernel.watch import watch_for
 
 
-@compiled_and_kept
+@compiled
 def march(s, f, blocks, starts, constants, points, segments, times, n_times, levels, out, out_length, samples, w, whose, tolerance, most_steps):  # type: ignore[no-untyped-def]
     """March every point through its segments; write `out` and `samples`.
 

@@ -97,6 +97,16 @@ def _charged(study: Study, values: Values) -> tuple[Floats, Floats]:
     return amounts, volume
 
 
+def _counted_from(study: Study, values: Values, index: dict[str, int]) -> Floats:
+    """Return the moles (N, I) that equivalents are counted from: charged, and fed by amount, at the design point itself."""
+    moles, _ = _charged(study, values)
+    for feed in study.feeds:
+        for name in feed.species:
+            if name not in feed.equivalents:
+                moles[:, index[name]] += values.need(f"recipe.feeds.{feed.name}.amount.{name}")
+    return moles
+
+
 def brought_in(study: Study, values: Values) -> Brought:
     """Return what each point's recipe brings in; SweepError where a quantity that it needs is not written."""
     index = {name: i for i, name in enumerate(names(study))}
@@ -107,14 +117,12 @@ def brought_in(study: Study, values: Values) -> Brought:
     for f, feed in enumerate(study.feeds):
         path = f"recipe.feeds.{feed.name}"
         for name in feed.species:
-            if name not in feed.equivalents or values.has(f"{path}.amount.{name}"):
+            if name not in feed.equivalents:
                 fed[:, f, index[name]] = values.need(f"{path}.amount.{name}")
-    fixed = charged + fed.sum(axis=1)
+    fixed = _counted_from(study, values.as_chosen(), index) if values.chosen else charged + fed.sum(axis=1)
     for f, feed in enumerate(study.feeds):
         path = f"recipe.feeds.{feed.name}"
         for name, of in feed.equivalents.items():
-            if values.has(f"{path}.amount.{name}"):
-                continue  # resolved already, before a deviation
             fed[:, f, index[name]] = values.need(f"{path}.amount.{name}.equivalents") * fixed[:, index[of]]
         start[:, f] = values.get(f"{path}.start")
         end[:, f] = start[:, f] + values.need(f"{path}.duration")

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, Literal, NamedTuple
 
 import numpy as np
 
@@ -41,7 +41,7 @@ FAILURE = [
     Response("mtt_K", "K"), Response("criticality_class", "", "int"), Response("adiabatic_rise_synthesis_K", "K"),
     Response("adiabatic_rise_decomposition_K", "K"),
 ]  # fmt: skip
-_DTYPES = {"float": "float64", "text": "str", "bool": "boolean", "int": "Int64"}
+_DTYPES: dict[str, Literal["str", "boolean", "Int64"]] = {"text": "str", "bool": "boolean", "int": "Int64"}
 
 
 def counted(study: Study) -> list[str]:
@@ -91,15 +91,13 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
 
 def table_of(study: Study, values: Values, index: pd.Index) -> tuple[pd.DataFrame, Floats]:
     """Return the responses of the recipe, without scenarios, and when each batch ends (s)."""
-    import pandas as pd
 
     plant = charge_plant(study, values)
     tolerance = float(study.values.get("accuracy.relative", 1e-6))
     marched, batch = march_batches(plant, tolerance)
     found = _respond(study, plant, marched, batch, tolerance)
-    plain = (r for r in responses(study) if "." not in r.column)
-    columns = {r.column: pd.Series(found[r.column], index=index, dtype=_DTYPES[r.kind]) for r in plain}
-    return blank(values, pd.DataFrame(columns).set_axis(index)), batch.end
+    plain = tuple(r for r in responses(study) if "." not in r.column)
+    return blank(values, _table(plain, found, index)), batch.end
 
 
 def deviate(
@@ -120,6 +118,19 @@ def deviate(
     moment = worst_moment(study, scenario, changed, end, respond)
     table = table_of(own, changed.overlaid({f"{scenario.path}.at": moment}), index)[0]
     table["at_s"] = moment
+    return table
+
+
+def _table(columns: tuple[Response, ...], found: dict[str, Floats | list[str]], index: pd.Index[Any]) -> pd.DataFrame:
+    """Return the columns as a table: all floats as one array, which pandas looks at once, the others set between them."""
+    import pandas as pd
+
+    floats = [r.column for r in columns if r.kind == "float"]
+    table = pd.DataFrame(np.array([found[name] for name in floats], dtype=np.float64).T, index=index, columns=floats)
+    for place, r in enumerate(columns):
+        if r.kind != "float":
+            value: Any = found[r.column]
+            table.insert(place, r.column, pd.array(value, dtype=_DTYPES[r.kind]))
     return table
 
 
@@ -153,11 +164,10 @@ def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, toler
         found.update(columns)
         for reason, more in zip(reasons, why, strict=True):
             reason.extend(more)
-    found["status"] = [OUTCOMES[c].status for c in code]
-    found["reason"] = [
-        "; ".join([OUTCOMES[c].sentence.format(time=t, limit=TOO_HOT)] * int(c != DONE) + r)
-        for c, t, r in zip(code, out[:, at.OUT_TIME], reasons, strict=True)
-    ]
+    for n in np.flatnonzero(code != DONE):
+        reasons[n].insert(0, OUTCOMES[code[n]].sentence.format(time=out[n, at.OUT_TIME], limit=TOO_HOT))
+    found["status"] = [OUTCOMES[c].status for c in code.tolist()]
+    found["reason"] = ["; ".join(reason) for reason in reasons]
     return found
 
 

@@ -25,6 +25,7 @@ class Values:
     count: int
     given: Mapping[str, float | Floats]
     refused: Mapping[int, str] = field(default_factory=dict)  # point -> why its values make no sense; the written ones stand in for them
+    chosen: Mapping[str, float | Floats] = field(default_factory=dict)  # what a design point has where uncertain inputs or control errors differ
 
     def has(self, path: str) -> bool:
         """Tell whether a quantity is written."""
@@ -32,7 +33,8 @@ class Values:
 
     def get(self, path: str, default: float | Floats = 0.0) -> Floats:
         """Return a quantity for every point, shape (N,)."""
-        return np.broadcast_to(np.asarray(self.given.get(path, default), dtype=np.float64), (self.count,))
+        value = self.given.get(path, default)
+        return value if isinstance(value, np.ndarray) else np.full(self.count, value)
 
     def need(self, path: str) -> Floats:
         """Return a quantity that the question cannot do without; SweepError where it is not written."""
@@ -42,34 +44,47 @@ class Values:
 
     def take(self, rows: NDArray[np.int_]) -> Values:
         """Return the quantities of some of the points."""
-        given = {path: value[rows] if isinstance(value, np.ndarray) and value.ndim else value for path, value in self.given.items()}
-        return Values(int(rows.size), given)
+
+        def taken(values: Mapping[str, float | Floats]) -> dict[str, float | Floats]:
+            return {path: value[rows] if isinstance(value, np.ndarray) else value for path, value in values.items()}
+
+        return Values(int(rows.size), taken(self.given), chosen=taken(self.chosen))
 
     def overlaid(self, sets: Mapping[str, float | Floats]) -> Values:
         """Return these quantities with some replaced."""
-        return Values(self.count, {**self.given, **sets}, self.refused)
+        return Values(self.count, {**self.given, **sets}, self.refused, self.chosen)
+
+    def as_chosen(self) -> Values:
+        """Return the quantities before uncertain inputs and control errors acted: what equivalents are counted from."""
+        return Values(self.count, {**self.given, **self.chosen}, self.refused)
 
     def refusing(self, refused: Mapping[int, str], written: Mapping[str, float]) -> Values:
         """Return these quantities with the written ones at the points that are refused."""
-        given = dict(self.given)
         rows = list(refused)
-        for path, value in given.items():
-            if isinstance(value, np.ndarray):
-                kept = value.copy()
-                kept[rows] = written[path]
-                given[path] = kept
-        return Values(self.count, given, refused)
+
+        def kept(values: Mapping[str, float | Floats]) -> dict[str, float | Floats]:
+            found = dict(values)
+            for path, value in values.items():
+                if isinstance(value, np.ndarray):
+                    found[path] = value.copy()
+                    found[path][rows] = written[path]  # type: ignore[index]
+            return found
+
+        return Values(self.count, kept(self.given), refused, kept(self.chosen))
 
 
 def values_of(study: Study, points: pd.DataFrame) -> Values:
-    """Return the quantities of each point: columns are variables or dotted paths, SI.
+    """Return the quantities of each point: columns are variables, uncertain inputs, control errors or dotted paths, SI.
 
+    Variables and paths are the design point; uncertain inputs and control errors act on top of it, on the actual amounts.
     SweepError where a column is unknown, sets what another sets or what cannot differ, or holds what is no finite number. A finite
     number that makes no sense (a negative duration) refuses its own point only.
     """
     sets: dict[str, float | Floats] = {}
+    drawn: dict[str, Floats] = {}
     owners: dict[str, str] = {}
     refused: dict[int, str] = {}
+    uncertain = {one.name for one in study.uncertain}
     for place, column in enumerate(map(str, points.columns)):
         paths, array = study.paths_of(column), _numbers(points.iloc[:, place], column)
         for path in paths:
@@ -78,8 +93,21 @@ def values_of(study: Study, points: pd.DataFrame) -> Values:
             if not differs(path):
                 raise SweepError(f"points: {column} cannot differ from point to point; it is written in the study")
             owners[path] = column
-            sets[path] = _sensible(study, path, array, refused)
-    return Values(len(points), {**study.values, **sets}, refused)
+            (drawn if column in uncertain else sets)[path] = _sensible(study, path, array, refused)
+    drawn |= _held(study, sets, refused)
+    chosen = {path: sets.get(path, study.values[path]) for path in drawn}
+    return Values(len(points), {**study.values, **sets, **drawn}, refused, chosen)
+
+
+def _held(study: Study, sets: Mapping[str, float | Floats], refused: dict[int, str]) -> dict[str, Floats]:
+    """Return what the plant holds of the variables whose control errors (SI) are given: what was chosen, and the error."""
+    found = {}
+    for v in study.variables:
+        if v.error in sets:
+            for path in v.sets:
+                actual = np.asarray(sets.get(path, study.values[path]) + sets[v.error], dtype=np.float64)
+                found[path] = _sensible(study, path, actual, refused)
+    return found
 
 
 def _numbers(column: pd.Series, name: str) -> Floats:

@@ -139,8 +139,17 @@ class Limit:
 
 
 @dataclass(frozen=True)
+class Tolerance:
+    """How well the plant holds a variable: distribution "normal" (size: standard deviation) or "uniform" (half-width), SI or of the value."""
+
+    distribution: str
+    size: float
+    relative: bool
+
+
+@dataclass(frozen=True)
 class Variable:
-    """What the engineer may choose: a range (SI) for one or more paths."""
+    """What the engineer may choose: a range (SI) for one or more paths, and how well the plant holds what is chosen."""
 
     name: str
     sets: tuple[str, ...]
@@ -148,6 +157,63 @@ class Variable:
     high: float
     levels: int | None
     unit: str
+    tolerance: Tolerance | None = None
+
+    @property
+    def error(self) -> str:
+        """Return the column of its control error: what is held minus what was chosen (SI)."""
+        return f"variables.{self.name}.error"
+
+
+@dataclass(frozen=True)
+class Uncertain:
+    """What nature chooses: a distribution around the written value `centre` of the path `of`, all SI.
+
+    parameters: sd, low, mode, high; relative_sd (of the mean) or log_sd of a lognormal, whose median `centre` is. relative: written as
+    shares of the written value. table: the draws of a "table"; inputs that share a file are drawn row by row.
+    """
+
+    name: str
+    of: str
+    distribution: str
+    centre: float
+    parameters: Mapping[str, float]
+    relative: bool
+    table: tuple[float, ...] = ()
+    file: str | None = None
+
+
+@dataclass(frozen=True)
+class Correlation:
+    """Between two uncertain inputs; kind: "rank" (Spearman), or "linear" on the scale of normal scores."""
+
+    between: tuple[str, str]
+    kind: str
+    value: float
+
+
+@dataclass(frozen=True)
+class RiskSettings:
+    """draws: how many; sampling: "latin-hypercube", "sobol", "random"; interval: "wilson", "clopper-pearson"; rare: which failures that the
+    draws hardly show are sought on purpose ("together", "each", "none"), with how many draws a level."""
+
+    draws: int
+    sampling: str
+    confidence: float
+    interval: str
+    rare: str
+    rare_draws: int
+
+
+@dataclass(frozen=True)
+class SensitivitySettings:
+    """over: "uncertain" or "variables"; trajectories: of the screening; blocks: of the variance shares; draws: for each halved spread."""
+
+    over: str
+    trajectories: int
+    blocks: int
+    draws: int
+    confidence: float
 
 
 @dataclass(frozen=True)
@@ -216,7 +282,8 @@ def differs(path: str) -> bool:
     """Tell whether a quantity may differ from point to point: what is of the batch, not of the question or of the method."""
     sections = ("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.", "scenarios.")
     settings = ("batch_time.longest", "failure.horizon", "failure.mtt", "failure.td24")
-    return (path.startswith(sections) or path in settings) and not path.endswith(".molar_mass")
+    held = path.startswith("variables.") and path.endswith(".error")
+    return (path.startswith(sections) or path in settings or held) and not path.endswith(".molar_mass")
 
 
 @dataclass(frozen=True)
@@ -251,6 +318,10 @@ class Study:
     asks_failure: bool = False
     warnings: tuple[Fault, ...] = ()
     scenarios: tuple[Scenario, ...] = ()
+    uncertain: tuple[Uncertain, ...] = ()
+    correlations: tuple[Correlation, ...] = ()
+    risk: RiskSettings | None = None
+    sensitivity: SensitivitySettings | None = None
 
     def without_failure(self) -> "Study":
         """Return this study without scenarios, the figures of a cooling failure and the limits on them, for what does not need them."""
@@ -267,7 +338,7 @@ class Study:
         return replace(self, events=(*self.events, *scenario.events), limits=(), scenarios=(), asks_failure=asks)
 
     def quantity(self, name: str, text: str) -> float:
-        """Return a quantity of a variable or path in SI; SweepError where the text is none of its dimension."""
+        """Return a quantity of a variable, an uncertain input or a path in SI; SweepError where the text is none of its dimension."""
         from sweep.base.units import UnitFault
         from sweep.study.amount import converted
 
@@ -278,15 +349,18 @@ class Study:
             raise SweepError(f"{name}: found {text!r}, expected {error.expected}, because {error.because}") from None
 
     def paths_of(self, name: str) -> tuple[str, ...]:
-        """Return the paths that a variable sets, or the path itself; SweepError with the nearest name for neither."""
+        """Return the paths that a variable sets, that of an uncertain input, or the path itself; SweepError with the nearest name for none."""
         for variable in self.variables:
             if variable.name == name:
                 return variable.sets
+        for one in self.uncertain:
+            if one.name == name:
+                return (one.of,)
         if name in self.values:
             return (name,)
         import difflib
 
-        known = [*(v.name for v in self.variables), *(path for path in self.values if differs(path))]
+        known = [*(v.name for v in self.variables), *(one.name for one in self.uncertain), *(path for path in self.values if differs(path))]
         near = difflib.get_close_matches(name, known, 1)
         hint = f"; did you mean {near[0]}?" if near else ""
-        raise SweepError(f"{name} is neither a variable nor a quantity of this study{hint}")
+        raise SweepError(f"{name} is neither a variable, an uncertain input nor a quantity of this study{hint}")

@@ -22,6 +22,7 @@ from sweep.study.model import (
     differs,
 )  # fmt: skip
 from sweep.study.reader import Reader
+from sweep.study.uncertain import difference_of, read_tolerance
 
 _PLAIN = {
     "conversion": ("", "dimensionless"), "accumulation": ("", "dimensionless"), "criticality_class": ("", "dimensionless"),
@@ -30,7 +31,7 @@ _PLAIN = {
     "cooling_duty": ("_W", "power"), "heat_release": ("_W", "power"), "productivity": ("", "productivity"),
 }  # fmt: skip
 _BY_SPECIES = ("yield_", "per_product_", "fraction_")
-_TAKEN = frozenset(
+TAKEN = frozenset(
     (*_PLAIN, *(name + ending for name, (ending, _) in _PLAIN.items()), "status", "reason", "time_of_max_temperature_s", "mtsr_time_s",
      "tmr_ad_time_s", "tmr_ad_censored", "highest_conversion", "most_productive_time_s", "most_productive_conversion", "energy_balance_error")
 )  # fmt: skip
@@ -156,9 +157,9 @@ def read_variables(reader: Reader, table: dict[str, Any]) -> tuple[Variable, ...
     for name, entry in reader.names(table, "variables").items():
         path = f"variables.{name}"
         reader.named.add(name)
-        if name in _TAKEN or name.startswith(_BY_SPECIES):
+        if name in TAKEN or name.startswith(_BY_SPECIES):
             reader.fault(path, name, "another name", "a response has this name")
-        reader.only(entry, path, ("sets", "from", "to", "levels"))
+        reader.only(entry, path, ("sets", "from", "to", "levels", "tolerance"))
         sets = entry.get("sets")
         sets = [sets] if isinstance(sets, str) else sets
         if not isinstance(sets, list) or not sets or not all(isinstance(s, str) for s in sets):
@@ -178,8 +179,7 @@ def _settable(reader: Reader, place: str, path: str, name: str, owners: dict[str
         reader.fault(place, path, "a quantity of the batch", "it cannot differ from point to point")
         return False
     if path not in reader.values:
-        near = difflib.get_close_matches(path, [known for known in reader.values if differs(known)], 1)
-        reader.fault(place, path, near[0] if near else "a quantity that is written", "the variable sets nothing")
+        reader.fault(place, path, reader.near(path), "the variable sets nothing")
         return False
     if path in owners:
         reader.fault(place, path, "one variable for it", f"{owners[path]} sets it already")
@@ -225,7 +225,11 @@ def _variable(reader: Reader, path: str, name: str, sets: list[str], entry: dict
                 f"{entry['from']} to {entry['to']}",
                 f"the set-point lies outside the range of {name}",
             )
-    return Variable(name, tuple(sets), ends[0], ends[1], levels, unit_of(str(entry["from"])))
+    held = read_tolerance(reader, f"{path}.tolerance", entry["tolerance"], sets) if "tolerance" in entry else None
+    variable = Variable(name, tuple(sets), ends[0], ends[1], levels, unit_of(str(entry["from"])), held)
+    if held is not None:
+        reader.keep(variable.error, 0.0, "K" if dimension == "temperature" else variable.unit, difference_of(dimension))
+    return variable
 
 
 def read_plan(reader: Reader, table: dict[str, Any] | None, variables: tuple[Variable, ...], folder: Path) -> Plan | None:

@@ -7,13 +7,14 @@ from typing import Any
 
 from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
-from sweep.study import batch, checks, doubts, equipment, events, question, scenarios, substances
+from sweep.study import batch, checks, doubts, equipment, events, question, scenarios, substances, uncertain
 from sweep.study.lines import lines_of
-from sweep.study.model import FAILURE, Study
+from sweep.study.model import FAILURE, Study, Uncertain
 from sweep.study.reader import Reader
 
 _SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
-             "accuracy", "plan", "window", "batch_time", "failure", "scenarios", "deviations")  # fmt: skip
+             "accuracy", "plan", "window", "batch_time", "failure", "scenarios", "deviations", "uncertain", "correlations", "risk",
+             "sensitivity")  # fmt: skip
 _LARGEST_FILE = 4_000_000  # characters
 
 
@@ -62,7 +63,7 @@ def _document(text: str, name: str) -> dict[str, Any]:
 
 def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder: Path) -> Study | None:
     reader.only(document, "", _SECTIONS)
-    part = {key: reader.table(document, key, key) for key in _SECTIONS if key != "events"}
+    part = {key: reader.table(document, key, key) for key in _SECTIONS if key not in ("events", "correlations")}
 
     def given(key: str) -> dict[str, Any] | None:
         return part[key] if key in document else None
@@ -95,6 +96,11 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     reader.swept = {path for v in variables for path in v.sets}
     plan = question.read_plan(reader, given("plan"), variables, folder)
     window = question.read_window(reader, given("window"), variables)
+    inputs = uncertain.read_uncertain(reader, part["uncertain"], variables, question.TAKEN, folder)
+    correlations = uncertain.read_correlations(reader, document.get("correlations", []), inputs)
+    drawn = bool(inputs) or any(v.tolerance is not None for v in variables)
+    risk = uncertain.read_risk(reader, given("risk"), drawn)
+    sensitivity = uncertain.read_sensitivity(reader, given("sensitivity"), drawn, variables)
     asks_failure = failure is not None or any(limit.name in FAILURE for limit in limits)
     asks_any = asks_failure or any(s.asks_failure for s in deviating)
     isothermal = {kind, *kinds} == {"isothermal"} and not asks_any
@@ -114,12 +120,18 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     doubts.warn_heat_capacities(reader, species)
     doubts.warn_rates(reader, reactions, not isothermal or "recipe.charge.temperature" in reader.swept)
     return Study(
-        name=name, file=reader.file, folder=folder, text=text, digest=digest(document), title=title, seed=seed, species=species,
+        name=name, file=reader.file, folder=folder, text=text, digest=_digest(document, inputs), title=title, seed=seed, species=species,
         reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=happens, batch_to_target=to_target,
         target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
         values=reader.values, units=reader.units, dimensions=reader.dimensions, bounds=reader.bounds, asks_failure=asks_failure,
-        warnings=tuple(reader.warnings), scenarios=deviating,
+        warnings=tuple(reader.warnings), scenarios=deviating, uncertain=inputs, correlations=correlations, risk=risk, sensitivity=sensitivity,
     )  # fmt: skip
+
+
+def _digest(document: dict[str, Any], inputs: tuple[Uncertain, ...]) -> str:
+    """Return the digest of what a study says, draws in files beside it included."""
+    tables = {one.name: one.table for one in inputs if one.table}
+    return digest({"study": document, "draws": tables} if tables else document)
 
 
 def _head(reader: Reader, table: dict[str, Any], name: str) -> tuple[str, int]:

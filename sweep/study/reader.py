@@ -10,10 +10,10 @@ from sweep.base.errors import Fault
 from sweep.base.units import UnitFault, kind_of, unit_of
 from sweep.study.amount import converted
 from sweep.study.lines import line_of
-from sweep.study.model import HOTTEST, Bound, unset
+from sweep.study.model import HOTTEST, Bound, differs, unset
 
 _PLANNED = """
-    uncertain correlations sensitivity risk ranges optimum fit vessels
+    ranges optimum fit vessels
     recipe.phases rate pressure max_pressure
 """
 LATER = frozenset(_PLANNED.split())  # keys that are planned and not there
@@ -35,6 +35,7 @@ class Reader:
         self.molar_masses: dict[str, float] = {}
         self.swept: set[str] = set()
         self.named: set[str] = set()  # variables as written, those with faults too
+        self.uncertain: set[str] = set()  # uncertain inputs as written, those with faults too
         self.faults: list[Fault] = []
         self.warnings: list[Fault] = []
 
@@ -108,6 +109,11 @@ class Reader:
         bound = self.bounds.get(unset(path))
         if bound is not None and not bound.holds(value):
             self.fault(place, f"{value:g} (SI)", bound.words, bound.because)
+
+    def near(self, path: str) -> str:
+        """Return the written quantity whose path is nearest, of those that may differ from point to point."""
+        near = difflib.get_close_matches(path, [known for known in self.values if differs(known)], 1)
+        return near[0] if near else "a quantity that is written"
 
     def broken(self, start: str) -> bool:
         """Tell whether something of a section was faulted already, so that what follows from it is not said again."""

@@ -4,9 +4,10 @@ from collections.abc import Iterator
 
 from sweep.base.units import show, si_unit
 from sweep.plan import planned
+from sweep.plan.draws import log_sd
 from sweep.plant.told_events import cause_of, effect_of, set_of
 from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
-from sweep.study.model import Limit, Study, Variable
+from sweep.study.model import Correlation, Limit, Study, Tolerance, Uncertain, Variable
 
 _SENSE = {"at_most": "at most", "at_least": "at least"}
 
@@ -24,6 +25,7 @@ def told(study: Study) -> list[tuple[str, list[str]]]:
         ("Target", list(_target(study))),
         ("Limits", [_limit(study, limit) for limit in study.limits]),
         ("Variables", [_variable(study, v) for v in study.variables]),
+        ("Uncertain", [*(_uncertain(study, one) for one in study.uncertain), *(_correlation(one) for one in study.correlations)]),
         ("Asked for", list(_asked(study))),
     ]
     return [(title, lines) for title, lines in parts if lines]
@@ -102,7 +104,38 @@ def _variable(study: Study, v: Variable) -> str:
     unit = study.units.get(v.sets[0]) or v.unit
     now = study.values[v.sets[0]]
     levels = f", {v.levels} levels" if v.levels else ""
-    return f"{v.name}: {show(v.low, unit)} to {show(v.high, unit)}{levels}, now {show(now, unit)}; sets {', '.join(v.sets)}"
+    held = "" if v.tolerance is None else f", held {_tolerance(study, v, v.tolerance)}"
+    return f"{v.name}: {show(v.low, unit)} to {show(v.high, unit)}{levels}, now {show(now, unit)}{held}; sets {', '.join(v.sets)}"
+
+
+def _spread(value: float, unit: str, dimension: str) -> str:
+    """Return a difference in the unit of its quantity; of temperatures in K."""
+    return f"{value:.4g} K" if dimension == "temperature" else show(value, unit)
+
+
+def _tolerance(study: Study, v: Variable, held: Tolerance) -> str:
+    size = f"{100.0 * held.size:.4g} %" if held.relative else _spread(held.size, study.units.get(v.sets[0]) or v.unit, study.dimensions[v.sets[0]])
+    return f"with a standard deviation of {size}" if held.distribution == "normal" else f"within plus or minus {size}"
+
+
+def _uncertain(study: Study, one: Uncertain) -> str:
+    """Return an uncertain input in words: its distribution, in the unit in which its quantity is written."""
+    unit, at = study.units.get(one.of) or si_unit(study.dimensions[one.of]), one.parameters
+    ends = [show(at[key], unit) for key in ("low", "mode", "high") if key in at]
+    if one.distribution == "table":
+        said = f"{len(one.table):,} draws from {one.file}, {show(min(one.table), unit)} to {show(max(one.table), unit)}"
+    elif one.distribution == "lognormal":
+        said = f"lognormal, median {show(one.centre, unit)}, standard deviation of the logarithm {log_sd(one):.4g}"
+    elif one.distribution in ("uniform", "triangular"):
+        said = f"{one.distribution}, {', '.join(ends)}"
+    else:
+        said = f"normal, {show(one.centre, unit)}, standard deviation {_spread(at['sd'], unit, study.dimensions[one.of])}"
+        said += "".join(f", {word} {show(at[key], unit)}" for key, word in (("low", "not below"), ("high", "not above")) if key in at)
+    return f"{one.name}: {said}; of {one.of}"
+
+
+def _correlation(one: Correlation) -> str:
+    return f"{one.between[0]} and {one.between[1]}: correlation {'of rank' if one.kind == 'rank' else 'of normal scores'} {one.value:g}"
 
 
 def _asked(study: Study) -> Iterator[str]:
@@ -117,3 +150,8 @@ def _asked(study: Study) -> Iterator[str]:
         yield "batch time" + (f", sought up to {longest}" if longest else "")
     if study.failure is not None:
         yield f"cooling failure, horizon {show(study.values['failure.horizon'], study.units['failure.horizon'])}"
+    if study.risk is not None:
+        yield f"risk at the set-point: {study.risk.draws:,} draws ({study.risk.sampling})"
+    if study.sensitivity is not None:
+        what = "the uncertain inputs" if study.sensitivity.over == "uncertain" else "the variables, over their ranges"
+        yield f"sensitivity to {what}: {study.sensitivity.trajectories} trajectories, {study.sensitivity.blocks:,} blocks"

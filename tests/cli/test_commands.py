@@ -7,10 +7,12 @@ import signal
 import subprocess
 import sys
 import time
+from pathlib import Path
 
 import pandas as pd
 import pytest
 
+import sweep
 from sweep.cli.main import main
 from tests.texts import SMALL
 
@@ -56,6 +58,19 @@ def test_check_loads_neither_tables_nor_the_kernel(here):
     code = (
         "import sys\nfrom sweep.cli.main import main\nmain(['check', 'small.toml'])\n"
         "print({'pandas', 'numba', 'matplotlib', 'pyarrow'} & set(sys.modules), file=sys.stderr)"
+    )
+    found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert "set()" == found.stderr.strip()
+
+
+def test_batch_loads_no_compiler_once_the_kernel_is_compiled(here, monkeypatch, capsys):
+    """Nor what only figures and long runs need."""
+    assert 0 == main(["batch", "small.toml", "--no-figures"])
+    capsys.readouterr()
+    monkeypatch.setenv("PYTHONPATH", str(Path(sweep.__file__).parents[1]))  # the package that compiled it, wherever another is installed
+    code = (
+        "import sys\nfrom sweep.cli.main import main\nmain(['batch', 'small.toml', '--no-figures'])\n"
+        "print({'numba', 'scipy.linalg', 'scipy.optimize', 'joblib', 'matplotlib', 'pyarrow.parquet'} & set(sys.modules), file=sys.stderr)"
     )
     found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert "set()" == found.stderr.strip()

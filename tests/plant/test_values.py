@@ -17,7 +17,7 @@ STUDY = read_study(Path(__file__).parents[2] / "studies" / "acylation.toml")
 @pytest.mark.parametrize(
     ("points", "reason"),
     [
-        ({"dosing_tme": [3600.0]}, "dosing_tme is neither a variable nor a quantity of this study; did you mean dosing_time"),
+        ({"dosing_tme": [3600.0]}, "dosing_tme is neither a variable, an uncertain input nor a quantity of this study; did you mean dosing_time"),
         ({"recipe.feeds.anhydrid.duration": [3600.0]}, "did you mean recipe.feeds.anhydride.duration"),
         ({"dosing_time": [3600.0, np.nan]}, "points: dosing_time is nan in row 1"),
         ({"dosing_time": [np.inf, 3600.0]}, "points: dosing_time is inf in row 0"),

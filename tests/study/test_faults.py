@@ -383,10 +383,6 @@ def test_fault(case):
 
 
 LATER = {
-    "uncertain": "[uncertain.k]\nof = 'vessel.U'",
-    "correlations": "[[correlations]]\nrank = 0.6",
-    "sensitivity": "[sensitivity]",
-    "risk": "[risk]\ndraws = 4096",
     "ranges": "[ranges]",
     "optimum": "[optimum]\nminimise = 'cycle_time'",
     "fit": "[fit]",
