@@ -83,7 +83,8 @@ def not_assessed(study: Study) -> list[str]:
         found.append("Risk, the probability that the limits hold with uncertain inputs: the study has no [risk].")
     if study.sensitivity is None:
         found.append("Sensitivity, which inputs decide: the study has no [sensitivity].")
-    found.append("Deviations other than a total loss of cooling.")
+    if not study.scenarios:
+        found.append("Deviations other than a total loss of cooling: the study has no [scenarios] and no [deviations].")
     return found
 
 

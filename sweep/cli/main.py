@@ -36,6 +36,7 @@ def _parser() -> argparse.ArgumentParser:
         "--set", action="append", default=[], metavar="NAME=VALUE", dest="settings",
         help='a variable, an uncertain input or a dotted path of the study, with its unit: --set dosing_time="2 h" (repeatable)',
     )  # fmt: skip
+    batch.add_argument("--data", metavar="FILE.csv", help="a measured batch, units in the header (time [min], temperature [degC], ...), laid over it")
     batch.add_argument("--no-figures", action="store_true", help="write the tables only")
     run = commands.add_parser("run", help="all that the study asks for; goes on where an interrupted run stopped")
     run.add_argument("study", metavar="STUDY", help="a study file (TOML)")
@@ -97,7 +98,7 @@ def _batch(options: argparse.Namespace, terminal: Terminal) -> int:
     terminal.compiling()
     from sweep.workflow.batch import batch
 
-    found = batch(study, _settings(options.settings), options.out, not options.no_figures)
+    found = batch(study, _settings(options.settings), options.out, not options.no_figures, options.data)
     tell_batch(found, terminal)
     return DONE if found.seen.row["status"] == "done" and found.seen.holds else SOME_FAILED
 

@@ -34,8 +34,9 @@ class Brought:
     pieces: Pieces | None = None
 
     def share(self, time: Floats) -> Floats:
-        """Return which share of each feed is in at a time (N,) s: (N, F)."""
-        return self.share_of(np.arange(time.size), time[:, None])[:, :, 0]
+        """Return which share of each feed is in at a time (N,) or times (N, K) s: (N, F) or (N, F, K)."""
+        rows = np.arange(time.shape[0])
+        return self.share_of(rows, time) if time.ndim == 2 else self.share_of(rows, time[:, None])[:, :, 0]
 
     def share_of(self, rows: np.ndarray, time: Floats) -> Floats:
         """Return which share of each feed is in at times (M, K) s of points `rows` (M,): (M, F, K)."""
@@ -116,14 +117,12 @@ def brought_in(study: Study, values: Values) -> Brought:
     for f, feed in enumerate(study.feeds):
         path = f"recipe.feeds.{feed.name}"
         for name in feed.species:
-            if name not in feed.equivalents or values.has(f"{path}.amount.{name}"):
+            if name not in feed.equivalents:
                 fed[:, f, index[name]] = values.need(f"{path}.amount.{name}")
     fixed = _counted_from(study, values.as_chosen(), index) if values.chosen else charged + fed.sum(axis=1)
     for f, feed in enumerate(study.feeds):
         path = f"recipe.feeds.{feed.name}"
         for name, of in feed.equivalents.items():
-            if values.has(f"{path}.amount.{name}"):
-                continue  # resolved already, before a deviation
             fed[:, f, index[name]] = values.need(f"{path}.amount.{name}.equivalents") * fixed[:, index[of]]
         start[:, f] = values.get(f"{path}.start")
         end[:, f] = start[:, f] + values.need(f"{path}.duration")

@@ -6,6 +6,7 @@ batch marches on from there, until no more is met. N points, C events by conditi
 
 import numpy as np
 
+from sweep.base.status import DONE
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
 from sweep.kernel.program import Structure, Watch
@@ -23,7 +24,7 @@ _FLOWS = {"heat_release": 1, "cooling_duty": 2}
 def charge_plant(study: Study, values: Values) -> Charged:
     """Return the arrays with which the kernel marches these points: the recipe as it goes, its events by condition where they fire."""
     happened = by_time(study, values)
-    if any(event.when is not None for event in study.events):
+    if any(event.time is None for event in study.events):
         happened = _search(study, values, happened)
     return plant_of(study, values, happened)
 
@@ -45,7 +46,7 @@ def _watch(study: Study, structure: Structure, when: Condition, back: bool) -> W
 
 
 class _Search:
-    """Events by condition while they are sought. armed, fired (N, C): ready to fire; how often it has."""
+    """Events by condition while they are sought. armed, fired (N, C): ready to fire; how often it has; arms (N, C) s: when it will be."""
 
     def __init__(self, study: Study, values: Values, happened: Happenings) -> None:
         self.study, self.values, self.happened = study, values, happened
@@ -53,8 +54,13 @@ class _Search:
         structure = chemistry.structure_of(study)
         self.watches = tuple(_watch(study, structure, self._when(c), back) for back in (False, True) for c in range(len(self.events)))
         shape = (values.count, len(self.events))
-        self.armed, self.fired = np.ones(shape, dtype=bool), np.zeros(shape, dtype=int)
+        waits = np.array([bool(study.events[k].after) for k in self.events], dtype=bool)
+        self.armed, self.fired = np.broadcast_to(~waits, shape).copy(), np.zeros((values.count, len(study.events)), dtype=int)
+        self.arms = np.full(shape, np.inf)
         self.columns: dict[tuple[int, int], int] = {}  # event and how often it fired before -> its column among the happenings
+        every = np.arange(values.count)
+        for h, k in enumerate(happened.columns):
+            self._follow(k, every, happened.when[:, h])
 
     def _when(self, c: int) -> Condition:
         when = self.study.events[self.events[c]].when
@@ -70,7 +76,7 @@ class _Search:
             gone_back = level - side * plant.values.get(f"{event.path}.hysteresis")
             if when.quantity == "conversion":
                 level, gone_back = (self._reacted(plant, share) for share in (level, gone_back))
-            again = (self.fired[rows, c] > 0) & ~self.armed[rows, c] & (not event.once)
+            again = (self.fired[rows, k] > 0) & ~self.armed[rows, c] & (not event.once)
             found[:, c] = np.where(self.armed[rows, c], level, side * np.inf)
             found[:, len(self.events) + c] = np.where(again, gone_back, -side * np.inf)
         return found
@@ -82,6 +88,14 @@ class _Search:
         target = plant.program.structure.target
         return conversion * whole + plant.starts[:, : target.size] @ target
 
+    def arm(self, rows: np.ndarray, time: Floats) -> Floats:
+        """Arm, in points `rows` (M,) at times (M,) s, the events whose predecessor has acted; return when the next ones will be (M,)."""
+        due = self.arms[rows] <= time[:, None]
+        self.armed[rows] |= due
+        self.arms[rows] = np.where(due, np.inf, self.arms[rows])
+        following: Floats = self.arms[rows].min(axis=1, initial=np.inf)
+        return following
+
     def note(self, rows: np.ndarray, met: np.ndarray, time: Floats) -> None:
         """Note which watch of points `rows` (M,) was met, and when (s)."""
         count = len(self.events)
@@ -89,21 +103,34 @@ class _Search:
         self.armed[rows, which] = back
         for c in np.unique(which[~back]):
             mine = ~back & (which == c)
-            self._fire(int(c), rows[mine], time[mine])
+            self._fire(self.events[int(c)], rows[mine], time[mine])
 
-    def _fire(self, c: int, rows: np.ndarray, time: Floats) -> None:
-        """Put event c among the happenings of points `rows` (M,) at times (M,) s, its delay counted."""
-        event = self.study.events[self.events[c]]
-        before = self.fired[rows, c]
+    def _fire(self, k: int, rows: np.ndarray, time: Floats) -> None:
+        """Put event k among the happenings of points `rows` (M,) at times (M,) s, its delay counted; then what waits for it."""
+        before = self.fired[rows, k]
         for times in np.unique(before):
-            if (c, int(times)) not in self.columns:
+            if (k, int(times)) not in self.columns:
                 never = np.full(self.values.count, np.inf)
-                self.columns[(c, int(times))] = len(self.happened.columns)
-                self.happened = with_fired(self.happened, self.events[c], never, never)
-        place = np.array([self.columns[(c, int(times))] for times in before])
+                self.columns[(k, int(times))] = len(self.happened.columns)
+                self.happened = with_fired(self.happened, k, never, never)
+        place = np.array([self.columns[(k, int(times))] for times in before], dtype=int)
+        acts = time + self.values.get(f"{self.study.events[k].path}.delay")[rows]
         self.happened.fired[rows, place] = time
-        self.happened.when[rows, place] = time + self.values.get(f"{event.path}.delay")[rows]
-        self.fired[rows, c] += 1
+        self.happened.when[rows, place] = acts
+        self.fired[rows, k] += 1
+        self._follow(k, rows, acts)
+
+    def _follow(self, k: int, rows: np.ndarray, acts: Floats) -> None:
+        """Let the events that wait for event k be armed, or act, when it acts."""
+        name = self.study.events[k].name
+        for other, event in enumerate(self.study.events):
+            if not name or event.after != name or event.deviation != self.study.events[k].deviation:
+                continue
+            if event.when is None:
+                self._fire(other, rows, acts)
+            else:
+                c = self.events.index(other)
+                self.arms[rows, c] = np.minimum(self.arms[rows, c], acts)
 
 
 def _search(study: Study, values: Values, happened: Happenings) -> Happenings:
@@ -111,20 +138,23 @@ def _search(study: Study, values: Values, happened: Happenings) -> Happenings:
     search, tolerance = _Search(study, values, happened), float(study.values.get("accuracy.relative", 1e-6))
     rows, time, state, since = np.arange(values.count), np.zeros(values.count), np.zeros((values.count, 0)), None
     for _ in range(MOST_ROUNDS):
+        following = search.arm(rows, time)
         plant = plant_of(study, values.take(rows), search.happened.take(rows), search.watches, since)
         state = state if state.shape[1] else plant.starts
-        every, span = np.arange(rows.size), plant.constants[:, at.T_FINAL] - time
-        going = span > 0.0
-        constants = passive_constants(plant, every, np.where(going, span, 1.0))
-        blocks = cut_segments(plant, every, time, time + np.where(going, span, 1.0))
-        levels = search.levels(plant, rows)
-        out = march(plant.program, blocks, state, constants, None, tolerance, levels=levels)
-        met = out.out[:, at.OUT_EVENT].astype(int)
+        stop = np.minimum(plant.constants[:, at.T_FINAL], following)
+        going = stop > time
+        span = np.where(going, stop - time, 1.0)
+        every = np.arange(rows.size)
+        blocks, constants = cut_segments(plant, every, time, time + span), passive_constants(plant, every, span)
+        out = march(plant.program, blocks, state, constants, None, tolerance, levels=search.levels(plant, rows))
+        met, done = out.out[:, at.OUT_EVENT].astype(int), out.out[:, at.OUT_STATUS] == DONE
         hit = going & (met >= 0)
-        rows, time, state, met = rows[hit], (time + out.out[:, at.OUT_TIME])[hit], out.at_last[hit], met[hit]
+        kept = hit | (going & done & (following <= stop))
+        reached = np.where(hit, time + out.out[:, at.OUT_TIME], stop)
+        rows, time, state, met, hit = rows[kept], reached[kept], out.at_last[kept], met[kept], hit[kept]
         if not rows.size:
             return search.happened
         since = Since(time, settings_at(study, values.take(rows), search.happened.take(rows), time)[1])
-        search.note(rows, met, time)
+        search.note(rows[hit], met[hit], time[hit])
     search.happened.restless[rows] = True
     return search.happened

@@ -4,7 +4,6 @@ from collections.abc import Callable, Mapping
 
 import numpy as np
 
-from sweep.plant.charge import brought_in
 from sweep.plant.sense import impossible
 from sweep.plant.values import Floats, Values
 from sweep.study.model import Change, Scenario, Study
@@ -21,33 +20,20 @@ def under(study: Study, scenario: Scenario, values: Values) -> Values:
     Equivalents are those of the recipe as written: what is fed does not follow a charge that went wrong. A point whose recipe cannot be carried
     out then is refused.
     """
-    before = {**_resolved(study, scenario, values), **_moment(study, scenario, values)}
-    plain = values.overlaid(before)
+    plain = values.overlaid(_moment(scenario, values))
     sets = {path: _changed(scenario, plain, path, value) for path, value in scenario.sets.items()}
-    changed = plain.overlaid(_by_amount(sets, plain))
+    chosen = {**{path: plain.get(path) for path in sets}, **values.chosen}
     refused = dict(values.refused)
-    for bad, sentence in impossible(study, changed):
+    for bad, sentence in impossible(study, Values(values.count, {**plain.given, **sets}, chosen=chosen)):
         for n in np.flatnonzero(bad):
             refused.setdefault(int(n), f"the recipe cannot be carried out under this scenario: {sentence}")
     rows = [n for n in refused if n not in values.refused]
-    if rows:
-        kept = {path: np.array(changed.get(path)) for path in _by_amount(sets, plain)}
-        for path, column in kept.items():
-            column[rows] = plain.get(path)[rows]
-        changed = plain.overlaid(kept)
-    return Values(values.count, changed.given, refused)
+    for path, column in sets.items():
+        column[rows] = plain.get(path)[rows]
+    return Values(values.count, {**plain.given, **sets}, refused, chosen)
 
 
-def _resolved(study: Study, scenario: Scenario, values: Values) -> Mapping[str, Floats]:
-    """Return the amounts (mol) of what is fed by equivalents, where a scenario changes what is brought in; nothing elsewhere."""
-    touched = any(path.startswith(("recipe.charge.", "recipe.feeds.", "species.")) for path in scenario.sets)
-    if not touched or not any(feed.equivalents for feed in study.feeds):
-        return {}
-    fed, index = brought_in(study, values).fed, {s.name: i for i, s in enumerate(study.species)}
-    return {f"recipe.feeds.{feed.name}.amount.{s}": fed[:, f, index[s]] for f, feed in enumerate(study.feeds) for s in feed.equivalents}
-
-
-def _moment(study: Study, scenario: Scenario, values: Values) -> Mapping[str, Floats]:
+def _moment(scenario: Scenario, values: Values) -> Mapping[str, Floats]:
     """Return the moment of a feed's start or end, where a scenario's times are counted from it."""
     if scenario.feed is None:
         return {}
@@ -62,20 +48,7 @@ def _changed(scenario: Scenario, values: Values, path: str, value: float | Chang
     if isinstance(value, Change):
         number = values.get(f"{place}.{value.how}")
         return values.get(path) * number if value.how == "times" else values.get(path) + number
-    return values.get(place, float(value))
-
-
-def _by_amount(sets: Mapping[str, Floats], plain: Values) -> dict[str, Floats]:
-    """Return what is set, where equivalents stand as amounts already: these change in the same proportion."""
-    found: dict[str, Floats] = {}
-    for path, value in sets.items():
-        amount = path.removesuffix(".equivalents")
-        if amount != path and plain.has(amount):
-            written = plain.get(path)
-            found[amount] = plain.get(amount) * np.divide(value, written, out=np.zeros(plain.count), where=written > 0.0)
-        else:
-            found[path] = value
-    return found
+    return np.array(values.get(place, float(value)))
 
 
 def worst_moment(study: Study, scenario: Scenario, values: Values, end: Floats, respond: Respond) -> Floats:

@@ -40,7 +40,7 @@ class Happenings:
 
 def by_time(study: Study, values: Values) -> Happenings:
     """Return the events that happen at a written time; those by condition have not happened."""
-    columns = tuple(k for k, event in enumerate(study.events) if event.when is None)
+    columns = tuple(k for k, event in enumerate(study.events) if event.time is not None)
     when = np.zeros((values.count, len(columns)))
     for h, k in enumerate(columns):
         event = study.events[k]

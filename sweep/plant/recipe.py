@@ -138,8 +138,7 @@ def plant_of(
         starts[:, :nz] = brought.charged
     starts[:, nz] = starts[:, nz + 1] = charge_T
     constants = _constants(study, values, brought, end, final, starts, structure.target)
-    blocks = np.ascontiguousarray(blocks)
-    return Charged(study, values, program, brought, blocks, starts, constants, cp, heats, extents, bounds, happened)
+    return Charged(study, values, program, brought, np.ascontiguousarray(blocks), starts, constants, cp, heats, extents, bounds, happened)
 
 
 def _chemistry(study: Study, values: Values, program: Program, blocks: Floats) -> tuple[Floats, Floats]:

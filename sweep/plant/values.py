@@ -44,8 +44,11 @@ class Values:
 
     def take(self, rows: NDArray[np.int_]) -> Values:
         """Return the quantities of some of the points."""
-        given = {path: value[rows] if isinstance(value, np.ndarray) and value.ndim else value for path, value in self.given.items()}
-        return Values(int(rows.size), given)
+
+        def taken(values: Mapping[str, float | Floats]) -> dict[str, float | Floats]:
+            return {path: value[rows] if isinstance(value, np.ndarray) else value for path, value in values.items()}
+
+        return Values(int(rows.size), taken(self.given), chosen=taken(self.chosen))
 
     def overlaid(self, sets: Mapping[str, float | Floats]) -> Values:
         """Return these quantities with some replaced."""

@@ -8,7 +8,7 @@ from importlib.resources import files
 import jinja2
 from markupsafe import Markup
 
-from sweep.report import answers, findings, findings_chance, record
+from sweep.report import answers, deviations, findings, findings_chance, record
 from sweep.report.blocks import Block, Picture, Section, Table, Words, table
 from sweep.report.curves import Absent, Curves, Prepared
 from sweep.report.results import Results
@@ -48,7 +48,7 @@ def sections(results: Results, drawn: list[Prepared], svg: Mapping[str, bytes]) 
     placed = {place: [picture(figure, svg) for figure in drawn if figure.name in names] for place, names in PLACES.items()}
     return [
         answers.section(results), findings.batch_time(results, placed["batch"]), findings.window(results, placed["window"]),
-        findings.failure(results, placed["failure"]), findings_chance.risk(results, placed["risk"]),
+        findings.failure(results, placed["failure"]), deviations.section(results), findings_chance.risk(results, placed["risk"]),
         findings_chance.sensitivity(results, placed["sensitivity"]), record.inputs(results), record.not_assessed(results, drawn),
         record.points(results), record.cautions(results), record.versions(results), record.signatures(),
     ]  # fmt: skip

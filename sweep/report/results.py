@@ -15,8 +15,8 @@ from sweep.runner.manifest import sealed
 
 TABLES = (
     "set_point_profile", "batch_time", "batch_time_map", "window_grid", "window_boundary",
-    "failure_times", "failure_path", "limits", "failed_points", "inputs", "risk_limits", "risk_percentiles", "risk_exceedance", "risk_drivers",
-    "sensitivity_screening", "sensitivity_shares", "sensitivity_local", "sensitivity_spread",
+    "failure_times", "failure_path", "limits", "failed_points", "inputs", "measured", "risk_limits", "risk_percentiles", "risk_exceedance",
+    "risk_drivers", "sensitivity_screening", "sensitivity_shares", "sensitivity_local", "sensitivity_spread",
 )  # fmt: skip
 
 

@@ -6,12 +6,12 @@ from pathlib import Path
 import pandas as pd
 
 from sweep.base.records import write_whole
-from sweep.report import prepare_batch, prepare_chance, prepare_failure, prepare_window
+from sweep.report import prepare_batch, prepare_chance, prepare_failure, prepare_overlay, prepare_window
 from sweep.report.curves import Absent, ContourMap, Curves, Facets, Prepared, Rankings
 from sweep.report.page import page
 from sweep.report.results import Results, read
 
-BATCH = (prepare_batch.profile, prepare_failure.diagram)
+BATCH = (prepare_batch.profile, prepare_failure.diagram, prepare_overlay.overlay)
 ALL: tuple[Callable[[Results], Prepared], ...] = (
     prepare_batch.profile, prepare_batch.productivity, prepare_window.window, prepare_window.contours, prepare_failure.diagram, prepare_failure.path,
     prepare_chance.exceedance, prepare_chance.shares, prepare_chance.halved,

@@ -72,13 +72,14 @@ class EventReader:
         result = []
         for place, (origin, entry) in enumerate(sorted_events(raw)):
             reader.lines[f"{where}.{place}"] = lines.get(f"{where}.{origin}", lines.get(where, 1))
-            for key in ("time", "set", "when", "delay", "hysteresis", "once"):
+            for key in ("time", "set", "when", "delay", "hysteresis", "once", "name", "after"):
                 if f"{where}.{origin}.{key}" in lines:
                     reader.lines[f"{where}.{place}.{key}"] = lines[f"{where}.{origin}.{key}"]
             event = self._event(f"{where}.{place}", entry)
             if event is not None:
                 result.append(event)
         self._clashes(result)
+        self._order(result)
         return tuple(result)
 
     def _event(self, path: str, entry: object) -> Event | None:
@@ -86,26 +87,58 @@ class EventReader:
         if not isinstance(entry, dict):
             reader.fault(path, repr(entry), "a table with time and set", "an event changes something at a time")
             return None
-        reader.only(entry, path, ("time", "when", "delay", "once", "hysteresis", "set"))
+        reader.only(entry, path, ("time", "when", "delay", "once", "hysteresis", "set", "name", "after"))
+        name, after = self._names(path, entry)
         when, once = None, True
         if "when" in entry:
             when = self._condition(f"{path}.when", entry["when"])
-            once = self._once(path, entry, when)
-            if "time" in entry:
-                reader.fault(f"{path}.time", entry["time"], "time or when, not both", "an event has one cause")
+            once = self._once(path, entry, when, after)
+        elif after:
+            self._once(path, entry, None, after)
         else:
             for key in ("delay", "once", "hysteresis"):
                 if key in entry:
-                    reader.fault(f"{path}.{key}", entry[key], "when beside it", f"{key} belongs to a condition")
+                    reader.fault(f"{path}.{key}", entry[key], "when or after beside it", f"{key} belongs to a condition")
+        if "when" not in entry and not after:
             if "time" in entry:
                 reader.quantity(f"{path}.time", entry["time"], "time")
             reader.needed(f"{path}.time", "an event happens at a time, or when a condition is met")
             reader.at_least(f"{path}.time", 0.0, False, "a batch begins at zero, and ends", LATEST)
+        elif "time" in entry:
+            reader.fault(f"{path}.time", entry["time"], "time or when or after", "an event has one cause")
         sets = self.sets(f"{path}.set", reader.table(entry, "set", f"{path}.set"))
         time = reader.values.get(f"{path}.time")
-        if (when is None) == (time is None):
+        if when is None and time is None and (not after or "when" in entry):
             return None
-        return Event(time, sets, path, when, once, self.deviation, self.since)
+        return Event(time, sets, path, when, once, self.deviation, self.since, name, after)
+
+    def _names(self, path: str, entry: dict[str, Any]) -> tuple[str, str]:
+        """Return an event's own name, and that of the event it waits for."""
+        for key in ("name", "after"):
+            if key in entry and (not isinstance(entry[key], str) or not entry[key]):
+                self.reader.fault(f"{path}.{key}", repr(entry[key]), "a text", "events are named for those that wait for them")
+        return tuple(entry[key] if isinstance(entry.get(key), str) else "" for key in ("name", "after"))  # type: ignore[return-value]
+
+    def _order(self, events: list[Event]) -> None:
+        """Fault names that come twice, and events that wait for one that is not there, or for each other in a ring."""
+        places: dict[str, Event] = {}
+        for event in events:
+            if event.name in places and event.name:
+                self.reader.fault(f"{event.path}.name", event.name, "another name", "another event has it")
+            places[event.name] = event
+        for event in events:
+            if not event.after:
+                continue
+            if event.after not in places:
+                known = ", ".join(sorted(name for name in places if name)) or "the name of another event here"
+                self.reader.fault(f"{event.path}.after", event.after, known, "no event of this list has that name")
+                continue
+            seen, one = set[str](), event
+            while one.after in places and one.when is None and one.path not in seen:
+                seen.add(one.path)
+                one = places[one.after]
+            if one.path in seen:
+                self.reader.fault(f"{event.path}.after", event.after, "an event with a cause of its own", "they wait for each other")
 
     def _condition(self, path: str, table: object) -> Condition | None:
         """Return { temperature = { above = "75 degC" } } as a condition."""
@@ -138,9 +171,14 @@ class EventReader:
         if when.quantity in ("conversion", "volume", "n", "c") and when.sense == "below" and value <= 0.0:
             self.reader.warn(when.path, written, "a level above 0", because)
 
-    def _once(self, path: str, entry: dict[str, Any], when: Condition | None) -> bool:
+    def _once(self, path: str, entry: dict[str, Any], when: Condition | None, after: str) -> bool:
         """Read delay, once and hysteresis; return whether the event fires once only."""
         reader, once = self.reader, entry.get("once", True)
+        if after:
+            for key in ("once", "hysteresis"):
+                if key in entry:
+                    reader.fault(f"{path}.{key}", entry[key], "no such key with after", "the event waits for another, and is armed by it each time")
+                    return True
         if not isinstance(once, bool):
             reader.fault(f"{path}.once", repr(once), "true or false", "an event fires once, or is armed again")
             once = True
@@ -210,12 +248,13 @@ class EventReader:
         seen: dict[tuple[object, str], tuple[int, object]] = {}
         values = self.reader.values
         for place, event in enumerate(events):
-            cause: object = event.time
+            cause: object = event.time if not event.after else (event.after, values.get(f"{event.path}.delay", 0.0))
             if event.when is not None:
-                cause = (event.when.quantity, event.when.species, event.when.sense, values[event.when.path], values.get(f"{event.path}.delay", 0.0))
+                when = event.when
+                cause = (when.quantity, when.species, when.sense, values[when.path], values.get(f"{event.path}.delay", 0.0), event.after)
             for path, value in event.sets.items():
                 to: object = (value.how, values.get(f"{event.path}.set.{path}.{value.how}")) if isinstance(value, Change) else value
                 first = seen.setdefault((cause, path), (place, to))
                 if first[1] != to:
-                    same = "time" if event.when is None else "condition"
+                    same = "time" if event.time is not None else "condition"
                     self.reader.fault(f"{event.path}.set.{path}", path, f"one event for it at one {same}", f"event {first[0] + 1} sets it too")

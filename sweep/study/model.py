@@ -86,7 +86,8 @@ class Event:
 
     sets: path -> value (SI), kind of cooling, change, or "restored" (a deviation's: what the recipe has there); path: where the event's own
     quantities stand; once: false where it is armed again; deviation: it overrides the recipe's own events; since: where the moment stands
-    from which its time is counted ("": the batch's start).
+    from which its time is counted ("": the batch's start); name, after: an event with `after` waits for the event of that name to act: its
+    condition is armed then, each time; without a condition of its own it acts then.
     """
 
     time: float | None
@@ -96,6 +97,8 @@ class Event:
     once: bool = True
     deviation: bool = False
     since: str = ""
+    name: str = ""
+    after: str = ""
 
 
 @dataclass(frozen=True)
@@ -314,11 +317,11 @@ class Study:
     bounds: Mapping[str, Bound]
     asks_failure: bool = False
     warnings: tuple[Fault, ...] = ()
+    scenarios: tuple[Scenario, ...] = ()
     uncertain: tuple[Uncertain, ...] = ()
     correlations: tuple[Correlation, ...] = ()
     risk: RiskSettings | None = None
     sensitivity: SensitivitySettings | None = None
-    scenarios: tuple[Scenario, ...] = ()
 
     def without_failure(self) -> "Study":
         """Return this study without scenarios, the figures of a cooling failure and the limits on them, for what does not need them."""

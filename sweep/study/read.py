@@ -13,8 +13,8 @@ from sweep.study.model import FAILURE, Study, Uncertain
 from sweep.study.reader import Reader
 
 _SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
-             "accuracy", "plan", "window", "batch_time", "failure", "uncertain", "correlations", "risk", "sensitivity", "scenarios",
-             "deviations")  # fmt: skip
+             "accuracy", "plan", "window", "batch_time", "failure", "scenarios", "deviations", "uncertain", "correlations", "risk",
+             "sensitivity")  # fmt: skip
 _LARGEST_FILE = 4_000_000  # characters
 
 

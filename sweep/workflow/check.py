@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from sweep.base.units import show, si_unit
 from sweep.plan import planned
 from sweep.plan.draws import log_sd
-from sweep.plant.told_events import cause_of, effect_of
+from sweep.plant.told_events import cause_of, effect_of, set_of
 from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
 from sweep.study.model import Correlation, Limit, Study, Tolerance, Uncertain, Variable
 
@@ -21,6 +21,7 @@ def told(study: Study) -> list[tuple[str, list[str]]]:
         ("Batch", list(_batch(study))),
         ("Cooling", list(_cooling(study, seen))),
         ("Events", [f"{cause_of(study, event)}: {effect_of(study, event)}" for event in study.events]),
+        ("Scenarios", [f"{scenario.name}: {'; '.join(set_of(study, scenario))}" for scenario in study.scenarios]),
         ("Target", list(_target(study))),
         ("Limits", [_limit(study, limit) for limit in study.limits]),
         ("Variables", [_variable(study, v) for v in study.variables]),

@@ -11,6 +11,7 @@ import pandas as pd
 
 from sweep.analysis import statements
 from sweep.analysis.batch_time import best_batch_time
+from sweep.analysis.deviations import look_at_deviations
 from sweep.analysis.failure import fail_cooling
 from sweep.analysis.overview import overlook
 from sweep.analysis.risk import assess_risk
@@ -118,6 +119,7 @@ class _Steps:
         blocks["batch_time"] = self._batch_time()
         blocks["window"] = self._window()
         blocks["failure"] = self._failure()
+        blocks["deviations"] = self._deviations()
         blocks["risk"] = self._risk()
         blocks["sensitivity"] = self._sensitivity()
         self.store.add("analyses/inputs.csv", as_csv(statements.inputs(study)))
@@ -148,6 +150,11 @@ class _Steps:
         if not self.study.asks_failure:
             return {"not_assessed": "the study has no [failure], and no limit asks for one of its figures"}
         return self._kept("failure", "cooling failure", lambda: fail_cooling(self.study, self._set_point().row))
+
+    def _deviations(self) -> dict[str, Any]:
+        if not self.study.scenarios:
+            return {"not_assessed": "the study has no [scenarios] and no [deviations]"}
+        return self._kept("deviations", "deviations", lambda: look_at_deviations(self.study, self._set_point().point))
 
     def _risk(self) -> dict[str, Any]:
         if self.study.risk is None:

@@ -294,3 +294,43 @@ def test_one_heated_tank_of_a_series():
     assert 30.952380952381 + 273.15 == pytest.approx(profile(study, {}, [10_800.0])["temperature_K"][0], abs=1e-6)
     [one] = events_of(study)
     assert 1000.0 * 2e3 / (210e3 / 60.0) * math.log(100.0) == pytest.approx(one.met, rel=1e-7)
+
+
+def test_events_that_wait_for_each_other():
+    """Phases: heat to 80 degC; then half an hour of hold; then cool; the end of cooling is looked for only then."""
+    text = heated(
+        event('name = "hot"\nwhen = { temperature = { above = "80 degC" } }', '"cooling.temperature" = "80 degC"'),
+        event('name = "held"\nafter = "hot"\ndelay = "30 min"', '"cooling.temperature" = "20 degC"'),
+        event('after = "held"\nwhen = { temperature = { below = "50 degC" } }\ndelay = "1 min"', '"cooling.temperature" = "50 degC"'),
+    )
+    hot = TAU * math.log(100.0 / 40.0)
+    cold = hot + 1800.0 + TAU * math.log(60.0 / 30.0)
+    found = fired(text)
+    assert [0, 1, 2] == [k for k, _, _ in found]
+    assert [hot, hot, cold] == pytest.approx([met for _, met, _ in found], rel=1e-8)  # it is cold at the start too, and not looked for
+    assert [hot, hot + 1800.0, cold + 60.0] == pytest.approx([acts for _, _, acts in found], rel=1e-8)
+
+
+def test_an_event_after_a_time():
+    """Armed by the clock: only from two hours on is the temperature looked at."""
+    text = heated(
+        event('name = "two hours"\ntime = "2 h"', '"cooling.temperature" = "60 degC"'),
+        event('after = "two hours"\nwhen = { temperature = { below = "80 degC" } }', '"vessel.U" = "1 W/m2/K"'),
+    )
+    [_, (k, met, _)] = fired(text)
+    at_two = 120.0 - 100.0 * math.exp(-7200.0 / TAU)
+    assert 0 == k  # events by time stand last
+    assert 7200.0 + TAU * math.log((at_two - 60.0) / 20.0) == pytest.approx(met, rel=1e-8)
+
+
+def test_a_reset_that_is_armed_by_its_trip_each_time():
+    """The thermostat again, its second event armed by the first: nothing fires at the cold start."""
+    text = heated(
+        event('name = "trip"\nwhen = { temperature = { above = "60 degC" } }\nonce = false\nhysteresis = "1 K"', '"cooling.temperature" = "20 degC"'),
+        event('after = "trip"\nwhen = { temperature = { below = "50 degC" } }', '"cooling.temperature" = "120 degC"'),
+    )
+    found = [(k, met) for k, met, _ in fired(text)]
+    up, down, again = TAU * math.log(100.0 / 60.0), TAU * math.log(40.0 / 30.0), TAU * math.log(70.0 / 60.0)
+    expected = [(0, up), (1, up + down), (0, up + down + again), (1, up + 2.0 * down + again)]
+    assert [k for k, _ in expected] == [k for k, _ in found[:4]]
+    assert [t for _, t in expected] == pytest.approx([t for _, t in found[:4]], rel=1e-7)

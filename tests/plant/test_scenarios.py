@@ -61,7 +61,7 @@ SAME = {
     ),
     "feed that does not stop": (
         'set = { "recipe.feeds.anhydride.amount.anhydride" = { times = 1.25 }, "recipe.feeds.anhydride.duration" = { times = 1.25 } }',
-        ((AMOUNT, 'amount      = { anhydride = "5830 mol" }'), ('"3 h"', '"225 min"')), "",
+        ((AMOUNT, AMOUNT.replace("1.06", repr(1.06 * 1.25))), ('"3 h"', '"225 min"')), "",
     ),
     "no feed": (
         'set = { "recipe.feeds.anhydride.rate_factor" = 0 }', (), _event('time = "0 s"', '"recipe.feeds.anhydride.rate_factor" = 0'),

@@ -113,3 +113,27 @@ def test_conditions_without_what_they_need():
     bare = text.split("[target]")[0] + event.format("conversion = { above = 0.5 }")
     with pytest.raises(StudyError, match="it counts on the target species"):
         read_text(bare)
+
+
+def _named(*entries: str) -> str:
+    events = "".join(f'[[events]]\n{entry}\nset = {{ "vessel.U" = {{ times = 0.{k + 1} }} }}\n' for k, entry in enumerate(entries))
+    return TEXT.replace("[target]", events + "[target]")
+
+
+@pytest.mark.parametrize(
+    ("entries", "because"),
+    [
+        (('after = "trip"',), "no event of this list has that name"),
+        (('name = "a"\nafter = "b"', 'name = "b"\nafter = "a"'), "they wait for each other"),
+        (('name = "a"\ntime = "1 h"', 'name = "a"\ntime = "2 h"'), "another event has it"),
+        (('name = "a"\ntime = "1 h"', 'after = "a"\ntime = "2 h"'), "an event has one cause"),
+        (
+            ('name = "a"\ntime = "1 h"', 'after = "a"\nwhen = { temperature = { above = "75 degC" } }\nonce = false\nhysteresis = "1 K"'),
+            "is armed by it each time",
+        ),
+        (("name = 3\ntime = \"1 h\"",), "events are named for those that wait for them"),
+    ],
+)
+def test_wrong_order_of_events(entries, because):
+    with pytest.raises(StudyError, match=because):
+        read_text(_named(*entries))
