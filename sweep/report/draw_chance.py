@@ -47,7 +47,7 @@ def _draw_facet(axes: Axes, facet: Facet, least: float, first: bool) -> None:
         ends = [min(ends[0], facet.limit - 0.06 * width), max(ends[1], facet.limit + 0.06 * width)]
     axes.set_xlim(*ends)
     off = "" if near else "; off the axis"
-    axes.set_title(f"{wrap(facet.title, 44)}\n{wrap(facet.said + off, 54)}", fontsize=8.5, loc="left", color=INK, pad=5, linespacing=1.25)
+    axes.set_title(f"{wrap(facet.title, 44)}\n{wrap(facet.said + off, 50)}", fontsize=8.5, loc="left", color=INK, pad=5, linespacing=1.25)
     axes.set_xlabel(facet.x_label)
     if first:
         axes.set_ylabel("Beyond the value (%)")

@@ -51,8 +51,8 @@ def _facet(limit: Mapping[str, Any], part: pd.DataFrame) -> Facet:
     scale = limit_scale(limit)
     name = words(limit["label"])
     failing, high = 1.0 - limit["probability"], 1.0 - limit["low"]
-    beyond = probability(failing) if failing > 0.0 else f"none of {limit['draws']:,}, at most {probability(high)}"
-    said = f"limit {scale.text(limit['bound'])}; beyond it {beyond}"
+    beyond = probability(failing) if failing > 0.0 else f"none, at most {probability(high)}"
+    said = f"limit {scale.text(limit['bound'])}; beyond: {beyond}"
     return Facet(
         name[0].upper() + name[1:], f"{name} ({scale.unit})" if scale.unit else name, scale.of(_numbers(part, "value")),
         100.0 * _numbers(part, "beyond"), 100.0 * _numbers(part, "low"), 100.0 * _numbers(part, "high"), scale.one(limit["bound"]), said,

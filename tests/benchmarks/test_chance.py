@@ -12,7 +12,7 @@ import pytest
 from sweep.analysis.risk import assess_risk
 from sweep.kernel.engine import march
 from sweep.plan import draw, set_point
-from sweep.plant.recipe import charge_plant
+from sweep.plant.course import charge_plant
 from sweep.plant.values import values_of
 from sweep.runner import simulate
 from sweep.study import read_study

@@ -105,7 +105,7 @@ def test_numbers_of_the_exceedance_figure(tmp_path: Path) -> None:
     assert ["MTSR", "Conversion"] == [facet.title for facet in found.facets]
     assert pytest.approx((80.0, 98.5)) == tuple(facet.limit for facet in found.facets)
     assert pytest.approx((100.0, 0.0)) == (found.facets[0].y[0], found.facets[0].y[-1])
-    assert "none of 4,096, at most 0.094" in found.facets[0].said
+    assert "beyond: none, at most 0.094" in found.facets[0].said
     assert {"limit", "value", "unit", "beyond (%)", "low (%)", "high (%)"} == set(found.tables["exceedance"].columns)
     assert 60 == len(found.tables["exceedance"])
 
