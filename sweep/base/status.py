@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT, CRASHED = range(7)
+DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT, RESTLESS, CRASHED = range(8)
 
 
 @dataclass(frozen=True)
@@ -46,6 +46,12 @@ OUTCOMES = (
         "failed",
         "an input makes no sense at this point",
         "look at the reason named beside it",
+    ),
+    Outcome(
+        RESTLESS,
+        "failed",
+        "its events by condition fired, or were armed again, more than 200 times",
+        "widen the hysteresis of an event that is armed again",
     ),
     Outcome(
         CRASHED,

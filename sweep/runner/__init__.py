@@ -5,14 +5,15 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from sweep.runner.cluster import checked_address
+    from sweep.runner.manifest import read_manifest
     from sweep.runner.parallel import simulate
     from sweep.runner.progress import Progress, Watcher
     from sweep.runner.run import sweep_points
-    from sweep.runner.store import Store, read_manifest, read_points
+    from sweep.runner.store import Store, read_points
 
 _HOME = {
     "simulate": "parallel", "Progress": "progress", "Watcher": "progress", "sweep_points": "run", "Store": "store",
-    "read_manifest": "store", "read_points": "store", "checked_address": "cluster",
+    "read_manifest": "manifest", "read_points": "store", "checked_address": "cluster",
 }  # fmt: skip
 __all__ = ["Progress", "Store", "Watcher", "checked_address", "read_manifest", "read_points", "simulate", "sweep_points"]
 

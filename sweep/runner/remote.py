@@ -15,11 +15,10 @@ import pandas as pd
 
 import sweep
 from sweep.base.errors import SurroundingsError
-from sweep.plant import evaluate
-from sweep.runner.store import versions
+from sweep.runner.manifest import versions
+from sweep.runner.worker import evaluate_rows
 from sweep.study.model import Study
 
-PIECE = 1024  # points of one call: what it touches stays in the processor's cache
 _FOLDERS = ("base", "study", "plan", "kernel", "plant", "runner")  # whose code decides what is computed and how it travels
 _WRITERS = ("matplotlib", "pyarrow")  # figures and files are made by the caller
 _PROTOCOLS = ("dask", "distributed")  # what carries points and tables
@@ -73,5 +72,4 @@ def work(packed: bytes, expected: Mapping[str, str], points: pd.DataFrame) -> pd
     odd = differences(expected, depends_on())
     if odd:
         raise SurroundingsError(f"a worker that joined during the run has {', '.join(odd)}")
-    tables = [evaluate(_study_in(packed), points.iloc[a : a + PIECE]) for a in range(0, len(points), PIECE)]
-    return pd.concat(tables) if len(tables) > 1 else tables[0]
+    return evaluate_rows(_study_in(packed), points)

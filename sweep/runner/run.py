@@ -1,8 +1,8 @@
 """The points of a plan, evaluated and stored; an interrupted run goes on where it stopped."""
 
+import contextlib
 import time
 from collections.abc import Callable, Generator
-from contextlib import closing
 
 import pandas as pd
 
@@ -14,14 +14,17 @@ from sweep.runner.store import ROWS, Store
 def sweep_points(
     store: Store, workers: int | None = None, watcher: Watcher | None = None, cluster: str | None = None, tell: Callable[[str], None] | None = None
 ) -> int:
-    """Evaluate what a store lacks, on this machine's cores or on a cluster; return how many points were computed now."""
+    """Evaluate what a store lacks, on this machine's cores or on a cluster; return how many points were computed now.
+
+    Where the run before ended without a word, whatever ended it may be in a point: each is then evaluated in a process that may crash.
+    """
     missing = store.missing()
     size = store.plan.size
     lacking = sum(min(ROWS, size - start) for start in missing)
     meter = Meter(size, size - lacking, watcher)
     store.save()
     begun = time.monotonic()
-    with closing(_tables(store, missing, workers, cluster, tell)) as tables:
+    with contextlib.closing(_tables(store, missing, workers, cluster, tell)) as tables:
         for start, table in tables:
             store.add_points(start, table)
             meter.add(len(table))
@@ -38,4 +41,4 @@ def _tables(
 
         yield from on_cluster(store.study, store.plan, missing, ROWS, cluster, tell, store.log)
     else:
-        yield from in_order(store.study, store.plan, missing, ROWS, workers)
+        yield from in_order(store.study, store.plan, missing, ROWS, workers, store.broke_off, store.log)

@@ -11,6 +11,7 @@ import pandas as pd
 
 from sweep.analysis import statements
 from sweep.analysis.batch_time import best_batch_time
+from sweep.analysis.deviations import look_at_deviations
 from sweep.analysis.failure import fail_cooling
 from sweep.analysis.overview import overlook
 from sweep.analysis.risk import assess_risk
@@ -64,6 +65,8 @@ def run(
     say = tell or (lambda _: None)
     address = None if cluster is None else checked_address(cluster)  # before anything is written
     with Store(folder, study, plan, fresh) as store:
+        if store.broke_off and address is None:
+            say("an earlier run here ended without a word: points are evaluated in processes of their own, so that a crash costs one of them")
         sweep_points(store, workers, watcher, address, say)
         steps = _Steps(store, study, workers, say)
         summary = steps.summary()
@@ -84,9 +87,13 @@ class _Steps:
     def __init__(self, store: Store, study: Study, workers: int | None, say: Teller) -> None:
         self.store, self.study, self.workers, self.say = store, study, workers, say
         self._seen: SetPoint | None = None
+        self._judged = study.judged()
 
     def _evaluate(self, points: pd.DataFrame) -> pd.DataFrame:
-        return simulate(self.study, points, self.workers)
+        return simulate(self.study, points, self.workers, self.store.broke_off)
+
+    def _judge(self, points: pd.DataFrame) -> pd.DataFrame:
+        return simulate(self._judged, points, self.workers)
 
     def _kept(self, name: str, title: str, find: Callable[[], Found]) -> dict[str, Any]:
         """Return an analysis' block, from the manifest where its tables are there whole."""
@@ -118,6 +125,7 @@ class _Steps:
         blocks["batch_time"] = self._batch_time()
         blocks["window"] = self._window()
         blocks["failure"] = self._failure()
+        blocks["deviations"] = self._deviations()
         blocks["risk"] = self._risk()
         blocks["sensitivity"] = self._sensitivity()
         self.store.add("analyses/inputs.csv", as_csv(statements.inputs(study)))
@@ -134,7 +142,7 @@ class _Steps:
         if self.study.batch_time is None:
             return {"not_assessed": "the study has no [batch_time]"}
         quick = self.study.without_failure()
-        evaluate = partial(simulate, quick, workers=self.workers)
+        evaluate = partial(simulate, quick, workers=self.workers, apart=self.store.broke_off)
         return self._kept("batch_time", "batch time", lambda: best_batch_time(quick, evaluate, self._set_point().row))
 
     def _window(self) -> dict[str, Any]:
@@ -142,22 +150,27 @@ class _Steps:
             return {"not_assessed": "the study has no [window]"}
         if not limits(self.study):
             return {"not_assessed": "the study has no limits and no target: there is nothing that a window could hold"}
-        return self._kept("window", "operating window", lambda: window(self.study, self._evaluate, margins, limits(self.study)))
+        return self._kept("window", "operating window", lambda: window(self._judged, self._judge, margins, limits(self._judged)))
 
     def _failure(self) -> dict[str, Any]:
         if not self.study.asks_failure:
             return {"not_assessed": "the study has no [failure], and no limit asks for one of its figures"}
         return self._kept("failure", "cooling failure", lambda: fail_cooling(self.study, self._set_point().row))
 
+    def _deviations(self) -> dict[str, Any]:
+        if not self.study.scenarios:
+            return {"not_assessed": "the study has no [scenarios] and no [deviations]"}
+        return self._kept("deviations", "deviations", lambda: look_at_deviations(self.study, self._set_point().point))
+
     def _risk(self) -> dict[str, Any]:
         if self.study.risk is None:
             return {"not_assessed": "the study has no [risk]"}
-        return self._kept("risk", "risk at the set-point", lambda: assess_risk(self.study, self._evaluate))
+        return self._kept("risk", "risk at the set-point", lambda: assess_risk(self._judged, self._judge))
 
     def _sensitivity(self) -> dict[str, Any]:
         if self.study.sensitivity is None:
             return {"not_assessed": "the study has no [sensitivity]"}
-        return self._kept("sensitivity", "sensitivity", lambda: assess_sensitivity(self.study, self._evaluate))
+        return self._kept("sensitivity", "sensitivity", lambda: assess_sensitivity(self._judged, self._judge))
 
 
 def stored(folder: str | Path) -> dict[str, Any] | None:

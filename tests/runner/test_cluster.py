@@ -33,7 +33,7 @@ SHORT = SMALL[: SMALL.index("[window]")].replace('mtsr = { at_most = "85 degC" }
 SLOW = """
 import os, pathlib, signal, time
 from sweep.plant import evaluate
-from sweep.runner import remote
+from sweep.runner import worker
 flag = pathlib.Path(FLAG)
 def slow(study, points):
     if flag.exists() and int(flag.read_text()) in points.index:
@@ -41,15 +41,15 @@ def slow(study, points):
         os.kill(os.getpid(), signal.SIGKILL)
     time.sleep(0.1)
     return evaluate(study, points)
-remote.evaluate = slow
+worker.evaluate = slow
 """
 ODD = """
 import sys
 from importlib.metadata import version
-from sweep.runner import store
+from sweep.runner import manifest
 def dask_setup(worker):
     if worker.name == 0:
-        store.version = lambda package: "1.26.0" if package == "numpy" else version(package)
+        manifest.version = lambda package: "1.26.0" if package == "numpy" else version(package)
     else:
         sys.modules["sweep.runner.remote"] = None
 """

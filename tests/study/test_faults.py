@@ -385,8 +385,6 @@ def test_fault(case):
 LATER = {
     "ranges": "[ranges]",
     "optimum": "[optimum]\nminimise = 'cycle_time'",
-    "scenarios": "[scenarios.coolant_lost]\nevents = []",
-    "deviations": "[deviations]",
     "fit": "[fit]",
 }
 
@@ -403,7 +401,6 @@ def test_sections_of_later_work(section):
     [
         ('turnaround = "3.5 h"', 'turnaround = "3.5 h"\nphases = []', "recipe.phases"),
         ('purpose  = "decomposition"', 'purpose  = "decomposition"\nrate = "k * amide"', "reactions.decomposition.rate"),
-        ('time = "4 h"', 'when = "conversion > 0.9"', "events.0.when"),
         ("[limits]", '[limits]\nmax_pressure = { at_most = "2 bar" }', "limits.max_pressure"),
     ],
 )
