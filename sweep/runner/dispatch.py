@@ -1,7 +1,7 @@
 """Tasks in flight on a cluster: how large, how many, and what is done about one that kills its workers.
 
 A task whose worker dies is given to another one by the scheduler. One that killed every worker it was given to is set aside, and at the end
-taken apart, with nothing else in flight, until the point that does it is found: that point is a failed row.
+taken apart, with nothing else in flight, until the point that does it is found: that point, alone and more than once, is a failed row.
 """
 
 from __future__ import annotations
@@ -11,7 +11,7 @@ import pickle
 import queue
 import time
 import uuid
-from collections import deque
+from collections import Counter, deque
 from collections.abc import Callable, Generator, Iterable, Iterator
 from typing import TYPE_CHECKING
 
@@ -29,6 +29,7 @@ if TYPE_CHECKING:
 LARGEST, SMALLEST = 2048, 128  # points of a task
 PER_THREAD = 4  # tasks that are in flight for each thread of the workers, and that even a small plan is cut into
 PARTS = 8  # smaller pieces that the rows of a deadly task are cut into
+ALONE = 2  # workers that a point has to kill, alone, before it is blamed: a single one may have died by chance, where the scheduler allows no failure
 GUILTY = 16  # points that may kill their workers; a program or a cluster that does so more often is not to be trusted with the rest
 STAYS = "the points that are done stay; the same command, with or without --cluster, goes on where it stopped"
 Stretch = tuple[int, int]
@@ -83,6 +84,7 @@ class Dispatch:
         self.landed: queue.SimpleQueue[str] = queue.SimpleQueue()
         self.suspects: deque[Stretch] = deque()
         self.guilty: list[int] = []
+        self.deaths: Counter[Stretch] = Counter()  # workers that died of each task, in the hunt that is on
         self.sent = 0
 
     @property
@@ -126,8 +128,10 @@ class Dispatch:
         future, task = self.flying[key]
         try:
             table = future.result(timeout=self.watch.patience)
-        except self.killed:
-            self.note(what="workers died", start=task[0], rows=task[1] - task[0])
+        except self.killed as error:
+            died = 1 + int(getattr(error, "allowed_failures", 0))
+            self.note(what="workers died", start=task[0], rows=task[1] - task[0], workers=died)
+            self.deaths[task] += died
             deadly.append(task)
         except TimeoutError:
             self.landed.put(key)  # its worker died after it was done: it is being done again
@@ -140,16 +144,19 @@ class Dispatch:
         """Yield the tables of a deadly task, taken apart with nothing else in flight; its deadly points as failed rows."""
         self.say(f"plan {named([suspect])} killed the workers that they were given to; looking for the point that does")
         left = deque(_parts(suspect))
+        self.deaths.clear()  # in company, a task is charged with its neighbours' deaths
         while left:
             deadly: deque[Stretch] = deque()
             self._send(left.popleft())
             while self.flying:
                 yield from self._landing(deadly)
             for task in deadly:
-                if task[1] - task[0] == 1:
-                    yield task[0], self._given_up(task)
-                else:
+                if task[1] - task[0] > 1:
                     left.extendleft(reversed(_parts(task)))
+                elif self.deaths[task] < ALONE:
+                    left.appendleft(task)
+                else:
+                    yield task[0], self._given_up(task)
 
     def _given_up(self, task: Stretch) -> pd.DataFrame:
         """Return the failed row of a point that kills its workers; SurroundingsError where there are too many."""

@@ -19,6 +19,9 @@ from tests.texts import SMALL
 class KilledError(Exception):
     """What the scheduler raises for a task that killed its workers."""
 
+    def __init__(self, allowed_failures):
+        self.allowed_failures = allowed_failures
+
 
 class Promise:
     """The result of a task; `fails` of its first askings time out, as where a worker died after it had answered."""
@@ -36,7 +39,10 @@ class Promise:
         deadly = self.scheduler.deadly & set(self.rows.index)
         if deadly or (self.rows.index[0] in self.scheduler.innocent and len(self.rows) > 1):
             self.scheduler.kills += 1
-            raise KilledError
+            raise KilledError(self.scheduler.allowed_failures)
+        if len(self.rows) == 1 and self.rows.index[0] in self.scheduler.unlucky:
+            self.scheduler.unlucky.remove(self.rows.index[0])
+            raise KilledError(self.scheduler.allowed_failures)
         return self.rows.assign(answer=self.rows.index)
 
 
@@ -45,8 +51,10 @@ class Scheduler:
 
     status = "running"
 
-    def __init__(self, deadly=(), innocent=(), fails=0, threads=2):
-        self.deadly, self.innocent, self.fails, self.threads = set(deadly), set(innocent), fails, threads
+    def __init__(self, deadly=(), innocent=(), unlucky=(), fails=0, threads=2, allowed_failures=3):
+        """innocent: rows whose tasks die while they are not alone; unlucky: rows that die alone, once."""
+        self.deadly, self.innocent, self.unlucky, self.fails, self.threads = set(deadly), set(innocent), set(unlucky), fails, threads
+        self.allowed_failures = allowed_failures
         self.calls, self.most, self.keys, self.kills, self.cancelled = [], 0, [], 0, None
 
     def submit(self, work, packed, expected, rows, key, pure):
@@ -115,6 +123,22 @@ def test_deadly_points_are_found_and_given_up_and_all_others_computed(study, sma
     assert "plan row 333 kills every worker that it is given to: given up, a failed row" in told
     assert any(line.startswith("plan rows 328 to 343 killed") for line in told)
     assert len(set(scheduler.keys)) == len(scheduler.keys)
+
+
+def test_point_is_blamed_only_where_it_has_killed_two_workers_alone(study, small):
+    noted = []
+    scheduler = Scheduler(deadly={7}, unlucky={6}, allowed_failures=0)
+    found = pd.concat([table for _, table in sorted(_tables(study, scheduler, noted=lambda **entry: noted.append(entry)))])
+    assert [k if k != 7 else -1 for k in range(600)] == list(found["answer"])
+    assert not scheduler.unlucky
+    assert [7] == [entry["start"] for entry in noted if entry["what"] == "point given up"]
+    assert [(7, 1)] * 2 == [(entry["start"], entry["workers"]) for entry in noted if entry["what"] == "workers died" and entry["start"] == 7]
+
+
+def test_point_that_killed_several_workers_is_not_given_more(study, small):
+    scheduler = Scheduler(deadly={7}, allowed_failures=3)
+    list(_tables(study, scheduler))
+    assert 1 == sum("-7-8-" in key for key in scheduler.keys)
 
 
 def test_suspects_wait_until_the_rest_is_done(study, small):
