@@ -79,7 +79,11 @@ def not_assessed(study: Study) -> list[str]:
         found.append("No limits are written: nothing but the target, if there is one, was judged.")
     if study.window is None:
         found.append("The operating window: the study has no [window].")
-    found.append("Uncertainty of the inputs, and deviations other than a total loss of cooling.")
+    if study.risk is None:
+        found.append("Risk, the probability that the limits hold with uncertain inputs: the study has no [risk].")
+    if study.sensitivity is None:
+        found.append("Sensitivity, which inputs decide: the study has no [sensitivity].")
+    found.append("Deviations other than a total loss of cooling.")
     return found
 
 

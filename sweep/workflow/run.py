@@ -13,6 +13,8 @@ from sweep.analysis import statements
 from sweep.analysis.batch_time import best_batch_time
 from sweep.analysis.failure import fail_cooling
 from sweep.analysis.overview import overlook
+from sweep.analysis.risk import assess_risk
+from sweep.analysis.sensitivity import assess_sensitivity
 from sweep.analysis.set_point import SetPoint, look_at_set_point
 from sweep.analysis.window import window
 from sweep.base.records import canonical
@@ -114,6 +116,8 @@ class _Steps:
         blocks["batch_time"] = self._batch_time()
         blocks["window"] = self._window()
         blocks["failure"] = self._failure()
+        blocks["risk"] = self._risk()
+        blocks["sensitivity"] = self._sensitivity()
         self.store.add("analyses/inputs.csv", as_csv(statements.inputs(study)))
         warnings = [f"{w.key}: {w.found}; expected {w.expected}; {w.because}" for w in study.warnings]
         return {
@@ -142,6 +146,16 @@ class _Steps:
         if not self.study.asks_failure:
             return {"not_assessed": "the study has no [failure], and no limit asks for one of its figures"}
         return self._kept("failure", "cooling failure", lambda: fail_cooling(self.study, self._set_point().row))
+
+    def _risk(self) -> dict[str, Any]:
+        if self.study.risk is None:
+            return {"not_assessed": "the study has no [risk]"}
+        return self._kept("risk", "risk at the set-point", lambda: assess_risk(self.study, self._evaluate))
+
+    def _sensitivity(self) -> dict[str, Any]:
+        if self.study.sensitivity is None:
+            return {"not_assessed": "the study has no [sensitivity]"}
+        return self._kept("sensitivity", "sensitivity", lambda: assess_sensitivity(self.study, self._evaluate))
 
 
 def stored(folder: str | Path) -> dict[str, Any] | None:

@@ -31,7 +31,27 @@ def _cut(text, *headings):
     return text
 
 
+UNCERTAIN = """
+[uncertain]
+k = { of = "reactions.main.rate_constant.value", distribution = "lognormal", relative_sd = 0.2 }
+E = { of = "reactions.main.rate_constant.activation_energy", distribution = "normal", sd = "2 kJ/mol" }
+[[correlations]]
+between = ["k", "E"]
+rank = 0.5
+[risk]
+draws = 64
+rare_draws = 100
+[sensitivity]
+trajectories = 4
+blocks = 16
+draws = 32
+"""
 WHOLE = {
+    "uncertain": QUICK + UNCERTAIN,
+    "uncertain without target": _cut(QUICK, "[target]", "[batch_time]") + UNCERTAIN,
+    "uncertain without limits": _cut(QUICK, "[limits]", "[target]", "[batch_time]") + UNCERTAIN,
+    "uncertain runaway": QUICK.replace('"-80 kJ/mol"', '"-3000 kJ/mol"') + UNCERTAIN,
+    "uncertain and never reached": QUICK.replace("conversion = 0.9", "conversion = 0.999999").replace('longest = "24 h"', 'longest = "6 h"') + UNCERTAIN,
     "whole": QUICK,
     "without target": _cut(QUICK, "[target]", "[batch_time]"),
     "without failure": _cut(QUICK, "[failure]").replace('mtsr = { at_most = "85 degC" }', ""),
@@ -54,6 +74,26 @@ def test_summary_keeps_its_schema_whatever_is_asked(tmp_path, schema, name):
     jsonschema.validate(written, schema)
     assert written["points"]["planned"] == sum(len(t) for t in found.points())
     assert written["not_assessed"]
+
+
+def test_uncertain_answers_are_the_same_bytes_for_any_number_of_workers(tmp_path):
+    for workers in (1, 2):
+        run(read_text(QUICK + UNCERTAIN), tmp_path / str(workers), workers=workers, figures=False)
+    names = sorted(path.relative_to(tmp_path / "1") for path in (tmp_path / "1").rglob("*") if path.suffix in (".csv", ".parquet"))
+    assert {"risk_limits.csv", "sensitivity_shares.csv", "sensitivity_spread.csv"} <= {path.name for path in names}
+    for name in [*names, "summary.json"]:
+        assert (tmp_path / "1" / name).read_bytes() == (tmp_path / "2" / name).read_bytes(), name
+
+
+def test_an_interrupted_risk_goes_on_to_the_same_answer(tmp_path, monkeypatch):
+    whole = run(read_text(QUICK + UNCERTAIN), tmp_path / "whole", workers=1, figures=False)
+    monkeypatch.setattr("sweep.workflow.run.assess_sensitivity", lambda *_: (_ for _ in ()).throw(KeyboardInterrupt))
+    with pytest.raises(KeyboardInterrupt):
+        run(read_text(QUICK + UNCERTAIN), tmp_path / "cut", workers=1, figures=False)
+    monkeypatch.undo()
+    monkeypatch.setattr("sweep.workflow.run.assess_risk", lambda *_: pytest.fail("what is done is kept"))
+    assert whole.summary == run(read_text(QUICK + UNCERTAIN), tmp_path / "cut", workers=1, figures=False).summary
+    assert (tmp_path / "whole" / "summary.json").read_bytes() == (tmp_path / "cut" / "summary.json").read_bytes()
 
 
 @pytest.mark.parametrize(
