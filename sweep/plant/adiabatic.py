@@ -159,20 +159,37 @@ def run_synthesis(study: Study, plant: Charged, failed: Failed, tolerance: float
     return Synthesis(state[:, nz].copy(), state, np.where(early, when, out[:, at.OUT_TIME]), ok)
 
 
+def held_at(plant: Charged, rows: np.ndarray, time: Floats) -> tuple[Floats, Floats]:
+    """Return what points `rows` (M,) hold by times (M,) s but for reaction: moles (M, I) and volume (M,) m3."""
+    share = states.share_at(plant, rows, time[:, None])[:, :, 0]
+    base = np.einsum("mf,mfi->mi", share, plant.brought.fed[rows]) + (plant.brought.charged[rows] if plant.extents else 0.0)
+    return base, plant.brought.volume[rows] + (share * plant.brought.feed_volume[rows]).sum(axis=1)
+
+
 def fed_by(plant: Charged, rows: np.ndarray, block: Floats, time: Floats) -> Floats:
     """Return blocks (M, block) without feeds that hold what points `rows` (M,) have fed by times (M,) s."""
-    head, share, block = plant.program.integers, states.share_at(plant, rows, time[:, None])[:, :, 0], block.copy()
-    fed = np.einsum("mf,mfi->mi", share, plant.brought.fed[rows])
-    block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (plant.brought.charged[rows] if plant.extents else 0.0)
-    block[:, at.VOLUME] = plant.brought.volume[rows] + (share * plant.brought.feed_volume[rows]).sum(axis=1)
+    head, block = plant.program.integers, block.copy()
+    block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]], block[:, at.VOLUME] = held_at(plant, rows, time)
     return block
 
 
-def mixture_block(study: Study, plant: Charged, failed: Failed, synthesis: Synthesis) -> Floats:
-    """Return the block (M, block) of the mixture left where MTSR is reached: what is fed by then and no more, decomposition alone."""
-    still_fed = np.clip(synthesis.after, 0.0, feeding_time(study, plant, failed.rows, failed.time))
-    block = fed_by(plant, failed.rows, failed.block, failed.time + still_fed)
-    return _only(study, plant, block, "decomposition")
+def highest_at(study: Study, plant: Charged, failed: Failed, after: Floats) -> Floats:
+    """Return when (s of the batch) the last was fed to mixtures whose highest temperature comes `after` (M,) s of their failure, (M,)."""
+    return failed.time + np.clip(after, 0.0, feeding_time(study, plant, failed.rows, failed.time))
+
+
+def mixture_block(study: Study, plant: Charged, failed: Failed, after: Floats) -> Floats:
+    """Return the block (M, block) of the mixture left `after` (M,) s of a failure: what is fed by then and no more, decomposition alone."""
+    return _only(study, plant, fed_by(plant, failed.rows, failed.block, highest_at(study, plant, failed, after)), "decomposition")
+
+
+def closed_form(study: Study, plant: Charged, failed: Failed, after: Floats, state: Floats) -> Floats:
+    """Return the closed form of the time to maximum rate (s) of mixtures in states (M, R) `after` (M,) s of a failure, (M,)."""
+    nz, structure = plant.program.structure.sources.shape[0], plant.program.structure
+    base, volume = held_at(plant, failed.rows, highest_at(study, plant, failed, after))
+    moles = base + state[:, :nz] @ structure.amounts.T
+    now = rates.flow(plant, failed.block, plant.constants[failed.rows, at.DELTA], moles, state[:, nz], volume)
+    return rates.closed_form_tmr(now, purposes(study, "decomposition"), state[:, nz])
 
 
 def mixture_amounts(plant: Charged, block: Floats, state: Floats) -> Floats:

@@ -4,7 +4,7 @@ import numpy as np
 
 from sweep.plant import adiabatic, states
 from sweep.plant.criticality import classify
-from sweep.plant.marched import Moments, best_of, score_of
+from sweep.plant.marched import Moments, best_of, mixture_block, score_of
 from sweep.plant.rates import closed_form_tmr
 from sweep.plant.recipe import Charged
 from sweep.plant.samples import Batch
@@ -62,7 +62,7 @@ def _urgent(study: Study, plant: Charged, marched: Moments, known: np.ndarray, f
     found["tmr_ad_s"][have] = marched.tmr[at_worst]
     found["tmr_ad_censored"][have] = marched.censored[at_worst]
     found["tmr_ad_time_s"][have] = marched.time[at_worst]
-    block, state = marched.block[at_worst], marched.state[at_worst]
+    block, state = mixture_block(study, plant, marched.at(at_worst)), marched.state[at_worst]
     nz = plant.program.structure.sources.shape[0]
     closed = closed_form_tmr(adiabatic.flow_of(plant, have, block, state), decomposes, state[:, nz])
     found["tmr_ad_closed_form_s"][have] = np.where(closed < MEANINGLESS, closed, np.nan)

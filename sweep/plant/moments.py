@@ -15,51 +15,58 @@ from sweep.plant.adiabatic import feeding_time, purposes
 from sweep.plant.chemistry import R
 from sweep.plant.onward import states_at
 from sweep.plant.recipe import Charged
-from sweep.plant.samples import FINE, Batch
+from sweep.plant.samples import Batch
 from sweep.plant.values import Floats
 from sweep.study.model import Study
 
+FINE = 33  # times between the neighbours of the highest sample
 COLDEST = 100.0  # K; an endothermic completion is estimated no colder
 
 
 Estimate = Callable[[np.ndarray, Floats, Floats], Floats]  # points (M,), times (M, K), states (M, K, R) -> (M, K)
 
 
-def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> tuple[Floats, Floats, Floats]:
-    """Return the temperature (N, K) that complete synthesis would reach after a failure, the moles left and the volume (m3)."""
+def synthesis_rise(study: Study, plant: Charged, rows: np.ndarray, times: Floats, state: Floats) -> tuple[Floats, dict[int, Floats], Floats]:
+    """Return the temperature (N, K) that complete synthesis would reach after a failure, the moles left, (N, K) each, and the volume (m3)."""
     nz, values = plant.program.structure.sources.shape[0], plant.values
-    state = np.nan_to_num(state, nan=300.0)
-    moles, T = states.amounts_at(plant, rows, state, times), state[:, :, nz]
+    moles, T = states.amounts_of(plant, rows, state, times), np.ascontiguousarray(state[:, :, nz])
     delay = np.stack([feeding_time(study, plant, rows, t) for t in times.T], axis=1)
-    coming = states.share_at(plant, rows, times + delay) - states.share_at(plant, rows, times)
-    moles = moles + np.einsum("nfk,nfi->nki", coming, plant.brought.fed[rows])
+    share = states.share_at(plant, rows, times + delay)
+    if delay.any():
+        coming = share - states.share_at(plant, rows, times)
+        moles = {i: n + np.einsum("nfk,nf->nk", coming, plant.brought.fed[rows, :, i]) for i, n in moles.items()}
     heat, left = states.completed(study, moles, states.reference_heats(study, plant)[rows])
     wall = values.get("vessel.heat_capacity")[rows] * float(study.failure is not None and study.failure.wall)
     cp = plant.cp[rows]
-    per_mole = sum(cp[:, None, :, k] * T[:, :, None] ** k for k in range(4))
-    capacity = (moles * per_mole).sum(axis=2) + wall[:, None]
-    volume = plant.brought.volume[rows, None] + np.einsum("nfk,nf->nk", states.share_at(plant, rows, times + delay), plant.brought.feed_volume[rows])
+    powers = range(1, plant.program.structure.cp_terms)
+    capacity = wall[:, None] + np.zeros(T.shape)
+    for i, n in moles.items():
+        capacity += n * sum((cp[:, i, k, None] * T**k for k in powers), cp[:, i, 0, None])
+    volume = plant.brought.volume[rows, None] + np.einsum("nfk,nf->nk", share, plant.brought.feed_volume[rows])
     return T + heat / capacity, left, volume
 
 
-def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles: Floats, volume: Floats) -> Floats:
+def log_urgency(study: Study, plant: Charged, rows: np.ndarray, T: Floats, moles: dict[int, Floats], volume: Floats) -> Floats:
     """Return minus the logarithm of the closed form of the time to maximum rate (N, K), up to a constant per point."""
     block = plant.blocks[rows, 0]
     terms, _, _ = rates.parts_of_block(plant, block)
     delta = plant.constants[rows, at.DELTA][:, None]
     total, k, given_off = np.zeros_like(T), 0, states.reference_heats(study, plant)[rows]
     T = np.maximum(T, COLDEST)
+    inverse = 1.0 / volume
     with np.errstate(divide="ignore", over="ignore", invalid="ignore"):
         for j, reaction in enumerate(plant.program.structure.reactions):
             if study.reactions[j].purpose == "decomposition":
                 energy = -terms[:, k, 1][:, None]
                 rate = np.exp(np.clip(terms[:, k, 0][:, None] - energy / T, -700.0, 700.0)) * volume
                 for factor in reaction[0].factors:
-                    x = moles[:, :, factor.species] / volume
-                    rate = rate * np.maximum(x, 0.0) ** factor.power * (np.abs(x) + delta) ** factor.extra
+                    x = moles[factor.species] * inverse
+                    rate = rate * np.maximum(x, 0.0) ** factor.power
+                    if factor.extra != 0.0:
+                        rate = rate * (np.abs(x) + delta) ** factor.extra
                 total += np.maximum(rate * given_off[:, j][:, None], 0.0) * energy * R / T**2
             k += len(reaction)
-        capacity = (moles * plant.cp[rows][:, None, :, 0]).sum(axis=2)
+        capacity = sum(n * plant.cp[rows, i, 0, None] for i, n in moles.items())
         found = np.log(total / np.where(capacity > 0.0, capacity, 1.0))
     return np.where(np.isnan(found), -np.inf, found)
 
@@ -79,12 +86,12 @@ def kinks(study: Study, plant: Charged, batch: Batch) -> list[tuple[np.ndarray, 
     What two reactants are short of each other is untouched by their own reaction, so it moves with the feeds, evenly.
     """
     rows, index = np.arange(batch.times.shape[0]), {s.name: i for i, s in enumerate(study.species)}
-    moles = states.amounts_at(plant, rows, np.nan_to_num(batch.states, nan=300.0), batch.times)
+    moles = states.amounts_of(plant, rows, batch.states, batch.times)
     found = []
     for j in purposes(study, "synthesis"):
         used = [(index[s], -n) for s, n in study.reactions[j].stoichiometry.items() if n < 0.0]
         for (a, nu_a), (b, nu_b) in itertools.combinations(used, 2):
-            short = moles[:, :, a] / nu_a - moles[:, :, b] / nu_b
+            short = moles[a] / nu_a - moles[b] / nu_b
             crosses = (short[:, :-1] * short[:, 1:] < 0.0) & batch.inside[:, :-1] & batch.inside[:, 1:]
             at, before = np.nonzero(crosses)
             low, high = short[at, before], short[at, before + 1]

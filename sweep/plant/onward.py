@@ -22,8 +22,8 @@ def segment_at(plant: Charged, rows: NDArray[np.int_], time: Floats) -> NDArray[
 def cut_segments(plant: Charged, rows: np.ndarray, start: Floats, stop: Floats) -> Floats:
     """Return segment blocks (M, S, block) from `start` to `stop` (M,) of the points `rows` (M,), time counted from `start`."""
     total = plant.boundaries.shape[1]
-    first = segment_at(plant, rows, start)
-    order = np.minimum(first[:, None] + np.arange(total), total - 1)
+    first, last = segment_at(plant, rows, start), segment_at(plant, rows, stop)
+    order = np.minimum(first[:, None] + np.arange(int((last - first).max(initial=0)) + 1), total - 1)
     blocks: Floats = plant.blocks[rows[:, None], order]
     begins = blocks[:, :, at.T_START].copy()
     blocks[:, :, at.T_START] -= start[:, None]

@@ -122,7 +122,7 @@ def charge_plant(study: Study, values: Values) -> Charged:
     end, final = final_time(study, values, brought.last_feed())
     bounds = _boundaries(study, values, brought, end, final)
     n, segments = bounds.shape
-    blocks = np.zeros((n, segments, program.block))
+    blocks = np.zeros((segments, program.block, n)).transpose(2, 0, 1)  # a quantity's values side by side while they are written
     extents = chemistry.carries_extents(chemistry.stoichiometry(study)) or not study.reactions
     charge_T = values.get("recipe.charge.temperature", 298.15)
     cp, heats = _chemistry(study, values, program, blocks)
@@ -142,7 +142,7 @@ def charge_plant(study: Study, values: Values) -> Charged:
         starts[:, :nz] = brought.charged
     starts[:, nz] = starts[:, nz + 1] = charge_T
     constants = _constants(study, values, brought, end, final, starts, structure.target)
-    return Charged(study, values, program, brought, blocks, starts, constants, cp, heats, extents, bounds)
+    return Charged(study, values, program, brought, np.ascontiguousarray(blocks), starts, constants, cp, heats, extents, bounds)
 
 
 def _chemistry(study: Study, values: Values, program: Program, blocks: Floats) -> tuple[Floats, Floats]:

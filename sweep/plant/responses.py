@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, Literal, NamedTuple
 
 import numpy as np
 
@@ -39,7 +39,7 @@ FAILURE = [
     Response("mtt_K", "K"), Response("criticality_class", "", "int"), Response("adiabatic_rise_synthesis_K", "K"),
     Response("adiabatic_rise_decomposition_K", "K"),
 ]  # fmt: skip
-_DTYPES = {"float": "float64", "text": "str", "bool": "boolean", "int": "Int64"}
+_DTYPES: dict[str, Literal["str", "boolean", "Int64"]] = {"text": "str", "bool": "boolean", "int": "Int64"}
 
 
 def counted(study: Study) -> list[str]:
@@ -80,9 +80,21 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     tolerance = float(study.values.get("accuracy.relative", 1e-6))
     marched, batch = march_batches(plant, tolerance)
     found = _respond(study, plant, marched, batch, tolerance)
-    columns = {r.column: pd.Series(found[r.column], index=points.index, dtype=_DTYPES[r.kind]) for r in responses(study)}
-    table = blank(values, pd.DataFrame(columns).set_axis(points.index))
+    table = blank(values, _table(responses(study), found, points.index))
     return pd.concat([points, table], axis=1)
+
+
+def _table(columns: tuple[Response, ...], found: dict[str, Floats | list[str]], index: pd.Index[Any]) -> pd.DataFrame:
+    """Return the columns as a table: all floats as one array, which pandas looks at once, the others set between them."""
+    import pandas as pd
+
+    floats = [r.column for r in columns if r.kind == "float"]
+    table = pd.DataFrame(np.array([found[name] for name in floats], dtype=np.float64).T, index=index, columns=floats)
+    for place, r in enumerate(columns):
+        if r.kind != "float":
+            value: Any = found[r.column]
+            table.insert(place, r.column, pd.array(value, dtype=_DTYPES[r.kind]))
+    return table
 
 
 def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, tolerance: float) -> dict[str, Floats | list[str]]:
@@ -114,11 +126,10 @@ def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, toler
         found.update(columns)
         for reason, more in zip(reasons, why, strict=True):
             reason.extend(more)
-    found["status"] = [OUTCOMES[c].status for c in code]
-    found["reason"] = [
-        "; ".join([OUTCOMES[c].sentence.format(time=t, limit=TOO_HOT)] * int(c != DONE) + r)
-        for c, t, r in zip(code, out[:, at.OUT_TIME], reasons, strict=True)
-    ]
+    for n in np.flatnonzero(code != DONE):
+        reasons[n].insert(0, OUTCOMES[code[n]].sentence.format(time=out[n, at.OUT_TIME], limit=TOO_HOT))
+    found["status"] = [OUTCOMES[c].status for c in code.tolist()]
+    found["reason"] = ["; ".join(reason) for reason in reasons]
     return found
 
 

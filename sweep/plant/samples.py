@@ -33,6 +33,14 @@ class Batch:
     hottest: Floats
     peak: Floats
 
+    def last(self) -> np.ndarray:
+        """Return the place (N,) of each batch's last sample inside."""
+        return np.maximum(self.inside.sum(axis=1) - 1, 0)
+
+    def over(self) -> Floats:
+        """Return the time (N,) s of each batch's last sample inside."""
+        return np.where(self.inside, self.times, 0.0).max(axis=1)
+
 
 def march_batches(plant: Charged, tolerance: float) -> tuple[Marched, Batch]:
     """March batches from start to the longest time; return what that left, and samples up to each batch's end.
@@ -73,8 +81,8 @@ def largest_accumulation(study: Study, plant: Charged, batch: Batch, tolerance: 
     """Return the largest accumulation up to the batch's end, (N,): the highest sample, refined between its neighbours."""
 
     def share(rows: np.ndarray, times: Floats, state: Floats) -> Floats:
-        known = np.isfinite(state[:, :, 0])
-        return np.where(known, states.accumulation(study, plant, rows, np.nan_to_num(state, nan=300.0), np.nan_to_num(times)), -np.inf)
+        value = states.accumulation(study, plant, rows, state, times)
+        return np.where(np.isfinite(value), value, -np.inf)
 
     rows = np.arange(plant.values.count)
     value = np.where(batch.inside, share(rows, batch.times, batch.states), -np.inf)

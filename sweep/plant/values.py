@@ -33,7 +33,8 @@ class Values:
 
     def get(self, path: str, default: float | Floats = 0.0) -> Floats:
         """Return a quantity for every point, shape (N,)."""
-        return np.broadcast_to(np.asarray(self.given.get(path, default), dtype=np.float64), (self.count,))
+        value = self.given.get(path, default)
+        return value if isinstance(value, np.ndarray) else np.full(self.count, value)
 
     def need(self, path: str) -> Floats:
         """Return a quantity that the question cannot do without; SweepError where it is not written."""

@@ -14,8 +14,8 @@ from sweep.plan import Planned
 from sweep.plant import evaluate
 from sweep.study.model import Study
 
-PIECE = 1024  # points of one call: what it touches stays in the processor's cache
-TASK, WAVE = 2048, 16  # points that a worker process takes at a time; tasks per worker before all wait for the last of them
+PIECE = 4096  # points of one call: what a call costs beside its points is small, and what it touches is still some megabytes
+TASK, WAVE = 4096, 8  # points that a worker process takes at a time; tasks per worker before all wait for the last of them
 PROCESSES_FROM = 32_768  # points; below, threads are done before processes have started
 
 
