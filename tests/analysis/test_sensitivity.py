@@ -134,6 +134,18 @@ def test_correlated_inputs_stand_together():
     assert any("varied together" in caution for caution in found.summary()["cautions"])
 
 
+def test_one_group_decides_alone():
+    pair = '[[correlations]]\nbetween = ["x0", "x1"]\nlinear = 0.8'
+    found = found_of([normal(1.0)] * 2, lambda x: x.sum(axis=1), correlations=pair)
+    assert {"all inputs are correlated: one group, which decides alone"} == {r["undefined"] for r in found.summary()["responses"]}
+    assert ["x0", "x1"] == sorted(found.spread[1]["input"])
+
+
+def test_one_input_alone():
+    found = found_of([normal(1.0)], lambda x: 3.0 * x[:, 0], "[sensitivity]\nblocks = 1024")
+    assert pytest.approx([1.0], abs=0.02) == shares(found)
+
+
 def test_order_of_the_groups():
     """A group that is written between others keeps its place in every table."""
     pair = '[[correlations]]\nbetween = ["x0", "x11"]\nlinear = 0.5'

@@ -35,6 +35,7 @@ UNCERTAIN = """
 [uncertain]
 k = { of = "reactions.main.rate_constant.value", distribution = "lognormal", relative_sd = 0.2 }
 E = { of = "reactions.main.rate_constant.activation_energy", distribution = "normal", sd = "2 kJ/mol" }
+U = { of = "vessel.U", distribution = "triangular", low = "200 W/m2/K", high = "320 W/m2/K" }
 [[correlations]]
 between = ["k", "E"]
 rank = 0.5
@@ -51,7 +52,7 @@ WHOLE = {
     "uncertain without target": _cut(QUICK, "[target]", "[batch_time]") + UNCERTAIN,
     "uncertain without limits": _cut(QUICK, "[limits]", "[target]", "[batch_time]") + UNCERTAIN,
     "uncertain runaway": QUICK.replace('"-80 kJ/mol"', '"-3000 kJ/mol"') + UNCERTAIN,
-    "uncertain and never reached": QUICK.replace("conversion = 0.9", "conversion = 0.999999").replace('longest = "24 h"', 'longest = "6 h"') + UNCERTAIN,
+    "uncertain and never reached": QUICK.replace("conversion = 0.9", "conversion = 0.999999") + UNCERTAIN,
     "whole": QUICK,
     "without target": _cut(QUICK, "[target]", "[batch_time]"),
     "without failure": _cut(QUICK, "[failure]").replace('mtsr = { at_most = "85 degC" }', ""),

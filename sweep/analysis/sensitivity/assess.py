@@ -58,7 +58,7 @@ class Sensitivity:
 
     def _cautions(self) -> list[str]:
         found = []
-        lost = max((1.0 - one.used / one.planned for one in (*self.screened.values(), *self.shared.values())), default=0.0)
+        lost = max((1.0 - one.used / one.planned for one in (*self.screened.values(), *self.shared.values()) if one.planned), default=0.0)
         if lost > _MANY_LOST:
             found.append(f"up to {100.0 * lost:.3g} % of the blocks held a failed point or a null and were left out: shares are of the others only")
         if self.space.grouped:
@@ -92,13 +92,14 @@ def assess_sensitivity(study: Study, evaluate: Evaluate) -> Sensitivity:
         marches += len(points)
         return evaluate(points)
 
-    cube = screening_cube(space, settings.trajectories, seeds["screening"])
-    table = counted(space.points(space.within(cube)))
-    screened = {
-        name: screen(space, cube, whole_numbers(table, name), settings.confidence, seeds["bootstrap"], tolerance) for name in units
-    }  # fmt: skip
-    table = counted(space.points(shares_cube(space, settings.blocks, seeds["shares"])))
-    shared = {name: variance_shares(space, whole_numbers(table, name), settings.confidence, seeds["bootstrap"], tolerance) for name in units}
+    if space.alone:
+        screened = shared = {name: Found(pd.DataFrame(), 0, 0, "all inputs are correlated: one group, which decides alone") for name in units}
+    else:
+        cube = screening_cube(space, settings.trajectories, seeds["screening"])
+        table = counted(space.points(space.within(cube)))
+        screened = {name: screen(space, cube, whole_numbers(table, name), settings.confidence, seeds["bootstrap"], tolerance) for name in units}
+        table = counted(space.points(shares_cube(space, settings.blocks, seeds["shares"])))
+        shared = {name: variance_shares(space, whole_numbers(table, name), settings.confidence, seeds["bootstrap"], tolerance) for name in units}
     local = slopes(study, counted(stepped(study)), units)
     halved = settings.over == "uncertain" and bool(limits(study))
     spread = halved_spreads(study, counted, settings.draws, settings.confidence) if halved else None

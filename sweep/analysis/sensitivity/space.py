@@ -32,6 +32,11 @@ class Space:
         """Tell whether some dimensions move together."""
         return len(self.labels) < len(self.group)
 
+    @property
+    def alone(self) -> bool:
+        """Tell whether all that varies is one group: there is nothing to tell apart."""
+        return self.grouped and len(self.labels) == 1
+
     def problem(self) -> dict[str, Any]:
         """Return the cube as SALib asks for it; groups by number, so that no name can collide."""
         size = len(self.group)
