@@ -5,7 +5,7 @@ from collections.abc import Mapping
 from itertools import product
 from typing import NamedTuple
 
-from sweep.study.model import FAILURE, Charge, Feed, Limit, Reaction, Species, Target, Variable
+from sweep.study.model import FAILURE, Charge, Feed, Limit, Objective, Reaction, Species, Target, Variable
 from sweep.study.reader import Reader
 
 _MOST_CORNERS = 5  # variables; beyond, only the set-point is looked at
@@ -62,11 +62,13 @@ def check_equilibria(reader: Reader, reactions: tuple[Reaction, ...]) -> None:
             reader.needed(f"{path}.equilibrium_constant.at", "an equilibrium moves with temperature, by van 't Hoff")
 
 
-def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Reaction, ...], target: Target | None) -> None:
-    """Fault limits without what they need."""
+def check_limits(
+    reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Reaction, ...], target: Target | None, objectives: tuple[Objective, ...] = ()
+) -> None:
+    """Fault limits and objectives without what they need."""
     decomposes = any(r.purpose == "decomposition" for r in reactions)
-    for name in dict.fromkeys(limit.name for limit in limits):
-        path = f"limits.{name}"
+    places = {one.name: f"optimum.{one.sense}" for one in objectives if one.kind == "response"}
+    for name, path in {**places, **{limit.name: f"limits.{limit.name}" for limit in limits}}.items():
         tested = "failure.td24" in reader.values and name in ("td24", "criticality_class")
         unread = any(f.key.startswith("reactions.") and f.key.endswith((".equation", ".orders")) for f in reader.faults)
         if name in ("tmr_ad", "td24", "criticality_class") and not decomposes and not tested and not unread:
@@ -79,7 +81,7 @@ def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Rea
             reader.needed("vessel.volume", "productivity is per volume of vessel")
         if name in (*FAILURE, "accumulation", "cooling_duty", "heat_release"):
             for reaction in reactions:
-                reader.needed(f"reactions.{reaction.name}.heat.value", f"the limit {name} needs the heats")
+                reader.needed(f"reactions.{reaction.name}.heat.value", f"{name} needs the heats")
     bound, horizon = reader.values.get("limits.tmr_ad.at_least"), reader.values["failure.horizon"]
     if bound is not None and bound > horizon:
         reader.fault(

@@ -383,8 +383,6 @@ def test_fault(case):
 
 
 LATER = {
-    "ranges": "[ranges]",
-    "optimum": "[optimum]\nminimise = 'cycle_time'",
     "scenarios": "[scenarios.coolant_lost]\nevents = []",
     "deviations": "[deviations]",
     "fit": "[fit]",
