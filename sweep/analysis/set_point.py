@@ -87,7 +87,7 @@ class SetPoint:
     def summary(self) -> dict[str, Any]:
         """Return the blocks set_point, limits and nearest_limit."""
         study = self.study
-        found = {r.column: _plain(self.row[r.column]) for r in responses(study) if r.column not in ("status", "reason")}
+        found = {r.column: _plain(self.row[r.column]) for r in responses(study) if r.column not in ("status", "reason") and "." not in r.column}
         status, reason = str(self.row["status"]), str(self.row["reason"])
         block = {"inputs": self.inputs(), "status": status, "reason": reason, "responses": found, "holds": self.holds}
         return {"set_point": block, "limits": self.limit_lines(), "nearest_limit": self.nearest()}

@@ -87,7 +87,8 @@ def not_assessed(study: Study) -> list[str]:
         found.append("Acceptable ranges, within which every limit holds: the study has no [ranges].")
     if study.optimum is None:
         found.append("An optimum, the best setting within the limits: the study has no [optimum].")
-    found.append("Deviations other than a total loss of cooling.")
+    if not study.scenarios:
+        found.append("Deviations other than a total loss of cooling: the study has no [scenarios] and no [deviations].")
     return found
 
 
@@ -130,5 +131,7 @@ def _written(study: Study) -> pd.DataFrame:
     for path in sorted(set(study.values) - known):
         if path.split(".")[0] not in ("events", "limits"):
             unit = si_unit(study.dimensions[path])
-            rows.append((path, "default", study.values[path], unit, "assumed where nothing is written"))
+            held = path.startswith("variables.")
+            source = "what is held is what was chosen, but in draws" if held else "assumed where nothing is written"
+            rows.append((path, "default", study.values[path], unit, source))
     return pd.DataFrame(rows, columns=["path", "written", "value_si", "unit_si", "source"])

@@ -3,12 +3,15 @@
 import math
 from typing import Any
 
+from sweep.analysis.overlay import Overlay
 from sweep.base.units import from_si, show
+from sweep.cli.tell_deviations import tell_deviations
 from sweep.cli.terminal import Terminal, duration
 from sweep.workflow.batch import OneBatch
 
 _SENSE = {"at_most": "at most", "at_least": "at least"}
 _OWN = {"K": "degC", "s": "h", "W": "kW"}
+_MEASURED = (("_mol_per_m3", "mol/m^3"), ("_mol", "mol"), ("_K", "K"), ("_W", "W"), ("_m3", "m^3"))
 
 
 def in_words(value: float | None, unit: str, own: str | None = None, digits: int = 5) -> str:
@@ -59,6 +62,10 @@ def tell_batch(found: OneBatch, terminal: Terminal) -> None:
         terminal.item("; ".join(known))
     if found.failed is not None:
         tell_failure(found.failed.summary(), terminal)
+    if found.overlay is not None:
+        tell_overlay(found.overlay, terminal)
+    if found.deviations is not None:
+        tell_deviations(found.deviations.lines(), terminal)
     terminal.heading("Limits")
     for line in found.seen.limit_lines():
         censored = f"{line['name']}_censored"
@@ -69,6 +76,29 @@ def tell_batch(found: OneBatch, terminal: Terminal) -> None:
     terminal.line("")
     terminal.line(f"written to {found.folder}")
     terminal.line("This screens; it does not approve. Figures rest on the kinetics given; have hazards tested and reviewed by qualified people.")
+
+
+def _split(column: str) -> tuple[str, str]:
+    """Return a measured quantity's name and SI unit."""
+    for ending, unit in _MEASURED:
+        if column.endswith(ending):
+            return column.removesuffix(ending), unit
+    return column, "1"
+
+
+def tell_overlay(found: Overlay, terminal: Terminal) -> None:
+    """Print how far a measured batch lies from the model."""
+    terminal.heading("Measured against the model (measured less model)")
+    for line in found.lines():
+        name, unit = _split(line["name"])
+        if not line["values"]:
+            terminal.item(f"{name}: no measured value within the batch")
+            continue
+        mean, rms, largest = (difference(line[key], unit) for key in ("mean", "rms", "largest"))
+        when = duration(line["largest_at_s"])
+        terminal.item(f"{name}: {line['values']} values, mean {mean}, root mean square {rms.lstrip('+')}, largest {largest} after {when}")
+    if found.beyond:
+        terminal.item(f"{found.beyond} moments lie beyond the computed batch and were not compared")
 
 
 def tell_failure(block: dict[str, Any], terminal: Terminal) -> None:

@@ -3,6 +3,7 @@
 
 def needs_compiling() -> bool:
     """Tell whether the next march will first compile the kernel (once per installation)."""
-    from sweep.kernel.cache import is_empty
+    from sweep.kernel import cache
+    from sweep.kernel.code import MARCH
 
-    return is_empty()
+    return cache.read(MARCH) is None

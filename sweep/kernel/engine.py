@@ -56,13 +56,15 @@ def march(
     times: Floats | None = None,
     tolerance: float = 1e-6,
     most_steps: int = MOST_STEPS,
+    levels: Floats | None = None,
 ) -> Marched:
     """March N points through S segments.
 
     blocks: (N, S, block), starts: (N, R), constants: (N, 8), times: (N, K) ascending (s), NaN at the end where fewer are wanted;
-    tolerance: relative error allowed per step. Raises ValueError where a shape does not fit the program.
+    tolerance: relative error allowed per step; levels: (N, watches), what the structure's watches compare with (infinite: not armed; a point
+    ends where one is met). Raises ValueError where a shape does not fit the program.
     """
-    from sweep.kernel.march import march as compiled_march  # loads numba and the compiled kernel, which reading a study does not need
+    from sweep.kernel.code import march_code  # loads LLVM, which reading a study does not need
 
     n, segments = blocks.shape[:2]
     rows = program.structure.rows
@@ -71,17 +73,22 @@ def march(
     times = np.full((n, 0), np.nan) if times is None else times
     if times.shape[0] != n:
         raise ValueError(f"sample times {times.shape} for {n} points")
-    blocks, starts, constants, times = (np.require(a, np.float64, ["C", "A"]) for a in (blocks, starts, constants, times))
+    levels = np.zeros((n, 0)) if levels is None else levels
+    if levels.shape != (n, len(program.structure.watches)):
+        raise ValueError(f"levels {levels.shape} for {n} points and {len(program.structure.watches)} watches")
+    blocks, starts, constants, times, levels = (np.require(a, np.float64, ["C", "A"]) for a in (blocks, starts, constants, times, levels))
     out = np.full((n, at.OUT_STATES + 4 * rows), np.nan)
     samples = np.full((n, times.shape[1], rows), np.nan)
     scratch = Scratch(program)
     whose = np.zeros(LANES, dtype=np.int64)
     if n:
-        compiled_march(
+        handed_out = march_code()(
             program.integers.ctypes.data, program.floats.ctypes.data, blocks.ctypes.data, starts.ctypes.data, constants.ctypes.data,
-            n, segments, times.ctypes.data, times.shape[1], out.ctypes.data, out.shape[1], samples.ctypes.data, scratch.address,
+            n, segments, times.ctypes.data, times.shape[1], levels.ctypes.data, out.ctypes.data, out.shape[1], samples.ctypes.data, scratch.address,
             whose.ctypes.data, float(tolerance), most_steps,
         )  # fmt: skip
+        if handed_out != n:
+            raise RuntimeError(f"the kernel took {handed_out} points of {n}")
     if not scratch.is_sound():
         raise RuntimeError("the kernel wrote outside its scratch memory: its tables do not fit it; nothing of this march can be trusted")
     ends = [out[:, at.OUT_STATES + k * rows : at.OUT_STATES + (k + 1) * rows] for k in range(4)]

@@ -6,6 +6,7 @@ coefficient share a position. Names, units and shapes stand here once; the kerne
 
 LANES = 16  # batches that are marched side by side
 STRIDE = 8 * LANES  # bytes of one vector in memory
+MARCH_TAKES = "qqqqqqqqqqqqqqqdq"  # arguments of the compiled march: q an integer or address, d a double
 
 # header of the integer table --------------------------------------------------------------------------------------------
 N_SPECIES, N_STATES, N_REACTIONS, N_ROWS = 0, 1, 2, 3  # species, chemical states z, reactions, all states
@@ -16,12 +17,13 @@ BLOCK_FEED, BLOCK_BASE, BLOCK_RATE, BLOCK_HEAT, BLOCK_CP, BLOCK_LENGTH = range(8
 AT_REACTIONS, AT_SOURCES, AT_AMOUNTS, AT_COLUMNS, AT_TOUCHED, AT_CHEMICAL, AT_SLOTS, AT_FACTOR, AT_FORWARD, AT_BACKWARD = range(14, 24)
 AT_TARGET, AT_PRODUCT, AT_METHOD = 24, 25, 26  # in the float table: moles of target consumed, of product formed; the tableau
 N_SLOTS = 27
+N_WATCHES, AT_WATCHES = 28, 29  # conditions that are watched for, and their stream
 # rows of scratch memory, each one vector (laid out by `program`)
 (
-    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_BEFORE, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME, W_D,
-    W_CP_Z, W_HEAT_Z, W_REFERENCE_Z, W_BLOCK, W_END,
-) = range(32, 57)  # fmt: skip
-HEADER = 57
+    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_DENSE, W_BEFORE, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME,
+    W_D, W_CP_Z, W_HEAT_Z, W_REFERENCE_Z, W_BLOCK, W_LEVEL, W_END,
+) = range(32, 59)  # fmt: skip
+HEADER = 59
 
 # block of one segment of one point: the fixed part (SI) --------------------------------------------------------------------
 T_END, T_START, VOLUME, VOLUME_RATE = 0, 1, 2, 3  # s, s, m3 at the segment's start, m3/s
@@ -45,6 +47,7 @@ N_CONSTANTS = 8
     OUT_STATUS, OUT_STEPS, OUT_REJECTED, OUT_TIME, OUT_CROSSED, OUT_T_MAX, OUT_T_MAX_TIME, OUT_HEAT_MAX, OUT_DUTY_MAX, OUT_RATE_MAX,
     OUT_RATE_MAX_TIME, OUT_BEST, OUT_BEST_TIME, OUT_REACTED_MAX, OUT_HEAT_SUM, OUT_BOUNDARY_SUM, OUT_END_TIME,
 ) = range(17)  # fmt: skip
+OUT_EVENT = 17  # which condition broke the march off at OUT_TIME; -1: none
 OUT_STATES = 18  # then four states: at the batch's end, at the target, at the most productive time, at the last moment
 
 # rows of W_LANE: a lane's own numbers. The first stand in the order of OUT_*, and `leave` copies them out --------------------
@@ -64,5 +67,7 @@ L_DUTY, L_DUTY_SLOPE, L_DUTY_BEFORE, L_DUTY_SLOPE_BEFORE = range(40, 44)
 L_RATE, L_RATE_SLOPE, L_RATE_BEFORE, L_RATE_SLOPE_BEFORE = range(44, 48)
 L_HEAT_NOW, L_DUTY_NOW, L_RATE_NOW = 48, 49, 50  # as last evaluated: after the stages, near the step's end
 L_THETA = 51  # a fraction of the step, handed to or from scalar code
-L_WRONG_BEFORE, L_GOOD_STEP = 52, 53  # error and length of the last good step
-LANE_ROWS = 54
+L_SHRINK_BEFORE, L_GOOD_STEP = 52, 53  # of the last good step: its error to the power -1/5, its length
+L_EVENT, L_EVENT_THETA, L_EVENT_TIME = 54, 55, 56  # the condition that was met (-1: none), where in the step, and when (s)
+L_PATH = 57  # five: a watched quantity along the step, handed to scalar code
+LANE_ROWS = 62

@@ -12,26 +12,27 @@ from sweep.kernel.layout import LANES
 from sweep.kernel.linear import factorise
 from sweep.kernel.memory import entry, integer, load, row, store
 from sweep.kernel.step import GAMMA_INVERSE, dense_output, error_of_step, stages
-from sweep.kernel.vector import bits, compiled_and_kept, lowest, mask_of, where
+from sweep.kernel.vector import bits, compiled, lowest, mask_of, where
+from sweep.kernel.watch import watch_for
 
 
-@compiled_and_kept
-def march(s, f, blocks, starts, constants, points, segments, times, n_times, out, out_length, samples, w, whose, tolerance, most_steps):  # type: ignore[no-untyped-def]
+@compiled
+def march(s, f, blocks, starts, constants, points, segments, times, n_times, levels, out, out_length, samples, w, whose, tolerance, most_steps):  # type: ignore[no-untyped-def]
     """March every point through its segments; write `out` and `samples`.
 
-    blocks (points, segments, block), starts (points, rows), constants (points, 8), times (points, n_times) ascending, out
-    (points, out_length), samples (points, n_times, rows): addresses of C-contiguous doubles; w: scratch; whose (LANES,):
+    blocks (points, segments, block), starts (points, rows), constants (points, 8), times (points, n_times) ascending, levels
+    (points, watches), out (points, out_length), samples (points, n_times, rows): addresses of C-contiguous doubles; w: scratch; whose (LANES,):
     integers, which point a lane carries. Until a lane has a point it carries the first, without being run.
     """
     lanes, y, new = row(s, w, at.W_LANE), row(s, w, at.W_Y), row(s, w, at.W_NEW)
     n, nz = entry(s, at.N_ROWS), entry(s, at.N_STATES)
     for lane in range(LANES):
-        begin_point(s, f, w, lane, points - 1, blocks, starts, constants, segments, times, n_times, whose)
+        begin_point(s, f, w, lane, points - 1, blocks, starts, constants, segments, times, n_times, levels, whose)
     following, running, free = 0 * points, 0, (1 << LANES) - 1  # a plain 0 would be a type of its own and compile `begin_point` twice
     while True:
         while free != 0 and following < points:
             lane = lowest(free)
-            if begin_point(s, f, w, lane, following, blocks, starts, constants, segments, times, n_times, whose) == 1:
+            if begin_point(s, f, w, lane, following, blocks, starts, constants, segments, times, n_times, levels, whose) == 1:
                 leave(s, w, lane, out, out_length, whose)
             else:
                 free &= free - 1
@@ -47,22 +48,25 @@ def march(s, f, blocks, starts, constants, points, segments, times, n_times, out
         wrong, T_new = error_of_step(s, f, w, tolerance), load(new, nz)
         fine = accepted(lanes, wrong, T_new)
         good, rejected = live & fine, live & ~fine
-        wanted = next_step(lanes, wrong, fine, h)
+        wanted, met = next_step(lanes, wrong, fine, h), 0 * running
         if bits(good) != 0:
             dense_output(s, f, w, good)
             follow(s, f, w, good, time, h, times, n_times, samples, out, out_length, whose)
+            if entry(s, at.N_WATCHES) > 0:
+                met = watch_for(s, f, w, good, time, h)
         landed, short = move_on(lanes, good, rejected, time, h, wanted)
         for i in range(n):
             store(y, i, where(good, load(new, i), load(y, i)))
         hot = good & (T_new > load(lanes, at.L_TOO_HOT))
         worn = load(lanes, at.L_STEPS) + load(lanes, at.L_REJECTED) >= 1.0 * most_steps
-        flags, at_end, too_hot, too_short = bits(live & (hot | landed | short | worn)), bits(landed), bits(hot), bits(short)
+        flags, at_end, too_hot, too_short = bits(live & (hot | landed | short | worn)) | met, bits(landed), bits(hot), bits(short)
         while flags != 0:
             lane = lowest(flags)
             flags &= flags - 1
             one = 1 << lane
             point = integer(whose, lane)
-            if settle(s, w, lane, blocks, point, segments, too_hot & one != 0, at_end & one != 0, too_short & one != 0, most_steps) == 1:
+            broken, burnt, ended, stuck = met & one != 0, too_hot & one != 0, at_end & one != 0, too_short & one != 0
+            if settle(s, w, lane, blocks, point, segments, broken, burnt, ended, stuck, most_steps) == 1:
                 leave(s, w, lane, out, out_length, whose)
                 running &= ~one
                 free |= one

@@ -28,6 +28,21 @@ class Term(NamedTuple):
     factors: tuple[Factor, ...]
 
 
+class Watch(NamedTuple):
+    """A condition that breaks a march off: sign (quantity - level) reaches zero from below, or is not below it to begin with.
+
+    kind 0: the quantity is linear in states, volume (m3) and one species' amount (mol; -1: none); `weights` (z and then T, jacket),
+    `volume`, `species` say how; with `per_volume` the level is a concentration (mol/m3). kind 1: heat release (W), 2: cooling duty (W).
+    """
+
+    kind: int
+    sign: float
+    weights: tuple[float, ...]
+    species: int = -1
+    volume: float = 0.0
+    per_volume: bool = False
+
+
 @dataclass(frozen=True)
 class Structure:
     """What the kernel must know of a study beside numbers.
@@ -45,6 +60,7 @@ class Structure:
     cp_terms: int
     rate_terms: int
     has_duty: bool
+    watches: tuple[Watch, ...] = ()
 
     @property
     def rows(self) -> int:
@@ -154,13 +170,25 @@ def _write_chemical(tables: _Tables, structure: Structure, slots: Integers) -> N
 
 
 def _write_method(tables: _Tables) -> None:
-    """Append per stage its time, its share of df/dt, its row of A and of C (five each); then the two rows of the dense output."""
+    """Append per stage its time, its share of df/dt, its row of A and of C (one fewer than stages each); then the dense output's rows."""
     tables.place(at.AT_METHOD)
     for k in range(method.STAGES):
-        for value in (method.TIMES[k], method.SLOPES[k], *method.A[k, :5], *method.C[k, :5]):
+        for value in (method.TIMES[k], method.SLOPES[k], *method.A[k, :-1], *method.C[k, :-1]):
             tables.add(0, value)
     for value in method.DENSE.ravel():
         tables.add(0, value)
+
+
+def _write_watches(tables: _Tables, structure: Structure) -> None:
+    """Append per watch [kind | sign], [species | whether the level is per volume], [- | weight of the volume], then its weights."""
+    tables.integers[at.N_WATCHES] = len(structure.watches)
+    tables.place(at.AT_WATCHES)
+    for watch in structure.watches:
+        tables.add(watch.kind, watch.sign)
+        tables.add(watch.species, 1.0 if watch.per_volume else 0.0)
+        tables.add(0, watch.volume)
+        for weight in watch.weights:
+            tables.add(0, weight)
 
 
 def _lay_out(head: list[int], structure: Structure) -> None:
@@ -168,10 +196,12 @@ def _lay_out(head: list[int], structure: Structure) -> None:
     species, nz = structure.amounts.shape
     rows, reactions = structure.rows, len(structure.reactions)
     sizes = {
-        at.W_LANE: at.LANE_ROWS, at.W_Y: rows, at.W_NEW: rows, at.W_F: rows, at.W_SLOPE: rows, at.W_K: 6 * rows, at.W_P: rows,
-        at.W_Q: rows, at.W_BEFORE: rows, at.W_BEST: rows, at.W_SLOTS: head[at.N_SLOTS], at.W_N: species, at.W_C: species, at.W_CP: species,
+        at.W_LANE: at.LANE_ROWS, at.W_Y: rows, at.W_NEW: rows, at.W_F: rows, at.W_SLOPE: rows, at.W_K: method.STAGES * rows,
+        at.W_P: rows, at.W_Q: rows, at.W_DENSE: rows, at.W_BEFORE: rows, at.W_BEST: rows,
+        at.W_SLOTS: head[at.N_SLOTS], at.W_N: species, at.W_C: species, at.W_CP: species,
         at.W_R: reactions, at.W_HEAT: reactions, at.W_REFERENCE: reactions, at.W_R_T: reactions, at.W_R_TIME: reactions,
         at.W_D: reactions * nz, at.W_CP_Z: nz, at.W_HEAT_Z: nz, at.W_REFERENCE_Z: nz, at.W_BLOCK: head[at.BLOCK_LENGTH],
+        at.W_LEVEL: len(structure.watches),
     }  # fmt: skip
     start = 0
     for entry, size in sizes.items():
@@ -212,6 +242,7 @@ def compile_tables(structure: Structure) -> Program:
         for weight in weights:
             tables.add(0, weight)
     _write_method(tables)
+    _write_watches(tables, structure)
     tables.integers[at.N_SLOTS] = lu.total
     _write_sizes(tables.integers, structure)
     _lay_out(tables.integers, structure)

@@ -16,7 +16,6 @@ from numba.core.typing.templates import infer_global as typed_for
 from numba.extending import intrinsic as _declared
 from numba.extending import lower_builtin, models, register_model
 
-from sweep.kernel.cache import FOLDER
 from sweep.kernel.layout import LANES
 
 intrinsic: Any = _declared  # its type counts the typing context as an argument that callers would have to give
@@ -29,17 +28,15 @@ _LONGS = ir.VectorType(LONG, LANES)
 _BITS = ir.VectorType(ir.IntType(1), LANES)
 _FLAGS = ("contract", "nsz")  # never nnan or reassoc: they break the guards and the exponent tricks
 
-OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "nsz"}}
+OPTIONS: dict[str, Any] = {
+    "nogil": True, "error_model": "numpy", "fastmath": {"contract", "nsz"},
+    "no_cpython_wrapper": True, "no_cfunc_wrapper": True,  # Python calls the object file alone; wrappers are a fifth of compiling
+}  # fmt: skip
 
 
 def compiled(function: Any) -> Any:
-    """Compile a kernel function with the options every kernel function shares; it is kept only within what calls it."""
+    """Compile a kernel function with the options every kernel function shares."""
     return numba.njit(**OPTIONS)(function)
-
-
-def compiled_and_kept(function: Any) -> Any:
-    """Compile a function that Python calls, and keep it between processes: alone, since machine code of each part costs time too."""
-    return numba.njit(**OPTIONS, cache=FOLDER is not None)(function)
 
 
 class VectorType(types.Type):  # type: ignore[misc]

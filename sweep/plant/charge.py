@@ -11,9 +11,18 @@ from sweep.study.model import Study
 
 
 @dataclass(frozen=True)
+class Pieces:
+    """Feeds in stretches of constant rate, each (N, F, E): from begin to finish (s), rate in shares of the whole feed per second."""
+
+    begin: Floats
+    finish: Floats
+    rate: Floats
+
+
+@dataclass(frozen=True)
 class Brought:
     """N points, I species, F feeds. charged (N, I) mol; fed (N, F, I) mol in all; start, end (N, F) s; temperature (N, F) K;
-    volume (N,) m3 charged; feed_volume (N, F) m3 in all."""
+    volume (N,) m3 charged; feed_volume (N, F) m3 in all; pieces: None where each feed runs evenly from its start to its end."""
 
     charged: Floats
     fed: Floats
@@ -22,16 +31,34 @@ class Brought:
     temperature: Floats
     volume: Floats
     feed_volume: Floats
+    pieces: Pieces | None = None
 
     def share(self, time: Floats) -> Floats:
-        """Return which share of each feed is in at a time: time (N,) or (N, K) s -> (N, F) or (N, F, K)."""
-        start, end = self.start, self.end
-        if time.ndim == 2:
-            start, end, time = start[:, :, None], end[:, :, None], time[:, None, :]
-        else:
-            time = time[:, None]
-        share: Floats = np.clip((time - start) / (end - start), 0.0, 1.0)
-        return share
+        """Return which share of each feed is in at a time (N,) or times (N, K) s: (N, F) or (N, F, K)."""
+        rows = np.arange(time.shape[0])
+        return self.share_of(rows, time) if time.ndim == 2 else self.share_of(rows, time[:, None])[:, :, 0]
+
+    def share_of(self, rows: np.ndarray, time: Floats) -> Floats:
+        """Return which share of each feed is in at times (M, K) s of points `rows` (M,): (M, F, K)."""
+        if self.pieces is None:
+            start, end = self.start[rows][:, :, None], self.end[rows][:, :, None]
+            share: Floats = np.clip((time[:, None, :] - start) / (end - start), 0.0, 1.0)
+            return share
+        share = np.zeros((time.shape[0], self.start.shape[1], time.shape[1]))
+        for e in range(self.pieces.rate.shape[2]):
+            begin, finish, rate = (part[rows, :, e][:, :, None] for part in (self.pieces.begin, self.pieces.finish, self.pieces.rate))
+            share += rate * np.clip(time[:, None, :] - begin, 0.0, finish - begin)
+        return np.minimum(share, 1.0)
+
+    def rate_at(self, time: Floats) -> Floats:
+        """Return the shares of each whole feed that come in per second at a time (N,) s: (N, F)."""
+        time = time[:, None]
+        if self.pieces is None:
+            on = (self.start <= time) & (time < self.end)
+            return np.where(on, 1.0 / (self.end - self.start), 0.0)
+        on = (self.pieces.begin <= time[:, :, None]) & (time[:, :, None] < self.pieces.finish)
+        rate: Floats = np.where(on, self.pieces.rate, 0.0).sum(axis=2)
+        return rate
 
     def total(self) -> Floats:
         """Return all moles brought in by the end, (N, I)."""

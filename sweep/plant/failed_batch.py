@@ -12,10 +12,11 @@ from sweep.base.errors import SweepError
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
 from sweep.plant import adiabatic, rates, states
+from sweep.plant.course import charge_plant
 from sweep.plant.marched import march_moments
 from sweep.plant.onward import march_on
 from sweep.plant.profile import batch_end
-from sweep.plant.recipe import Charged, charge_plant
+from sweep.plant.recipe import Charged
 from sweep.plant.sense import one_point
 from sweep.plant.values import Floats
 from sweep.study.model import Study

@@ -52,8 +52,9 @@ def margins(study: Study, table: pd.DataFrame) -> Floats:
     is null or the point is not done."""
     rows = limits(study)
     result = np.full((len(table), len(rows)), np.nan)
-    done = (table["status"] == "done").to_numpy(dtype=bool)
     for k, row in enumerate(rows):
+        scenario, dot, _ = row.response.partition(".")
+        done = (table[f"{scenario}.status" if dot else "status"] == "done").to_numpy(dtype=bool)
         value = table[row.response].to_numpy(dtype=np.float64, na_value=np.nan)
         result[:, k] = np.where(done, value - row.bound if row.sense == "at_least" else row.bound - value, np.nan)
     return result

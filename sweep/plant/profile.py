@@ -10,8 +10,9 @@ import numpy as np
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
 from sweep.plant import adiabatic, rates, states
+from sweep.plant.course import charge_plant
 from sweep.plant.onward import segment_at
-from sweep.plant.recipe import Charged, charge_plant, has_heat_capacities
+from sweep.plant.recipe import Charged, has_heat_capacities
 from sweep.plant.sense import one_point
 from sweep.plant.target import product_mass, productivity_unit, vessel_volume
 from sweep.plant.values import Floats
@@ -87,7 +88,7 @@ def _lines(study: Study, plant: Charged, times: Floats, state: Floats) -> dict[s
     block = plant.blocks[rows, segment_at(plant, rows, times[0])]
     begins = (block[:, at.JACKET_SET] > 0.5) & (times[0] <= block[:, at.T_START] * (1.0 + 1e-12))  # the sample is of the segment before
     T_jacket = np.where(begins & np.isfinite(T_jacket), block[:, at.JACKET_START], T_jacket)
-    has_jacket = (block[:, at.UA_CONSTANT] > 0.0) | (block[:, at.UA_PER_VOLUME] > 0.0)
+    has_jacket = (block[:, [at.UA_CONSTANT, at.UA_PER_VOLUME, at.JACKET_CAPACITY_INVERSE]] > 0.0).any(axis=1)
     columns = {"time_s": times[0], "temperature_K": T, "jacket_temperature_K": np.where(has_jacket, T_jacket, np.nan), "volume_m3": volume}
     columns.update({f"n_{s.name}_mol": moles[:, i] for i, s in enumerate(study.species)})
     columns["conversion"] = _conversion(study, plant, share, moles) if study.target is not None else np.full(count, np.nan)

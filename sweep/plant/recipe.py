@@ -1,20 +1,20 @@
 """The recipe as segments: between two changes (feeds, events, the batch's end) every quantity stands still. One block each."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from sweep.kernel import layout as at
-from sweep.kernel.program import Program, compile_tables
+from sweep.kernel.program import Program, Watch, compile_tables
 from sweep.plant import chemistry
 from sweep.plant.charge import Brought, brought_in
+from sweep.plant.feeding import feed_as_it_went
+from sweep.plant.happenings import Happenings, NDKind, sets_any, settings_at
 from sweep.plant.values import Floats, Values
 from sweep.study.model import HOTTEST, Study
 
 TOO_HOT = HOTTEST  # K; above it a point is a runaway
 HOLD_TIME = 1.0  # s; how fast the ideal hold of a set-point closes what is left of the gap
-NDKind = np.ndarray
-KINDS = ("adiabatic", "isothermal", "duty", "coolant", "jacket")
 
 
 @dataclass(frozen=True)
@@ -32,6 +32,7 @@ class Charged:
     heats: Floats
     extents: bool
     boundaries: Floats  # (N, S) s: the segments' ends
+    happened: Happenings
 
 
 def final_time(study: Study, values: Values, last_feed: Floats) -> tuple[Floats, Floats]:
@@ -45,32 +46,21 @@ def final_time(study: Study, values: Values, last_feed: Floats) -> tuple[Floats,
     return end, final
 
 
-def _boundaries(study: Study, values: Values, brought: Brought, end: Floats, final: Floats) -> Floats:
+@dataclass(frozen=True)
+class Since:
+    """A batch on its way: the time (N,) s from which its segments are wanted, and the kind of cooling until then (N,)."""
+
+    time: Floats
+    kind: NDKind
+
+
+def _boundaries(brought: Brought, happened: Happenings, end: Floats, final: Floats, since: Since | None) -> Floats:
     """Return the ends of the segments, ascending, (N, S); what does not fall inside the march is pushed to its end."""
-    events = [values.get(f"events.{k}.time", event.time) for k, event in enumerate(study.events)]
-    columns = [*brought.start.T, *brought.end.T, *events, np.where(np.isnan(end), final, end), final]
+    columns = [*brought.start.T, *brought.end.T, *happened.when.T, np.where(np.isnan(end), final, end), final]
     times = np.stack(columns, axis=1)
-    times = np.where((times > 0.0) & (times < final[:, None]), times, final[:, None])
-    return np.sort(times, axis=1)
-
-
-def _at(study: Study, values: Values, time: Floats) -> tuple[Values, NDKind]:
-    """Return the quantities and the kind of cooling that hold from a time (N,) on."""
-    sets: dict[str, float | Floats] = {}
-    kind = np.full(values.count, KINDS.index(study.cooling_kind or "isothermal"))
-    since: dict[str, Floats] = {}  # per point, for a swept time may pass another event's
-    for k, event in enumerate(study.events):
-        when = values.get(f"events.{k}.time", event.time)
-        for path, value in event.sets.items():
-            last = since.setdefault(path, np.full(values.count, -np.inf))
-            on = (when <= time * (1.0 + 1e-12)) & (when >= last)
-            since[path] = np.where(on, when, last)
-            if isinstance(value, str):
-                kind = np.where(on, KINDS.index(value), kind)
-            else:
-                before = np.asarray(sets.get(path, values.get(path, np.nan)))
-                sets[path] = np.where(on, values.get(f"events.{k}.set.{path}", value), before)
-    return values.overlaid(sets), kind
+    first = 0.0 if since is None else since.time[:, None]
+    times = np.sort(np.where((times > first) & (times < final[:, None]), times, final[:, None]), axis=1)
+    return times if since is None else times[:, : int((times < final[:, None]).sum(axis=1).max(initial=0)) + 1]
 
 
 def _cooling(block: Floats, values: Values, kind: NDKind, first: bool, was: NDKind, charge_T: Floats) -> None:
@@ -114,27 +104,33 @@ def _feeds(block: Floats, brought: Brought, cp: Floats, rate: Floats) -> None:
     block[:, at.FEED_HEAT] = heat.sum(axis=(1, 2))
 
 
-def charge_plant(study: Study, values: Values) -> Charged:
-    """Return the arrays with which the kernel marches these points."""
+def plant_of(
+    study: Study, values: Values, happened: Happenings, watches: tuple[Watch, ...] = (), since: Since | None = None
+) -> Charged:
+    """Return the arrays with which the kernel marches these points when their events happen as given; `since`: from a time on only."""
     structure = chemistry.structure_of(study)
-    program = compile_tables(structure)
-    brought = brought_in(study, values)
+    program = compile_tables(replace(structure, watches=watches))
+    brought = feed_as_it_went(study, values, brought_in(study, values), happened)
     end, final = final_time(study, values, brought.last_feed())
-    bounds = _boundaries(study, values, brought, end, final)
+    bounds = _boundaries(brought, happened, end, final, since)
     n, segments = bounds.shape
     blocks = np.zeros((segments, program.block, n)).transpose(2, 0, 1)  # a quantity's values side by side while they are written
     extents = chemistry.carries_extents(chemistry.stoichiometry(study)) or not study.reactions
     charge_T = values.get("recipe.charge.temperature", 298.15)
     cp, heats = _chemistry(study, values, program, blocks)
-    was, begin = np.full(n, -1), np.zeros(n)
+    was, begin = (np.full(n, -1), np.zeros(n)) if since is None else (since.kind, since.time)
+    slowed = sets_any(study, "reactions.", "")
     for k in range(segments):
         block, stop = blocks[:, k, :], bounds[:, k]
-        here, kind = _at(study, values, begin)
+        here, kind = settings_at(study, values, happened, begin)
         block[:, at.T_START], block[:, at.T_END] = begin, stop
         _contents(block, program, brought, cp, begin, stop, extents)
-        _cooling(block, here, kind, k == 0, was, charge_T)
+        _cooling(block, here, kind, k == 0 and since is None, was, charge_T)
         block[:, at.STIRRER] = here.get("vessel.stirrer_power")
         block[:, at.LOSS], block[:, at.AMBIENT] = here.get("vessel.heat_loss.UA"), here.get("vessel.heat_loss.ambient", 293.15)
+        if slowed:
+            terms = chemistry.rate_terms(study, here, heats, structure.rate_terms)
+            block[:, program.integers[at.BLOCK_RATE] : program.integers[at.BLOCK_HEAT]] = _flat(terms)
         was, begin = kind, stop
     starts = np.zeros((n, structure.rows))
     nz = structure.sources.shape[0]
@@ -142,7 +138,7 @@ def charge_plant(study: Study, values: Values) -> Charged:
         starts[:, :nz] = brought.charged
     starts[:, nz] = starts[:, nz + 1] = charge_T
     constants = _constants(study, values, brought, end, final, starts, structure.target)
-    return Charged(study, values, program, brought, np.ascontiguousarray(blocks), starts, constants, cp, heats, extents, bounds)
+    return Charged(study, values, program, brought, np.ascontiguousarray(blocks), starts, constants, cp, heats, extents, bounds, happened)
 
 
 def _chemistry(study: Study, values: Values, program: Program, blocks: Floats) -> tuple[Floats, Floats]:
@@ -163,14 +159,12 @@ def _chemistry(study: Study, values: Values, program: Program, blocks: Floats) -
 def _contents(block: Floats, program: Program, brought: Brought, cp: Floats, begin: Floats, stop: Floats, extents: bool) -> None:
     """Fill in volume, amounts and feeds of one segment, from `begin` to `stop` (N,) s."""
     head = program.integers
-    share, middle = brought.share(begin), 0.5 * (begin + stop)
-    on = (brought.start <= middle[:, None]) & (middle[:, None] < brought.end)
-    rate = np.where(on, 1.0 / (brought.end - brought.start), 0.0)
+    share, rate = brought.share(begin), brought.rate_at(0.5 * (begin + stop))
     block[:, at.VOLUME] = brought.volume + (brought.feed_volume * share).sum(axis=1)
     block[:, at.VOLUME_RATE] = (brought.feed_volume * rate).sum(axis=1)
     fed = np.einsum("nf,nfi->ni", share, brought.fed)
     block[:, head[at.BLOCK_BASE] : head[at.BLOCK_RATE]] = fed + (brought.charged if extents else 0.0)
-    if on.any():
+    if rate.any():
         block[:, head[at.BLOCK_FEED] : head[at.BLOCK_BASE]] = np.einsum("nf,nfi->ni", rate, brought.fed)
         _feeds(block, brought, cp, rate)
 

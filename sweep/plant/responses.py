@@ -6,17 +6,19 @@ from typing import TYPE_CHECKING, Any, Literal, NamedTuple
 
 import numpy as np
 
-from sweep.base.status import DONE, OUTCOMES, UNBALANCED
+from sweep.base.status import CRASHED, DONE, OUTCOMES, RESTLESS, UNBALANCED
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched
 from sweep.plant import states
+from sweep.plant.course import charge_plant
+from sweep.plant.deviation import under, worst_moment
 from sweep.plant.failure import failure_figures
-from sweep.plant.recipe import TOO_HOT, Charged, charge_plant, has_heat_capacities
+from sweep.plant.recipe import TOO_HOT, Charged, has_heat_capacities
 from sweep.plant.samples import Batch, largest_accumulation, march_batches
 from sweep.plant.sense import blank, sensible_values
 from sweep.plant.target import CAUSES, productivity_unit, target_columns, why_not
-from sweep.plant.values import Floats
-from sweep.study.model import Study
+from sweep.plant.values import Floats, Values
+from sweep.study.model import Scenario, Study
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -68,7 +70,11 @@ def responses(study: Study) -> tuple[Response, ...]:
             columns += [Response(f"productivity_{unit}_per_m3_s", f"{unit}/m3/s"), Response(f"at_target_{unit}_per_m3_s", f"{unit}/m3/s")]
             columns += [Response("most_productive_time_s", "s"), Response(f"most_productive_{unit}_per_m3_s", f"{unit}/m3/s")]
             columns.append(Response("most_productive_conversion", "1"))
-    return (*columns, Response("energy_balance_error", "1"))
+    columns.append(Response("energy_balance_error", "1"))
+    for scenario in study.scenarios:
+        moment = [Response("at_s", "s")] if scenario.worst is not None else []
+        columns += [r._replace(column=f"{scenario.name}.{r.column}") for r in (*responses(study.under(scenario)), *moment)]
+    return tuple(columns)
 
 
 def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
@@ -76,12 +82,54 @@ def evaluate(study: Study, points: pd.DataFrame) -> pd.DataFrame:
     import pandas as pd
 
     values = sensible_values(study, points)
+    table, end = table_of(study, values, points.index)
+    tables = [table]
+    for scenario in study.scenarios:
+        tables.append(deviate(study, scenario, values, end, points.index).add_prefix(f"{scenario.name}."))
+    return pd.concat([points, *tables], axis=1)
+
+
+def table_of(study: Study, values: Values, index: pd.Index) -> tuple[pd.DataFrame, Floats]:
+    """Return the responses of the recipe, without scenarios, and when each batch ends (s)."""
+
     plant = charge_plant(study, values)
     tolerance = float(study.values.get("accuracy.relative", 1e-6))
     marched, batch = march_batches(plant, tolerance)
     found = _respond(study, plant, marched, batch, tolerance)
-    table = blank(values, _table(responses(study), found, points.index))
-    return pd.concat([points, table], axis=1)
+    plain = tuple(r for r in responses(study) if "." not in r.column)
+    return blank(values, _table(plain, found, index)), batch.end
+
+
+def deviate(
+    study: Study, scenario: Scenario, values: Values, end: Floats, index: pd.Index, asks_failure: bool | None = None
+) -> pd.DataFrame:
+    """Return the responses of each point under a scenario; end (N,) s: of the batches as written; `asks_failure`: unlike its limits ask."""
+    changed, own = under(study, scenario, values), study.under(scenario, asks_failure)
+    if scenario.worst is None:
+        return table_of(own, changed, index)[0]
+    sought = study.under(scenario)
+
+    def respond(tried: Values) -> Floats:
+        import pandas as pd
+
+        table = table_of(sought, tried, pd.RangeIndex(tried.count))[0]
+        return np.where(table["status"] == "failed", np.nan, table[str(scenario.worst)].to_numpy(dtype=np.float64, na_value=np.nan))
+
+    moment = worst_moment(study, scenario, changed, end, respond)
+    table = table_of(own, changed.overlaid({f"{scenario.path}.at": moment}), index)[0]
+    table["at_s"] = moment
+    return table
+
+
+def crashed(study: Study, points: pd.DataFrame) -> pd.DataFrame:
+    """Return inputs and responses of points whose evaluation ended its process: failed, with the reason, and null for everything else."""
+    import pandas as pd
+
+    outcome = OUTCOMES[CRASHED]
+    null: dict[str, Floats | list[Any]] = {"float": np.full(len(points), np.nan), "bool": [pd.NA] * len(points), "int": [pd.NA] * len(points)}
+    text = {"status": [outcome.status] * len(points), "reason": [outcome.sentence] * len(points)}
+    found = {r.column: text[r.column.rpartition(".")[2]] if r.kind == "text" else null[r.kind] for r in responses(study)}
+    return pd.concat([points, _table(responses(study), found, points.index)], axis=1)
 
 
 def _table(columns: tuple[Response, ...], found: dict[str, Floats | list[str]], index: pd.Index[Any]) -> pd.DataFrame:
@@ -117,6 +165,7 @@ def _respond(study: Study, plant: Charged, marched: Marched, batch: Batch, toler
     with np.errstate(invalid="ignore"):
         bad = (code == DONE) & (np.asarray(found["energy_balance_error"]) > BALANCE)
     code = np.where(bad, UNBALANCED, code)
+    code = np.where(plant.happened.restless, RESTLESS, code)
     found.update(target_columns(study, plant, marched, batch, moles))
     _by_species(study, plant, moles, found)
     _missing(found, reasons, why_not(study, plant, marched), heated, full)

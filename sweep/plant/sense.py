@@ -28,7 +28,7 @@ def sensible_values(study: Study, points: pd.DataFrame) -> Values:
     """Return the quantities of each point, SI; `refused` holds the points that cannot be computed. SweepError as `values_of`."""
     values = values_of(study, points)
     refused = dict(values.refused)
-    for bad, sentence in _impossible(study, values):
+    for bad, sentence in impossible(study, values):
         for n in np.flatnonzero(bad):
             refused.setdefault(int(n), sentence)
     return values.refusing(refused, study.values) if refused else values
@@ -44,7 +44,7 @@ def one_point(study: Study, point: Mapping[str, float] | None) -> Values:
     return values
 
 
-def _impossible(study: Study, values: Values) -> list[tuple[NDArray[np.bool_], str]]:
+def impossible(study: Study, values: Values) -> list[tuple[NDArray[np.bool_], str]]:
     """Return masks (N,) of the points whose recipe cannot be carried out, each with its sentence."""
     brought = brought_in(study, values)
     amounts, fill = brought.charged, brought.volume + brought.feed_volume.sum(axis=1)

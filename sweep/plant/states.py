@@ -115,9 +115,7 @@ def accumulation(study: Study, plant: Charged, rows: np.ndarray, state: Floats, 
 
 def share_at(plant: Charged, rows: np.ndarray, time: Floats) -> Floats:
     """Return which share of each feed is in at times (M, K) of points `rows`: (M, F, K)."""
-    start, end = plant.brought.start[rows][:, :, None], plant.brought.end[rows][:, :, None]
-    share: Floats = np.clip((time[:, None, :] - start) / (end - start), 0.0, 1.0)
-    return share
+    return plant.brought.share_of(rows, time)
 
 
 def amounts_of(

@@ -42,6 +42,14 @@ class Values:
             raise SweepError(f"{path} is not written in the study, and this question needs it")
         return self.get(path)
 
+    def take(self, rows: NDArray[np.int_]) -> Values:
+        """Return the quantities of some of the points."""
+
+        def taken(values: Mapping[str, float | Floats]) -> dict[str, float | Floats]:
+            return {path: value[rows] if isinstance(value, np.ndarray) else value for path, value in values.items()}
+
+        return Values(int(rows.size), taken(self.given), chosen=taken(self.chosen))
+
     def overlaid(self, sets: Mapping[str, float | Floats]) -> Values:
         """Return these quantities with some replaced."""
         return Values(self.count, {**self.given, **sets}, self.refused, self.chosen)

@@ -140,6 +140,113 @@ class ContourMap:
 
 
 @dataclass(frozen=True)
+class Facet:
+    """One response: how probable it is (%, with an interval) that it lies beyond a value, all (N,), and where its limit stands."""
+
+    title: str
+    x_label: str
+    x: Array
+    y: Array
+    low: Array
+    high: Array
+    limit: float
+    said: str
+
+
+@dataclass(frozen=True)
+class Facets:
+    """Exceedance curves, a panel each, on a logarithmic scale of probability from `least` (%) to all."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    facets: tuple[Facet, ...]
+    least: float
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Ranking:
+    """Inputs in order of their effect: bars with intervals, all (N,); marks: a second figure beside each bar, or None."""
+
+    title: str
+    labels: tuple[str, ...]
+    size: Array
+    low: Array
+    high: Array
+    marks: Array | None = None
+
+
+@dataclass(frozen=True)
+class Rankings:
+    """Panels of ranked bars that share their scale."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    x_label: str
+    panels: tuple[Ranking, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class ChanceField:
+    """The probability (%) that all limits hold over the window's plane, (n, m), and the levels of its contours."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    ground: Ground
+    values: Array
+    levels: tuple[float, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class RangeBar:
+    """One variable: places as shares of the range studied; studied, ends: what stands at the ends of that and of the acceptable range."""
+
+    label: str
+    set_point: float
+    normal: tuple[float, float] | None
+    acceptable: tuple[float, float]
+    alone: tuple[float, float] | None
+    studied: tuple[str, str]
+    ends: tuple[str, str]
+
+
+@dataclass(frozen=True)
+class RangeBars:
+    """The ranges of all variables, a bar each."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    rows: tuple[RangeBar, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Front:
+    """Two objectives of the settings that nothing betters in both, (N,) each; the set-point's, and whether it is acceptable."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    labels: tuple[str, str]
+    x: Array
+    y: Array
+    set_point: tuple[float, float] | None
+    acceptable: bool
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
 class Absent:
     """A figure that is not drawn, and why."""
 
@@ -148,4 +255,4 @@ class Absent:
     why: str
 
 
-Prepared = Curves | WindowMap | ContourMap | Absent
+Prepared = Curves | WindowMap | ContourMap | Facets | Rankings | ChanceField | RangeBars | Front | Absent

@@ -1,16 +1,10 @@
-"""Sections [recipe] and [[events]]: what is brought in, when, and what changes on the way."""
+"""Section [recipe]: what is brought in, and when."""
 
 from typing import Any
 
-from sweep.base.units import UnitFault, to_si
-from sweep.study.equipment import _DIMENSIONS as COOLING
-from sweep.study.equipment import KINDS
-from sweep.study.model import LATEST, Charge, Event, Feed
+from sweep.study.model import LATEST, Charge, Feed
 from sweep.study.reader import Reader
 
-_MORE = {"vessel.U": "heat transfer coefficient", "vessel.stirrer_power": "power", "vessel.heat_loss.ambient": "temperature",
-         "vessel.heat_loss.UA": "heat loss"}  # fmt: skip
-_SETTABLE = {**COOLING, **_MORE}
 _SHORTEST = 1e-3  # s; what is shorter cannot be told from none beside the latest start
 
 
@@ -124,69 +118,3 @@ def _feed(reader: Reader, name: str, table: dict[str, Any], names: set[str]) -> 
             reader.at_least(place, 0.0, False, "less than nothing cannot be fed")
         _own_volume(reader, species, f"feed {name} adds its volume")
     return Feed(name, tuple(fed), equivalents)
-
-
-def sorted_events(raw: object) -> list[tuple[int, Any]]:
-    """Return events with their place in the file, by time; what cannot be read as a time stays where it is."""
-
-    def when(entry: tuple[int, Any]) -> float:
-        try:
-            return to_si(str(entry[1].get("time")), "time") if isinstance(entry[1], dict) else 0.0
-        except UnitFault:
-            return 0.0
-
-    return sorted(enumerate(raw if isinstance(raw, list) else []), key=when)
-
-
-def kinds_set(raw: object) -> set[str]:
-    """Return the kinds of cooling that events switch to."""
-    tables = [e["set"] for e in raw if isinstance(e, dict) and isinstance(e.get("set"), dict)] if isinstance(raw, list) else []
-    return {str(t["cooling.kind"]) for t in tables if "cooling.kind" in t}
-
-
-def read_events(reader: Reader, raw: object) -> tuple[Event, ...]:
-    """Return the events by time; each sets a quantity of [cooling] or [vessel], or the kind of cooling."""
-    if not isinstance(raw, list):
-        reader.fault("events", repr(raw), "[[events]]", "events are a list")
-        return ()
-    lines = dict(reader.lines)
-    result = []
-    for place, (origin, entry) in enumerate(sorted_events(raw)):
-        reader.lines[f"events.{place}"] = lines.get(f"events.{origin}", lines.get("events", 1))
-        for key in ("time", "set"):
-            if f"events.{origin}.{key}" in lines:
-                reader.lines[f"events.{place}.{key}"] = lines[f"events.{origin}.{key}"]
-        event = _event(reader, f"events.{place}", entry)
-        if event is not None:
-            result.append(event)
-    return tuple(result)
-
-
-def _event(reader: Reader, path: str, entry: object) -> Event | None:
-    if not isinstance(entry, dict):
-        reader.fault(path, repr(entry), "a table with time and set", "an event changes something at a time")
-        return None
-    reader.only(entry, path, ("time", "set"))
-    if "time" in entry:
-        reader.quantity(f"{path}.time", entry["time"], "time")
-    if "when" not in entry:
-        reader.needed(f"{path}.time", "an event happens at a time")
-    reader.at_least(f"{path}.time", 0.0, False, "a batch begins at zero, and ends", LATEST)
-    sets: dict[str, float | str] = {}
-    table = reader.table(entry, "set", f"{path}.set")
-    reader.only(table, f"{path}.set", ("cooling.kind", *_SETTABLE))
-    if not table:
-        reader.fault(f"{path}.set", "nothing", '{ "cooling.set_point" = "60 degC" }', "an event sets something")
-    for name, value in table.items():
-        if name == "cooling.kind":
-            sets[name] = reader.choice(table, f"{path}.set", name, KINDS, "isothermal")
-        elif name in _SETTABLE:
-            number = reader.quantity(f"{path}.set.{name}", value, _SETTABLE[name])
-            if name not in reader.values:
-                if not reader.broken(name):
-                    reader.fault(f"{path}.set.{name}", name, f"{name} written in its section too", "before the event it has no value")
-            elif number is not None:
-                reader.within(f"{path}.set.{name}", name, number)
-                sets[name] = number
-    time = reader.values.get(f"{path}.time")
-    return None if time is None else Event(time, sets)

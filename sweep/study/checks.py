@@ -5,7 +5,7 @@ from collections.abc import Mapping
 from itertools import product
 from typing import NamedTuple
 
-from sweep.study.model import FAILURE, Charge, Feed, Limit, Objective, Reaction, Species, Target, Variable
+from sweep.study.model import FAILURE, Charge, Event, Feed, Limit, Objective, Reaction, Species, Target, Variable
 from sweep.study.reader import Reader
 
 _MOST_CORNERS = 5  # variables; beyond, only the set-point is looked at
@@ -68,7 +68,8 @@ def check_limits(
     """Fault limits and objectives without what they need."""
     decomposes = any(r.purpose == "decomposition" for r in reactions)
     places = {one.name: f"optimum.{one.sense}" for one in objectives if one.kind == "response"}
-    for name, path in {**places, **{limit.name: f"limits.{limit.name}" for limit in limits}}.items():
+    for whole, path in {**places, **{limit.name: f"limits.{limit.name}" for limit in limits}}.items():
+        name = whole.rpartition(".")[2]
         tested = "failure.td24" in reader.values and name in ("td24", "criticality_class")
         unread = any(f.key.startswith("reactions.") and f.key.endswith((".equation", ".orders")) for f in reader.faults)
         if name in ("tmr_ad", "td24", "criticality_class") and not decomposes and not tested and not unread:
@@ -82,14 +83,28 @@ def check_limits(
         if name in (*FAILURE, "accumulation", "cooling_duty", "heat_release"):
             for reaction in reactions:
                 reader.needed(f"reactions.{reaction.name}.heat.value", f"{name} needs the heats")
-    bound, horizon = reader.values.get("limits.tmr_ad.at_least"), reader.values["failure.horizon"]
-    if bound is not None and bound > horizon:
-        reader.fault(
-            "limits.tmr_ad.at_least",
-            f"{bound:g} s",
-            f"at most failure.horizon, {horizon:g} s",
-            "what lies beyond the horizon is not seen",
-        )
+    horizon = reader.values["failure.horizon"]
+    for name in {limit.name for limit in limits if limit.name.rpartition(".")[2] == "tmr_ad"}:
+        bound = reader.values.get(f"limits.{name}.at_least")
+        if bound is not None and bound > horizon:
+            expected = f"at most failure.horizon, {horizon:g} s"
+            reader.fault(f"limits.{name}.at_least", f"{bound:g} s", expected, "what lies beyond the horizon is not seen")
+
+
+def check_conditions(reader: Reader, events: tuple[Event, ...], reactions: tuple[Reaction, ...], target: Target | None, kinds: set[str]) -> None:
+    """Fault conditions on what the batch does not have."""
+    for event in events:
+        when = event.when
+        if when is None:
+            continue
+        name = when.path.rpartition(".")[0]
+        if when.quantity == "conversion" and target is None:
+            reader.fault(name, "conversion", "[target]", "it counts on the target species")
+        if when.quantity == "jacket_temperature" and not kinds & {"jacket", "coolant"}:
+            reader.fault(name, "jacket_temperature", 'cooling.kind "jacket" or "coolant"', "without a jacket it has no temperature")
+        if when.quantity in ("heat_release", "cooling_duty"):
+            for reaction in reactions:
+                reader.needed(f"reactions.{reaction.name}.heat.value", f"the condition on {when.quantity} needs the heats")
 
 
 class Brought(NamedTuple):

@@ -74,9 +74,9 @@ def warn_recipe(reader: Reader, events: tuple[Event, ...], feeds: tuple[Feed, ..
     if written is not None and written < last:
         reader.warn("recipe.batch_time", f"{written:g} s", f"at least {last:g} s", "a batch never ends before its last feed does; it ends then")
     end = max(values.get("batch_time.longest", 0.0), last) if to_target else max(written or 0.0, last)
-    for place, event in enumerate(events):
-        if end and event.time >= end:
-            reader.warn(f"events.{place}.time", f"{event.time:g} s", f"a time before {end:g} s", "the batch is over by then")
+    for event in events:
+        if end and event.time is not None and event.time >= end:
+            reader.warn(f"{event.path}.time", f"{event.time:g} s", f"a time before {end:g} s", "the batch is over by then")
 
 
 def warn_heat_capacities(reader: Reader, species: tuple[Species, ...]) -> None:

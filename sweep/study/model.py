@@ -60,11 +60,65 @@ class Feed:
 
 
 @dataclass(frozen=True)
-class Event:
-    """At a time (s) quantities, or the kind of cooling, change."""
+class Change:
+    """A value given by what it was: how "times" or "plus"; the number stands among the study's values."""
 
-    time: float
-    sets: Mapping[str, float | str]
+    how: str
+
+
+@dataclass(frozen=True)
+class Condition:
+    """A quantity of the batch, above or below a level; path: where the level stands among the study's values.
+
+    quantity: "temperature", "jacket_temperature", "volume", "conversion", "heat_release", "cooling_duty", or "n" (moles) and "c"
+    (concentration) of a species.
+    """
+
+    quantity: str
+    species: str | None
+    sense: str
+    path: str
+
+
+@dataclass(frozen=True)
+class Event:
+    """At a time (s), or when a condition is met, quantities or the kind of cooling change.
+
+    sets: path -> value (SI), kind of cooling, change, or "restored" (a deviation's: what the recipe has there); path: where the event's own
+    quantities stand; once: false where it is armed again; deviation: it overrides the recipe's own events; since: where the moment stands
+    from which its time is counted ("": the batch's start); name, after: an event with `after` waits for the event of that name to act: its
+    condition is armed then, each time; without a condition of its own it acts then.
+    """
+
+    time: float | None
+    sets: Mapping[str, float | str | Change]
+    path: str = ""
+    when: Condition | None = None
+    once: bool = True
+    deviation: bool = False
+    since: str = ""
+    name: str = ""
+    after: str = ""
+
+
+@dataclass(frozen=True)
+class Scenario:
+    """A deviation, evaluated beside the recipe. events: on top of the recipe's own; sets: path -> value (SI) or change from the start, of what no
+    event can set; feed, edge: the feed at whose "start" or "end" its times begin; worst: the response whose worst moment they begin at;
+    asks_failure: a limit names one of its failure figures."""
+
+    name: str
+    events: tuple[Event, ...]
+    sets: Mapping[str, float | Change]
+    feed: str | None = None
+    edge: str = "start"
+    worst: str | None = None
+    asks_failure: bool = False
+
+    @property
+    def path(self) -> str:
+        """Where its quantities stand among the study's values."""
+        return f"scenarios.{self.name}"
 
 
 @dataclass(frozen=True)
@@ -279,7 +333,7 @@ def unset(path: str) -> str:
 
 def differs(path: str) -> bool:
     """Tell whether a quantity may differ from point to point: what is of the batch, not of the question or of the method."""
-    sections = ("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.")
+    sections = ("species.", "reactions.", "vessel.", "cooling.", "recipe.", "events.", "scenarios.")
     settings = ("batch_time.longest", "failure.horizon", "failure.mtt", "failure.td24")
     held = path.startswith("variables.") and path.endswith(".error")
     return (path.startswith(sections) or path in settings or held) and not path.endswith(".molar_mass")
@@ -316,6 +370,7 @@ class Study:
     bounds: Mapping[str, Bound]
     asks_failure: bool = False
     warnings: tuple[Fault, ...] = ()
+    scenarios: tuple[Scenario, ...] = ()
     uncertain: tuple[Uncertain, ...] = ()
     correlations: tuple[Correlation, ...] = ()
     risk: RiskSettings | None = None
@@ -325,11 +380,18 @@ class Study:
     optimum: OptimumSettings | None = None
 
     def without_failure(self) -> "Study":
-        """Return this study without the figures of a cooling failure and the limits on them, for what does not need them."""
+        """Return this study without scenarios, the figures of a cooling failure and the limits on them, for what does not need them."""
         from dataclasses import replace
 
-        kept = tuple(limit for limit in self.limits if limit.name not in FAILURE)
-        return replace(self, failure=None, asks_failure=False, limits=kept)
+        kept = tuple(limit for limit in self.limits if limit.name not in FAILURE and "." not in limit.name)
+        return replace(self, failure=None, asks_failure=False, limits=kept, scenarios=())
+
+    def under(self, scenario: Scenario, asks_failure: bool | None = None) -> "Study":
+        """Return this study with a scenario's events beside its own, and no scenarios; `asks_failure`: unlike its limits ask."""
+        from dataclasses import replace
+
+        asks = scenario.asks_failure if asks_failure is None else asks_failure
+        return replace(self, events=(*self.events, *scenario.events), limits=(), scenarios=(), asks_failure=asks)
 
     def quantity(self, name: str, text: str) -> float:
         """Return a quantity of a variable, an uncertain input or a path in SI; SweepError where the text is none of its dimension."""

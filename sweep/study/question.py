@@ -1,12 +1,26 @@
 """What is asked: sections [target] [limits] [variables] [accuracy] [plan] [window] [batch_time] [failure]."""
 
 import difflib
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
 from sweep.base.units import UnitFault, kind_of, unit_of
 from sweep.study.amount import converted
-from sweep.study.model import LATEST, BatchTimeSettings, FailureSettings, Limit, Plan, Species, Target, Variable, WindowSettings, differs
+from sweep.study.model import (
+    FAILURE,
+    LATEST,
+    BatchTimeSettings,
+    FailureSettings,
+    Limit,
+    Plan,
+    Scenario,
+    Species,
+    Target,
+    Variable,
+    WindowSettings,
+    differs,
+)  # fmt: skip
 from sweep.study.reader import Reader
 from sweep.study.uncertain import difference_of, read_tolerance
 
@@ -71,19 +85,53 @@ def response_of(reader: Reader, name: str, counted: set[str], target: Target | N
     return None
 
 
-def read_limits(reader: Reader, table: dict[str, Any], species: tuple[Species, ...], target: Target | None) -> tuple[Limit, ...]:
+def columns_of(reader: Reader, species: tuple[Species, ...], target: Target | None) -> dict[str, str]:
+    """Return the column of every response that can be named."""
+    counted = {s.name for s in species if s.role is None}
+    names = ("productivity", *PLAIN, *(p + s for p in BY_SPECIES for s in sorted(counted)))
+    return {name: found[0] for name in names if (found := response_of(reader, name, counted, target)) is not None}
+
+
+def asked_of(scenarios: tuple[Scenario, ...], limits: tuple[Limit, ...]) -> tuple[Scenario, ...]:
+    """Return the scenarios, each knowing whether a limit, or its worst moment, asks for a failure figure of it."""
+    asked = {limit.name.split(".")[0] for limit in limits if limit.name.split(".")[-1] in FAILURE and "." in limit.name}
+    columns = {name + PLAIN[name][0] for name in FAILURE}
+    return tuple(replace(s, asks_failure=s.name in asked or s.worst in columns) for s in scenarios)
+
+
+def _flat(table: dict[str, Any], scenarios: set[str]) -> dict[str, Any]:
+    """Return limits by name; those on a scenario stand as NAME.response, be it written in quotes or as a table of its own."""
+    found: dict[str, Any] = {}
+    for name, bounds in table.items():
+        if name in scenarios and isinstance(bounds, dict):
+            found.update({f"{name}.{response}": inner for response, inner in bounds.items()})
+        else:
+            found[name] = bounds
+    return found
+
+
+def read_limits(
+    reader: Reader, table: dict[str, Any], species: tuple[Species, ...], target: Target | None, scenarios: set[str]
+) -> tuple[Limit, ...]:
     """Return the limits, one record a bound."""
     result = []
     counted = {s.name for s in species if s.role is None}
-    for name, bounds in table.items():
+    for name, bounds in _flat(table, scenarios).items():
         path = f"limits.{name}"
-        found = response_of(reader, name, counted, target)
+        scenario, dot, response = name.rpartition(".")
+        if dot and scenario not in scenarios:
+            near = difflib.get_close_matches(scenario, sorted(scenarios), 1)
+            reader.fault(path, scenario, near[0] if near else "a scenario of this study", f"[scenarios.{scenario}] is not written")
+            continue
+        found = response_of(reader, response, counted, target)
+        if found is not None and dot:
+            found = f"{scenario}.{found[0]}", found[1]
         if found is None:
             if name == "max_pressure":
                 reader.fault(path, name, "a study without it", "not available yet")
                 continue
             known = [*PLAIN, *(p + s for p in BY_SPECIES for s in sorted(counted) if response_of(reader, p + s, counted, target))]
-            near = difflib.get_close_matches(name, known, 1)
+            near = difflib.get_close_matches(response, known, 1)
             reader.fault(path, name, near[0] if near else "one of " + ", ".join(PLAIN), "no response has this name")
             continue
         if not isinstance(bounds, dict):

@@ -7,14 +7,14 @@ from typing import Any
 
 from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
-from sweep.study import batch, checks, decisions, doubts, equipment, question, substances, uncertain
+from sweep.study import batch, checks, decisions, doubts, equipment, events, question, scenarios, substances, uncertain
 from sweep.study.lines import lines_of
 from sweep.study.model import FAILURE, Study, Uncertain
 from sweep.study.reader import Reader
 
 _SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
-             "accuracy", "plan", "window", "batch_time", "failure", "uncertain", "correlations", "risk", "sensitivity", "ranges",
-             "optimum")  # fmt: skip
+             "accuracy", "plan", "window", "batch_time", "failure", "scenarios", "deviations", "uncertain", "correlations", "risk",
+             "sensitivity", "ranges", "optimum")  # fmt: skip
 _LARGEST_FILE = 4_000_000  # characters
 
 
@@ -22,7 +22,8 @@ def read_study(path: str | Path) -> Study:
     """Return the study in a file; StudyError with every fault in it, or where it cannot be read."""
     file = Path(path)
     try:
-        text = file.read_bytes().decode("utf-8")
+        with open(file, "rb") as stream:
+            text = stream.read(4 * _LARGEST_FILE + 1).decode("utf-8")  # some files never end
     except UnicodeDecodeError as error:
         raise _single(str(path), 1, "file", f"a byte {error.object[error.start]:#x}", "text in UTF-8", "a study is a text file") from None
     except (OSError, ValueError) as error:
@@ -74,10 +75,13 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     reactions = substances.read_reactions(reader, part["reactions"], species)
     equipment.read_vessel(reader, part["vessel"])
     heats = any(f"reactions.{r.name}.heat.value" in reader.values for r in reactions)
-    kinds = batch.kinds_set(document.get("events", []))
+    first = str(part["cooling"].get("kind", "isothermal"))
+    deviations = scenarios.with_usual(reader, document, species, reactions, first, document)
+    kinds = events.kinds_set(events.set_tables(document.get("events", []))) | scenarios.kinds_of(deviations)
     kind = equipment.read_cooling(reader, given("cooling"), kinds, heats)
     charge, feeds, to_target = batch.read_recipe(reader, part["recipe"], names)
-    events = batch.read_events(reader, document.get("events", []))
+    can = events.settable(reader, reactions, feeds)
+    happens = events.EventReader(reader, names, can).read(document.get("events", []), "events")
     brought = {*charge.amounts, *charge.concentrations, charge.balance, *(s for f in feeds for s in f.species)}
     target = question.read_target(reader, given("target"), names, {s for s in brought if s})
     if to_target and target is None:
@@ -85,7 +89,10 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     _accuracy(reader, part["accuracy"])
     failure = question.read_failure(reader, given("failure"))
     batch_time = question.read_batch_time(reader, given("batch_time"))
-    limits = question.read_limits(reader, part["limits"], species, target)
+    named = scenarios.Responses(question.columns_of(reader, species, target))
+    deviating = scenarios.ScenarioReader(reader, names, can, feeds).read(deviations, named)
+    limits = question.read_limits(reader, part["limits"], species, target, {s.name for s in deviating})
+    deviating = question.asked_of(deviating, limits)
     variables = question.read_variables(reader, part["variables"])
     reader.swept = {path for v in variables for path in v.sets}
     plan = question.read_plan(reader, given("plan"), variables, folder)
@@ -100,26 +107,29 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     optimum = decisions.read_optimum(reader, given("optimum"), variables, species, target, limits, drawn)
     asked = (*(limit.name for limit in limits), *(one.name for one in (optimum.objectives if optimum else ())))
     asks_failure = failure is not None or any(name in FAILURE for name in asked)
-    isothermal = {kind, *kinds} == {"isothermal"} and not asks_failure
-    why = "cooling failure needs an energy balance" if asks_failure else f"a cooling of kind {kind} needs an energy balance"
+    asks_any = asks_failure or any(s.asks_failure for s in deviating)
+    isothermal = {kind, *kinds} == {"isothermal"} and not asks_any
+    why = "cooling failure needs an energy balance" if asks_any else f"a cooling of kind {kind} needs an energy balance"
     checks.check_thermal(reader, species, reactions, isothermal, why)
     checks.check_equilibria(reader, reactions)
     checks.check_limits(reader, limits, reactions, target, optimum.objectives if optimum else ())
+    for several in (happens, *(s.events for s in deviating)):
+        checks.check_conditions(reader, several, reactions, target, {kind, *kinds})
     checks.check_heat_capacities(reader, species, variables)
     checks.check_fill(reader, charge, feeds, variables, target)
     if reader.faults:
         return None
     doubts.warn_ranges(reader, reactions, variables)
     doubts.warn_jacket(reader, kind, reactions, charge, feeds)
-    doubts.warn_recipe(reader, events, feeds, to_target)
+    doubts.warn_recipe(reader, happens, feeds, to_target)
     doubts.warn_heat_capacities(reader, species)
     doubts.warn_rates(reader, reactions, not isothermal or "recipe.charge.temperature" in reader.swept)
     return Study(
         name=name, file=reader.file, folder=folder, text=text, digest=_digest(document, inputs), title=title, seed=seed, species=species,
-        reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=events, batch_to_target=to_target,
+        reactions=reactions, cooling_kind=kind, charge=charge, feeds=feeds, events=happens, batch_to_target=to_target,
         target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
         values=reader.values, units=reader.units, dimensions=reader.dimensions, bounds=reader.bounds, asks_failure=asks_failure,
-        warnings=tuple(reader.warnings), uncertain=inputs, correlations=correlations, risk=risk, sensitivity=sensitivity,
+        warnings=tuple(reader.warnings), scenarios=deviating, uncertain=inputs, correlations=correlations, risk=risk, sensitivity=sensitivity,
         map=chance_map, ranges=ranges, optimum=optimum,
     )  # fmt: skip
 

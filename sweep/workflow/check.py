@@ -5,8 +5,9 @@ from collections.abc import Iterator
 from sweep.base.units import show, si_unit
 from sweep.plan import planned
 from sweep.plan.draws import log_sd
+from sweep.plant.told_events import cause_of, effect_of, set_of
 from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
-from sweep.study.model import Correlation, Event, Limit, Study, Tolerance, Uncertain, Variable
+from sweep.study.model import Correlation, Limit, Study, Tolerance, Uncertain, Variable
 
 _SENSE = {"at_most": "at most", "at_least": "at least"}
 
@@ -19,7 +20,8 @@ def told(study: Study) -> list[tuple[str, list[str]]]:
         ("Charge and feeds", [*_charge(study, seen), *(_feed(study, f) for f in seen.feeds)]),
         ("Batch", list(_batch(study))),
         ("Cooling", list(_cooling(study, seen))),
-        ("Events", [_event(study, k, event) for k, event in enumerate(study.events)]),
+        ("Events", [f"{cause_of(study, event)}: {effect_of(study, event)}" for event in study.events]),
+        ("Scenarios", [f"{scenario.name}: {'; '.join(set_of(study, scenario))}" for scenario in study.scenarios]),
         ("Target", list(_target(study))),
         ("Limits", [_limit(study, limit) for limit in study.limits]),
         ("Variables", [_variable(study, v) for v in study.variables]),
@@ -85,11 +87,6 @@ def _batch(study: Study) -> Iterator[str]:
 def _written(study: Study, path: str) -> str:
     """Return a quantity in the unit it was written in; empty where it is not in the study."""
     return show(study.values[path], study.units[path]) if path in study.values else ""
-
-
-def _event(study: Study, k: int, event: Event) -> str:
-    sets = [f"{path} = {value if isinstance(value, str) else _written(study, f'events.{k}.set.{path}')}" for path, value in event.sets.items()]
-    return f"at {_written(study, f'events.{k}.time')}: {', '.join(sets)}"
 
 
 def _target(study: Study) -> Iterator[str]:

@@ -12,6 +12,7 @@ import pandas as pd
 from sweep.analysis import statements
 from sweep.analysis.batch_time import best_batch_time
 from sweep.analysis.chance_map import assess_map
+from sweep.analysis.deviations import look_at_deviations
 from sweep.analysis.failure import fail_cooling
 from sweep.analysis.optimum import assess_optimum
 from sweep.analysis.overview import overlook
@@ -67,6 +68,8 @@ def run(
     folder, plan = folder_of(study, out), planned(study)
     say = tell or (lambda _: None)
     with Store(folder, study, plan, fresh) as store:
+        if store.broke_off:
+            say("an earlier run here ended without a word: points are evaluated in processes of their own, so that a crash costs one of them")
         sweep_points(store, workers, watcher)
         steps = _Steps(store, study, workers, say)
         summary = steps.summary()
@@ -89,7 +92,7 @@ class _Steps:
         self._seen: SetPoint | None = None
 
     def _evaluate(self, points: pd.DataFrame) -> pd.DataFrame:
-        return simulate(self.study, points, self.workers)
+        return simulate(self.study, points, self.workers, self.store.broke_off)
 
     def _kept(self, name: str, title: str, find: Callable[[], Found]) -> dict[str, Any]:
         """Return an analysis' block, from the manifest where its tables are there whole."""
@@ -121,6 +124,7 @@ class _Steps:
         blocks["batch_time"] = self._batch_time()
         blocks["window"] = self._window()
         blocks["failure"] = self._failure()
+        blocks["deviations"] = self._deviations()
         blocks["risk"] = self._risk()
         blocks["sensitivity"] = self._sensitivity()
         blocks["probability_map"] = self._map()
@@ -140,7 +144,7 @@ class _Steps:
         if self.study.batch_time is None:
             return {"not_assessed": "the study has no [batch_time]"}
         quick = self.study.without_failure()
-        evaluate = partial(simulate, quick, workers=self.workers)
+        evaluate = partial(simulate, quick, workers=self.workers, apart=self.store.broke_off)
         return self._kept("batch_time", "batch time", lambda: best_batch_time(quick, evaluate, self._set_point().row))
 
     def _window(self) -> dict[str, Any]:
@@ -154,6 +158,11 @@ class _Steps:
         if not self.study.asks_failure:
             return {"not_assessed": "the study has no [failure], and no limit asks for one of its figures"}
         return self._kept("failure", "cooling failure", lambda: fail_cooling(self.study, self._set_point().row))
+
+    def _deviations(self) -> dict[str, Any]:
+        if not self.study.scenarios:
+            return {"not_assessed": "the study has no [scenarios] and no [deviations]"}
+        return self._kept("deviations", "deviations", lambda: look_at_deviations(self.study, self._set_point().point))
 
     def _risk(self) -> dict[str, Any]:
         if self.study.risk is None:

@@ -19,7 +19,8 @@ from scipy.integrate import ODEintWarning
 from sweep.kernel import layout as at
 from sweep.kernel.engine import march
 from sweep.plant import evaluate
-from sweep.plant.recipe import Charged, charge_plant
+from sweep.plant.course import charge_plant
+from sweep.plant.recipe import Charged
 from sweep.plant.values import values_of
 from sweep.study import read_study
 from tests.benchmarks import peers

@@ -2,6 +2,7 @@
 
 import time
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -10,6 +11,7 @@ import pytest
 
 from sweep.plan import Planned, points
 from sweep.plant import evaluate
+from sweep.runner import simulate
 from sweep.runner.parallel import in_order
 from sweep.study import read_study, read_text
 from sweep.study.model import Study
@@ -70,3 +72,33 @@ def test_two_workers_are_nearly_twice_one(capsys):
     with capsys.disabled():
         print(f"\ntwo warm workers: {ratio:.2f} times one, {len(rows):,} points")
     assert 1.7 <= ratio
+
+
+SCENARIOS = "\n[deviations]\nusual = true\n" + "".join(
+    f'[scenarios.lost_{k}]\nevents = [{{ time = "{30 * k + 20} min", set = {{ "cooling.flow" = "0 m3/h" }} }}]\n' for k in range(5)
+)
+
+
+def _with_scenarios() -> tuple[Study, Study]:
+    """Return the demo without failure figures, and the same with the usual fifteen scenarios and five more."""
+    plain = read_study(DEMO).without_failure()
+    many = read_text(read_study(DEMO).text + SCENARIOS)
+    return plain, replace(many.without_failure(), scenarios=many.scenarios)
+
+
+def test_twenty_scenarios_cost_no_order_of_magnitude_more_than_they_may():
+    plain, many = _with_scenarios()
+    assert 20 == len(many.scenarios)
+    table = _drawn(plain, 128)
+    assert 100.0 > _ratio(lambda: evaluate(many, table), lambda: evaluate(plain, table), 1)
+
+
+@pytest.mark.benchmark
+def test_twenty_scenarios_on_ten_thousand_points_cost_at_most_thirty_plain_sweeps(capsys):
+    plain, many = _with_scenarios()
+    table = _drawn(plain, 2025)
+    table = pd.concat([table] * 5, ignore_index=True).iloc[:10_000]
+    ratio = _ratio(lambda: simulate(many, table, workers=1), lambda: simulate(plain, table, workers=1), 3)
+    with capsys.disabled():
+        print(f"\ntwenty scenarios on 10,000 points: {ratio:.1f} plain sweeps")
+    assert 30.0 > ratio

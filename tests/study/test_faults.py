@@ -383,8 +383,6 @@ def test_fault(case):
 
 
 LATER = {
-    "scenarios": "[scenarios.coolant_lost]\nevents = []",
-    "deviations": "[deviations]",
     "fit": "[fit]",
 }
 
@@ -401,7 +399,6 @@ def test_sections_of_later_work(section):
     [
         ('turnaround = "3.5 h"', 'turnaround = "3.5 h"\nphases = []', "recipe.phases"),
         ('purpose  = "decomposition"', 'purpose  = "decomposition"\nrate = "k * amide"', "reactions.decomposition.rate"),
-        ('time = "4 h"', 'when = "conversion > 0.9"', "events.0.when"),
         ("[limits]", '[limits]\nmax_pressure = { at_most = "2 bar" }', "limits.max_pressure"),
     ],
 )
