@@ -136,7 +136,7 @@ class Rodas:
         self.steps = self.rejected = 0
 
     def step(self, t: float, y: np.ndarray, h: float) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-        """Return the new state, the error estimate, and the stages (6, n)."""
+        """Return the new state, the error estimate, and the stages (8, n)."""
         matrix = np.eye(y.size) / (h * method.GAMMA) - self.df(t, y)
         by_time = self.dfdt(t, y) if self.dfdt is not None else np.zeros_like(y)
         k = np.zeros((method.STAGES, y.size))
@@ -148,8 +148,8 @@ class Rodas:
 
     def dense(self, y: np.ndarray, new: np.ndarray, k: np.ndarray, theta: float) -> np.ndarray:
         """Return the state at a fraction of a step."""
-        p, q = method.DENSE @ k[:5]
-        return (1 - theta) * y + theta * (new + (1 - theta) * (p + theta * q))
+        p, q, r = method.DENSE @ k
+        return (1 - theta) * y + theta * (new + (1 - theta) * (p + theta * (q + theta * r)))
 
     def fixed(self, y: np.ndarray, end: float, steps: int) -> np.ndarray:
         """March from 0 to `end` in equal steps."""
@@ -170,6 +170,6 @@ class Rodas:
                 self.steps += 1
             else:
                 self.rejected += 1
-            h *= min(6.0, max(0.2, 0.9 * max(size, 1e-10) ** -0.25))
+            h *= min(6.0, max(0.2, 0.9 * max(size, 1e-10) ** -0.2))
             assert self.steps + self.rejected < 200_000
         return y

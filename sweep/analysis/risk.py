@@ -1,7 +1,8 @@
 """Risk at the set-point: the probability that each limit holds, and what decides it, from draws of all that is uncertain."""
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -42,19 +43,17 @@ class Risk:
     def _driven(self, holding: NDArray[np.bool_]) -> tuple[Driver, ...]:
         return drivers(self.drawn[list(inputs_of(self.study))], holding)
 
-    def _lines(self) -> list[tuple[dict[str, Any], NDArray[np.bool_]]]:
-        """Return each limit with which draws hold it, (N,)."""
+    @cached_property
+    def _lines(self) -> list[tuple[dict[str, Any], NDArray[np.bool_], tuple[Driver, ...]]]:
+        """Each limit, which draws hold it (N,), and what drives its failures."""
+        holding = self.margin >= 0.0
         return [
-            ({"label": row.label, "name": row.name, "sense": row.sense, "bound": row.bound, "unit": row.unit}, self.margin[:, k] >= 0.0)
-            for k, row in enumerate(self.rows)
+            ({"label": row.label, "name": row.name, "sense": row.sense, "bound": row.bound, "unit": row.unit}, hold, self._driven(hold))
+            for row, hold in zip(self.rows, holding.T, strict=True)
         ]
 
     def _limits(self) -> list[dict[str, Any]]:
-        return [{**line, **self._share(hold).summary(), "drivers": self._strongest(hold)} for line, hold in self._lines()]
-
-    def _strongest(self, holding: NDArray[np.bool_]) -> list[dict[str, Any]]:
-        """Return the inputs that drive a limit's failures beyond chance, the strongest first."""
-        return [{"input": one.input, "distance": one.distance, "shift": one.shift} for one in self._driven(holding) if one.distance > one.noise]
+        return [{**line, **self._share(hold).summary(), "drivers": _strongest(driven)} for line, hold, driven in self._lines]
 
     def batch_time(self) -> dict[str, Any] | None:
         """Return the time within which 95 % of batches reach the target: the draws' own quantile, and the order statistic that bounds it."""
@@ -94,19 +93,18 @@ class Risk:
         return {
             "draws": len(self.drawn), "sampling": settings.sampling, "confidence": settings.confidence, "interval": settings.interval, **statuses,
             "inputs": list(inputs_of(self.study)), "limits": self._limits(),
-            "all_hold": None if together is None else {**self._share(together).summary(), "drivers": self._strongest(together)},
+            "all_hold": None if together is None else {**self._share(together).summary(), "drivers": _strongest(self._driven(together))},
             "batch_time": self.batch_time(), "rare": [{"label": label, **one.summary()} for label, one in self.rare.items()],
             "definition": DEFINITION, "cautions": self._cautions(),
         }  # fmt: skip
 
     def tables(self) -> dict[str, pd.DataFrame]:
         """Return probabilities, percentiles, exceedance curves and drivers."""
-        lines = self._lines()
-        shares = [{"label": line["label"], **self._share(hold).summary()} for line, hold in lines]
+        shares = [{"label": line["label"], **self._share(hold).summary()} for line, hold, _ in self._lines]
         if self.rows:
             shares.append({"label": "all limits", **self._share(holds(self.margin)).summary()})
         columns = ["label", "holding", "draws", "probability", "low", "high"]
-        found = [(line["label"], one.input, one.distance, one.shift, one.noise) for line, hold in lines for one in self._driven(hold)]
+        found = [(line["label"], one.input, one.distance, one.shift, one.noise) for line, _, driven in self._lines for one in driven]
         return {
             "risk_limits": pd.DataFrame(shares, columns=columns),
             "risk_percentiles": percentiles(self.study, self.drawn),
@@ -118,13 +116,15 @@ class Risk:
         """Return for each limited response, over its values, how probable it is that the response lies beyond: above for a limit `at_most`,
         below for one `at_least`. A draw without a value lies beyond every one."""
         parts = []
+        tail = np.geomspace(1.0 / max(len(self.drawn), 2), 0.5, _CURVE // 2)  # the curve is read where few draws lie beyond
+        levels = np.unique(np.concatenate([tail, np.linspace(0.0, 1.0, _CURVE // 2)]))
         for k, row in enumerate(self.rows):
             size = self.margin[:, k]
             beyond = np.sort(np.where(np.isnan(size), -np.inf, size))
             known = beyond[np.isfinite(beyond)]
             if not known.size:
                 continue
-            at = np.unique(np.quantile(known, np.linspace(0.0, 1.0, _CURVE), method="inverted_cdf"))
+            at = np.unique(known[np.maximum(_rank(levels, known.size), 0)])
             counts = np.searchsorted(beyond, at, side="left")
             ends = np.array([wilson(int(c), beyond.size, self.settings.confidence) for c in counts])
             value = row.bound - at if row.sense == "at_most" else row.bound + at
@@ -134,17 +134,28 @@ class Risk:
         return pd.concat(parts, ignore_index=True) if parts else pd.DataFrame(columns=columns)
 
 
+def _strongest(driven: tuple[Driver, ...]) -> list[dict[str, Any]]:
+    """Return the inputs that drive a limit's failures beyond chance, the strongest first."""
+    return [{"input": one.input, "distance": one.distance, "shift": one.shift} for one in driven if one.distance > one.noise]
+
+
 def percentiles(study: Study, drawn: pd.DataFrame) -> pd.DataFrame:
     """Return percentiles of every response (SI, the unit in its name) over the draws that are done and have a value; the others are counted."""
-    rows = []
-    for one in responses(study):
-        if one.kind not in ("float", "int"):
-            continue
-        value = drawn.loc[drawn["status"] == "done", one.column].to_numpy(dtype=np.float64, na_value=np.nan)
-        known = value[np.isfinite(value)]
-        cells = np.quantile(known, LEVELS, method="inverted_cdf") if known.size else np.full(len(LEVELS), np.nan)
-        rows.append((one.column, known.size, len(drawn) - known.size, *cells))
-    return pd.DataFrame(rows, columns=["response", "with_value", "without", *(f"p{100 * level:02.0f}" for level in LEVELS)])
+    names = [one.column for one in responses(study) if one.kind in ("float", "int")]
+    value = drawn.loc[drawn["status"] == "done", names].to_numpy(dtype=np.float64, na_value=np.nan)
+    ranked = np.sort(np.where(np.isfinite(value), value, np.nan), axis=0)  # nulls last
+    known = np.isfinite(ranked).sum(axis=0)
+    found = {"response": names, "with_value": known, "without": len(drawn) - known}
+    for level in LEVELS:
+        place = np.maximum(_rank(level, known), 0)[None, :]
+        cells = np.take_along_axis(ranked, place, axis=0)[0] if len(ranked) else np.full(len(names), np.nan)
+        found[f"p{100 * level:02.0f}"] = cells
+    return pd.DataFrame(found)
+
+
+def _rank(level: float | NDArray[np.float64], count: int | NDArray[np.intp]) -> Any:
+    """Return which of so many sorted values (from 0) is the quantile: the smallest that at least the share `level` does not exceed."""
+    return np.ceil(level * np.asarray(count) - 1e-9).astype(np.intp) - 1
 
 
 def assess_risk(study: Study, evaluate: Evaluate) -> Risk:
@@ -166,27 +177,34 @@ def _rare(
         return {}
     if settings.rare == "together":
         failing = np.array([np.count_nonzero(~holds(margin)) / max(len(margin), 1)])
-    spread = np.array([_spread(margin[:, k]) for k in range(len(rows))])
+    spread = _spreads(margin, np.array([row.bound for row in rows]), study.values["accuracy.relative"])
+    bound = 1.0 - share(np.ones(len(margin), dtype=bool), settings.confidence, settings.interval).low
 
     def least(which: NDArray[np.intp]) -> Callable[[NDArray[np.float64]], NDArray[np.float64]]:
         def margin_of(score: NDArray[np.float64]) -> NDArray[np.float64]:
             from scipy.special import ndtr
 
-            found = margins(study, evaluate(Draws(study, ndtr(score)).at(point)))[:, which] / spread[which]
-            return np.asarray(np.where(np.isnan(found).any(axis=1), np.nan, found.min(axis=1)))
+            found = margins(study, evaluate(Draws(study, ndtr(score)).at(point)))[:, which]
+            scaled = np.where(spread[which] > 0.0, found / np.where(spread[which] > 0.0, spread[which], 1.0), np.where(found >= 0.0, np.inf, -np.inf))
+            return np.asarray(np.where(np.isnan(found).any(axis=1), np.nan, scaled.min(axis=1)))
 
         return margin_of
 
-    dimensions = len(dimensions_of(study))
-    return {
-        label: rare_failure(least(which), dimensions, settings.rare_draws, settings.confidence, stream(study.seed, "rare", label))
-        for (label, which), seen in zip(sought.items(), failing, strict=True)
-        if seen < RARE
-    }
+    dimensions, found = len(dimensions_of(study)), dict[str, Rare]()
+    for (label, which), seen in zip(sought.items(), failing, strict=True):
+        if seen < RARE:
+            one = rare_failure(least(which), dimensions, settings.rare_draws, settings.confidence, stream(study.seed, "rare", label))
+            bounded = one.probability is None and seen == 0.0  # then the draws' own bound stands too
+            found[label] = replace(one, high=min(one.high, bound)) if bounded else one
+    return found
 
 
-def _spread(margin: NDArray[np.float64]) -> float:
-    """Return by how much a margin varies, so that limits in different units can be compared; 1 where it does not."""
-    known = margin[np.isfinite(margin)]
-    size = float(known.std()) if known.size else 0.0
-    return size if size > 0.0 else 1.0
+def _spreads(margin: NDArray[np.float64], bound: NDArray[np.float64], tolerance: float) -> NDArray[np.float64]:
+    """Return by how much each margin (N, L) varies, (L,), so that limits in different units can be compared; 0 where one only holds or does not,
+    as that of a target at which the batch is ended: it does not move beyond the march's tolerance."""
+    found = np.zeros(margin.shape[1])
+    for k in range(found.size):
+        known = margin[np.isfinite(margin[:, k]), k]
+        if known.size and np.ptp(known) > 10.0 * tolerance * abs(bound[k]):
+            found[k] = known.std()
+    return found

@@ -127,5 +127,7 @@ def _written(study: Study) -> pd.DataFrame:
     for path in sorted(set(study.values) - known):
         if path.split(".")[0] not in ("events", "limits"):
             unit = si_unit(study.dimensions[path])
-            rows.append((path, "default", study.values[path], unit, "assumed where nothing is written"))
+            held = path.startswith("variables.")
+            source = "what is held is what was chosen, but in draws" if held else "assumed where nothing is written"
+            rows.append((path, "default", study.values[path], unit, source))
     return pd.DataFrame(rows, columns=["path", "written", "value_si", "unit_si", "source"])

@@ -19,6 +19,11 @@ class ForeignResultsError(SweepError):
     """A results folder holds the results of another study."""
 
 
+def one_line(text: str) -> str:
+    """Return a text whose line ends are spaces, so that what stands in a study cannot pass for a line of ours."""
+    return " ".join(text.splitlines())
+
+
 @dataclass(frozen=True)
 class Fault:
     """One fault of a study: where, what stands there, what would be right, and why."""
@@ -32,10 +37,10 @@ class Fault:
 
     def __str__(self) -> str:
         return (
-            f"{self.file}:{self.line}  {self.key}\n"
-            f"  found     {self.found}\n"
-            f"  expected  {self.expected}\n"
-            f"  because   {self.because}"
+            f"{one_line(self.file)}:{self.line}  {one_line(self.key)}\n"
+            f"  found     {one_line(self.found)}\n"
+            f"  expected  {one_line(self.expected)}\n"
+            f"  because   {one_line(self.because)}"
         )
 
 

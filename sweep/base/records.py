@@ -1,5 +1,7 @@
 """Canonical JSON, digests, and files that are either whole or not there."""
 
+import contextlib
+import errno
 import hashlib
 import json
 import math
@@ -34,16 +36,34 @@ def digest(value: Any) -> str:
     return hashlib.sha256(data).hexdigest()
 
 
+def settle(folder: Path) -> None:
+    """Flush to disk which files a folder holds, where the system can; without that a power cut may undo a rename."""
+    if os.name != "posix":
+        return
+    handle = os.open(folder, os.O_RDONLY)
+    try:
+        os.fsync(handle)
+    except OSError as error:
+        if error.errno not in (errno.EINVAL, errno.ENOTSUP):  # a file system that flushes no folders
+            raise
+    finally:
+        os.close(handle)
+
+
 def write_whole(path: Path, data: bytes | str) -> None:
-    """Write a file under a temporary dot name, flush it to disk, then rename it; SurroundingsError where the disk refuses."""
-    path.parent.mkdir(parents=True, exist_ok=True)
+    """Write a file under a temporary dot name, flush it to disk, rename it, flush its folder; SurroundingsError where the disk refuses."""
     temporary = path.with_name(f".{path.name}.{os.getpid()}")
     try:
+        path.parent.mkdir(parents=True, exist_ok=True)
         with open(temporary, "wb") as file:
             file.write(data if isinstance(data, bytes) else data.encode("utf-8"))
             file.flush()
             os.fsync(file.fileno())
         os.replace(temporary, path)
-    except OSError as error:
-        temporary.unlink(missing_ok=True)
-        raise SurroundingsError(f"{path} cannot be written: {error.strerror or error}") from error
+        settle(path.parent)
+    except BaseException as error:
+        with contextlib.suppress(OSError):
+            temporary.unlink(missing_ok=True)
+        if isinstance(error, OSError):
+            raise SurroundingsError(f"{path} cannot be written: {error.strerror or error}") from error
+        raise

@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT, RESTLESS = range(7)
+DONE, RUNAWAY, TOO_MANY_STEPS, STEP_TOO_SMALL, UNBALANCED, BAD_INPUT, RESTLESS, CRASHED = range(8)
 
 
 @dataclass(frozen=True)
@@ -52,5 +52,11 @@ OUTCOMES = (
         "failed",
         "its events by condition fired, or were armed again, more than 200 times",
         "widen the hysteresis of an event that is armed again",
+    ),
+    Outcome(
+        CRASHED,
+        "failed",
+        "the evaluation of this point crashed the process that did it",
+        "the other points stand; a crash is a fault of the program or of the machine, not of the study: report it with this point",
     ),
 )

@@ -13,7 +13,7 @@ from sweep.cli.terminal import Terminal
 
 DONE, SOME_FAILED, WRONG, INTERRUPTED, SURROUNDINGS = range(5)
 _EPILOG = """exit status: 0 done; 1 done, but points failed or a limit does not hold in `batch`; 2 the study or the call is wrong;
-3 interrupted, `run` goes on where it stopped; 4 the surroundings failed (disk, lock, damaged store).
+3 interrupted, `run` goes on where it stopped; 4 the surroundings failed (disk, lock, damaged store, closed output).
 
 The program screens; it does not approve: figures rest on the kinetics given, hazards need calorimetric testing and a review by qualified
 people under local codes."""
@@ -130,23 +130,40 @@ _COMMANDS: dict[str, Callable[[argparse.Namespace, Terminal], int]] = {
 
 
 def _stop(number: int, frame: object) -> None:
-    """End like Ctrl-C when the process is asked to."""
+    """End like Ctrl-C when the process is asked to, or its terminal is gone."""
     raise KeyboardInterrupt
+
+
+def _listen() -> None:
+    for name in ("SIGTERM", "SIGHUP") if sys.platform != "win32" else ():
+        if signal.getsignal(getattr(signal, name)) is not signal.SIG_IGN:  # which is how nohup starts a program
+            signal.signal(getattr(signal, name), _stop)
+
+
+def _hush() -> None:
+    """Let no further signal disturb the last words of a program that is ending anyway."""
+    for name in ("SIGINT", "SIGTERM", "SIGHUP"):
+        if hasattr(signal, name):
+            signal.signal(getattr(signal, name), signal.SIG_IGN)
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run a command; return its exit status."""
-    options = _parser().parse_args(arguments)
-    terminal = Terminal(options.quiet)
-    if sys.platform != "win32":
-        signal.signal(signal.SIGTERM, _stop)
+    terminal, command = Terminal(), ""
     try:
-        return _COMMANDS[options.command](options, terminal)
+        try:
+            options = _parser().parse_args(arguments)
+            terminal.quiet, command = options.quiet, options.command
+            _listen()
+            return _COMMANDS[command](options, terminal)
+        finally:
+            terminal.close()
     except SweepError as error:
         terminal.error(str(error))
         return error.exit_status
     except KeyboardInterrupt:
-        again = " The points that are done stay; the same command goes on where it stopped." if options.command == "run" else ""
+        _hush()
+        again = " The points that are done stay; the same command goes on where it stopped." if command == "run" else ""
         terminal.error(f"interrupted.{again}")
         return INTERRUPTED
     except OSError as error:
@@ -154,8 +171,6 @@ def main(arguments: Sequence[str] | None = None) -> int:
             raise
         terminal.error(f"{error.filename or 'the system'}: {error.strerror or error}")
         return SURROUNDINGS
-    finally:
-        terminal.close()
 
 
 if __name__ == "__main__":

@@ -1,9 +1,14 @@
 """What is printed where: results on standard output, notes, progress and errors on standard error."""
 
+import contextlib
+import os
 import sys
 import time
 import unicodedata
-from typing import TYPE_CHECKING
+from collections.abc import Iterator
+from typing import TYPE_CHECKING, TextIO
+
+from sweep.base.errors import SurroundingsError, one_line
 
 if TYPE_CHECKING:
     from sweep.runner import Progress
@@ -38,30 +43,30 @@ class Terminal:
     def line(self, text: str) -> None:
         """Print a result."""
         self._clear()
-        print(printable(text))
+        with self._results():
+            print(printable(text))
 
     def title(self, text: str) -> None:
         """Print what a result is about."""
-        self.line(text)
+        self.line(one_line(text))
 
     def heading(self, text: str) -> None:
         """Print a heading."""
-        self.line(f"\n{text}")
+        self.line(f"\n{one_line(text)}")
 
     def item(self, text: str) -> None:
         """Print a line of a list."""
-        self.line(f"  {text}")
+        self.line(f"  {one_line(text)}")
 
     def note(self, text: str) -> None:
         """Say what is being done."""
         if not self.quiet:
-            self._clear()
-            print(printable(text), file=sys.stderr, flush=True)
+            self.error(text)
 
     def error(self, text: str) -> None:
         """Say what is wrong."""
         self._clear()
-        print(printable(text), file=sys.stderr, flush=True)
+        self._say(printable(text) + "\n")
 
     def warnings(self, study: "Study") -> None:
         """Print what is legal but doubtful."""
@@ -84,16 +89,43 @@ class Terminal:
         left = f", {duration(now.left)} left" if now.left is not None and not finished else ""
         text = f"{now.done:,} of {now.total:,} points, {now.rate:,.0f} points/s{left}"
         if sys.stderr.isatty() and not finished:
-            print(f"\r\x1b[K{text}", end="", file=sys.stderr, flush=True)
+            self._say(f"\r\x1b[K{text}")
             self._line = True
         else:
             self.note(text)
 
     def _clear(self) -> None:
         if self._line:
-            print("\r\x1b[K", end="", file=sys.stderr, flush=True)
+            self._say("\r\x1b[K")
             self._line = False
 
+    def _say(self, text: str) -> None:
+        """Write to standard error; where nobody reads it any more, work goes on unseen."""
+        try:
+            sys.stderr.write(text)
+            sys.stderr.flush()
+        except OSError:
+            self.quiet = True
+            _abandon(sys.stderr)
+
+    @contextlib.contextmanager
+    def _results(self) -> Iterator[None]:
+        try:
+            yield
+        except OSError as error:
+            _abandon(sys.stdout)
+            raise SurroundingsError(f"standard output cannot be written: {error.strerror or error}; what is in the results folder stays") from None
+
     def close(self) -> None:
-        """Leave the terminal clean."""
+        """Leave the terminal clean and bring out all that was printed; SurroundingsError where that cannot be written."""
         self._clear()
+        with self._results():
+            sys.stdout.flush()
+
+
+def _abandon(stream: TextIO) -> None:
+    """Lead a stream that cannot be written to nowhere, so that what it still holds does not fail again when the program ends."""
+    with contextlib.suppress(OSError, ValueError):
+        nowhere = os.open(os.devnull, os.O_WRONLY)
+        os.dup2(nowhere, stream.fileno())
+        os.close(nowhere)

@@ -1,10 +1,13 @@
 """Which steps are accepted, and how long the next one is: for all lanes at once."""
 
 from sweep.kernel import layout as at
+from sweep.kernel.functions import rough_power
 from sweep.kernel.memory import load, store
-from sweep.kernel.vector import compiled, root, where
+from sweep.kernel.vector import compiled, where
 
 SAFETY, SHRINK, GROW = 0.9, 0.2, 6.0
+ORDER = 5.0  # the error of one step grows with this power of its length
+MILD = 2.5  # the error of the step before counts as no smaller than this suggests: 0.01 of what is allowed
 COOL, HOT = 1.0, 4.0  # K, and in shares of the model's upper limit: a step that leaves this range is tried again, shorter
 LANDED = 1e-13  # relative; a time this close to a segment's end is its end
 SPACING = 1e-15  # of the time; a step this short no longer moves it
@@ -18,18 +21,18 @@ def accepted(lanes, wrong, T_new):  # type: ignore[no-untyped-def]
 
 @compiled
 def next_step(lanes, wrong, fine, h):  # type: ignore[no-untyped-def]
-    """Return the step (s) that the error suggests, of a method whose estimate is of order 4; never longer just after a rejection.
+    """Return the step (s) that the error suggests, of a method whose error in one step is of order 5; never longer just after a rejection.
 
     Where errors grow from step to step, as on the way into a runaway, the next step is shortened ahead of its rejection: Gustafsson's
     predictive controller (ACM TOMS 20 (1994) 496; Hairer and Wanner, Solving ODEs II, IV.8; from memory).
     """
-    wrong = where(wrong > 1e-8, wrong, 1e-8)
-    factor = SAFETY / root(root(wrong))
-    before, h_before = load(lanes, at.L_WRONG_BEFORE), load(lanes, at.L_GOOD_STEP)
-    ahead = (SAFETY * h / where(h_before > 0.0, h_before, 1.0)) * root(root(before / (wrong * wrong)))
-    known = fine & (h_before > 0.0) & (before > 0.0)
+    shrink = rough_power(where(wrong > 1e-8, wrong, 1e-8), -1.0 / ORDER)
+    factor = SAFETY * shrink
+    before, h_before = load(lanes, at.L_SHRINK_BEFORE), load(lanes, at.L_GOOD_STEP)
+    known = fine & (h_before > 0.0)
+    ahead = factor * shrink * h / where(known, h_before * before, 1.0)
     factor = where(known & (ahead < factor), ahead, factor)
-    store(lanes, at.L_WRONG_BEFORE, where(fine, where(wrong > 1e-2, wrong, 1e-2), before))
+    store(lanes, at.L_SHRINK_BEFORE, where(fine, where(shrink < MILD, shrink, MILD), before))
     store(lanes, at.L_GOOD_STEP, where(fine, h, h_before))
     factor = where(factor > GROW, GROW, factor)
     factor = where(factor >= SHRINK, factor, SHRINK)

@@ -10,11 +10,12 @@ from sweep.base.status import RUNAWAY, STEP_TOO_SMALL, TOO_MANY_STEPS
 from sweep.kernel import layout as at
 from sweep.kernel.balance import REFERENCE
 from sweep.kernel.memory import coefficient, entry, integer, keep, number, of_lane, put, put_integer, row
-from sweep.kernel.peaks import crossing, on_cubic
+from sweep.kernel.peaks import crossing, on_path
 from sweep.kernel.vector import compiled
 
 AT_END, AT_CROSSING, AT_BEST, AT_LAST = 0, 1, 2, 3
 _FIRST_STEP = 1e-3  # of a segment's length
+_KEPT_STEP = 0.25  # of the step before a segment's boundary
 _NEVER = 1e300
 
 
@@ -52,7 +53,8 @@ def begin_segment(s, w, lane, blocks, point, segments):  # type: ignore[no-untyp
         references(s, w, shift)
         keep(place, at.L_SEGMENT, 1.0 * segment)
         keep(place, at.L_SEGMENT_END, end)
-        keep(place, at.L_STEP, (end - time) * _FIRST_STEP)
+        kept = _KEPT_STEP * of_lane(place, at.L_GOOD_STEP)
+        keep(place, at.L_STEP, min(max(kept, (end - time) * _FIRST_STEP), 0.5 * (end - time)))
         keep(place, at.L_PENDING, 0.0)
         keep(place, at.L_GOOD_STEP, 0.0)
         return 0
@@ -96,28 +98,28 @@ def begin_point(s, f, w, lane, point, blocks, starts, constants, segments, times
 
 
 @compiled
-def cubic_of_state(s, w, shift, i):  # type: ignore[no-untyped-def]
-    """Return y0, y1, p, q of state i along the step just made."""
-    y, new = row(s, w, at.W_Y) + shift, row(s, w, at.W_NEW) + shift
-    return of_lane(y, i), of_lane(new, i), of_lane(row(s, w, at.W_P) + shift, i), of_lane(row(s, w, at.W_Q) + shift, i)
+def path_of_state(s, w, shift, i):  # type: ignore[no-untyped-def]
+    """Return y0, y1, p, q, r of state i along the step just made."""
+    y, new, dense = row(s, w, at.W_Y) + shift, row(s, w, at.W_NEW) + shift, row(s, w, at.W_DENSE) + shift
+    return of_lane(y, i), of_lane(new, i), of_lane(row(s, w, at.W_P) + shift, i), of_lane(row(s, w, at.W_Q) + shift, i), of_lane(dense, i)
 
 
 @compiled
-def cubic_of_sum(s, f, w, shift, weights):  # type: ignore[no-untyped-def]
-    """Return y0, y1, p, q of a weighted sum over z along the step just made."""
-    y0, y1, p, q = 0.0, 0.0, 0.0, 0.0
+def path_of_sum(s, f, w, shift, weights):  # type: ignore[no-untyped-def]
+    """Return y0, y1, p, q, r of a weighted sum over z along the step just made."""
+    y0, y1, p, q, r = 0.0, 0.0, 0.0, 0.0, 0.0
     for k in range(entry(s, at.N_STATES)):
         weight = coefficient(f, weights + k)
-        a, b, c, d = cubic_of_state(s, w, shift, k)
-        y0, y1, p, q = y0 + weight * a, y1 + weight * b, p + weight * c, q + weight * d
-    return y0, y1, p, q
+        a, b, c, d, e = path_of_state(s, w, shift, k)
+        y0, y1, p, q, r = y0 + weight * a, y1 + weight * b, p + weight * c, q + weight * d, r + weight * e
+    return y0, y1, p, q, r
 
 
 @compiled
 def capture(s, w, shift, target, theta):  # type: ignore[no-untyped-def]
     """Write the state at a fraction of the step just made to an address."""
     for i in range(entry(s, at.N_ROWS)):
-        put(target, i, on_cubic(cubic_of_state(s, w, shift, i), theta))
+        put(target, i, on_path(path_of_state(s, w, shift, i), theta))
 
 
 @compiled
@@ -131,7 +133,7 @@ def note_crossing(s, f, w, lane, out, out_length, whose):  # type: ignore[no-unt
     """Note when the target was reached inside the step just made, the state there, and when the batch ends if it ends by it."""
     shift = 8 * lane
     place = row(s, w, at.W_LANE) + shift
-    theta = crossing(cubic_of_sum(s, f, w, shift, entry(s, at.AT_TARGET)), of_lane(place, at.L_TARGET))
+    theta = crossing(path_of_sum(s, f, w, shift, entry(s, at.AT_TARGET)), of_lane(place, at.L_TARGET))
     when = of_lane(place, at.L_TIME) + theta * of_lane(place, at.L_STEP)
     keep(place, at.L_CROSSED, when)
     left, each = states_left(s, out, out_length, integer(whose, lane))

@@ -20,10 +20,10 @@ N_SLOTS = 27
 N_WATCHES, AT_WATCHES = 28, 29  # conditions that are watched for, and their stream
 # rows of scratch memory, each one vector (laid out by `program`)
 (
-    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_BEFORE, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME, W_D,
-    W_CP_Z, W_HEAT_Z, W_REFERENCE_Z, W_BLOCK, W_LEVEL, W_END,
-) = range(32, 58)  # fmt: skip
-HEADER = 58
+    W_LANE, W_Y, W_NEW, W_F, W_SLOPE, W_K, W_P, W_Q, W_DENSE, W_BEFORE, W_BEST, W_SLOTS, W_N, W_C, W_CP, W_R, W_HEAT, W_REFERENCE, W_R_T, W_R_TIME,
+    W_D, W_CP_Z, W_HEAT_Z, W_REFERENCE_Z, W_BLOCK, W_LEVEL, W_END,
+) = range(32, 59)  # fmt: skip
+HEADER = 59
 
 # block of one segment of one point: the fixed part (SI) --------------------------------------------------------------------
 T_END, T_START, VOLUME, VOLUME_RATE = 0, 1, 2, 3  # s, s, m3 at the segment's start, m3/s
@@ -67,7 +67,7 @@ L_DUTY, L_DUTY_SLOPE, L_DUTY_BEFORE, L_DUTY_SLOPE_BEFORE = range(40, 44)
 L_RATE, L_RATE_SLOPE, L_RATE_BEFORE, L_RATE_SLOPE_BEFORE = range(44, 48)
 L_HEAT_NOW, L_DUTY_NOW, L_RATE_NOW = 48, 49, 50  # as last evaluated: after the stages, near the step's end
 L_THETA = 51  # a fraction of the step, handed to or from scalar code
-L_WRONG_BEFORE, L_GOOD_STEP = 52, 53  # error and length of the last good step
+L_SHRINK_BEFORE, L_GOOD_STEP = 52, 53  # of the last good step: its error to the power -1/5, its length
 L_EVENT, L_EVENT_THETA, L_EVENT_TIME = 54, 55, 56  # the condition that was met (-1: none), where in the step, and when (s)
-L_CUBIC = 57  # four: a watched quantity along the step, handed to scalar code
-LANE_ROWS = 61
+L_PATH = 57  # five: a watched quantity along the step, handed to scalar code
+LANE_ROWS = 62

@@ -170,10 +170,10 @@ def _write_chemical(tables: _Tables, structure: Structure, slots: Integers) -> N
 
 
 def _write_method(tables: _Tables) -> None:
-    """Append per stage its time, its share of df/dt, its row of A and of C (five each); then the two rows of the dense output."""
+    """Append per stage its time, its share of df/dt, its row of A and of C (one fewer than stages each); then the dense output's rows."""
     tables.place(at.AT_METHOD)
     for k in range(method.STAGES):
-        for value in (method.TIMES[k], method.SLOPES[k], *method.A[k, :5], *method.C[k, :5]):
+        for value in (method.TIMES[k], method.SLOPES[k], *method.A[k, :-1], *method.C[k, :-1]):
             tables.add(0, value)
     for value in method.DENSE.ravel():
         tables.add(0, value)
@@ -196,8 +196,9 @@ def _lay_out(head: list[int], structure: Structure) -> None:
     species, nz = structure.amounts.shape
     rows, reactions = structure.rows, len(structure.reactions)
     sizes = {
-        at.W_LANE: at.LANE_ROWS, at.W_Y: rows, at.W_NEW: rows, at.W_F: rows, at.W_SLOPE: rows, at.W_K: 6 * rows, at.W_P: rows,
-        at.W_Q: rows, at.W_BEFORE: rows, at.W_BEST: rows, at.W_SLOTS: head[at.N_SLOTS], at.W_N: species, at.W_C: species, at.W_CP: species,
+        at.W_LANE: at.LANE_ROWS, at.W_Y: rows, at.W_NEW: rows, at.W_F: rows, at.W_SLOPE: rows, at.W_K: method.STAGES * rows,
+        at.W_P: rows, at.W_Q: rows, at.W_DENSE: rows, at.W_BEFORE: rows, at.W_BEST: rows,
+        at.W_SLOTS: head[at.N_SLOTS], at.W_N: species, at.W_C: species, at.W_CP: species,
         at.W_R: reactions, at.W_HEAT: reactions, at.W_REFERENCE: reactions, at.W_R_T: reactions, at.W_R_TIME: reactions,
         at.W_D: reactions * nz, at.W_CP_Z: nz, at.W_HEAT_Z: nz, at.W_REFERENCE_Z: nz, at.W_BLOCK: head[at.BLOCK_LENGTH],
         at.W_LEVEL: len(structure.watches),

@@ -44,9 +44,11 @@ def read_list(study: Study, file: Path) -> pd.DataFrame:
     import pandas as pd
 
     try:
+        if file.exists() and not file.is_file():
+            raise SweepError(f"plan.file: {file} is no file")  # a pipe or a device might never end
         with open(file, newline="", encoding="utf-8-sig") as text:
             lines = [(number, line) for number, line in enumerate(csv.reader(text), 1) if any(cell.strip() for cell in line)]
-    except (OSError, UnicodeDecodeError, csv.Error) as error:
+    except (OSError, ValueError, csv.Error) as error:
         raise SweepError(f"plan.file: {file} cannot be read: {getattr(error, 'strerror', None) or error}") from None
     if len(lines) < 2:
         raise SweepError(f"plan.file: {file} holds no points; expected a header such as 'dosing_time [h]' and a line a point")

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from sweep.base.errors import SweepError
 from sweep.base.seeds import stream
 from sweep.plan.listed import read_list
 from sweep.study.model import Study, Variable
@@ -17,6 +18,7 @@ if TYPE_CHECKING:
     import pandas as pd
 
 DEFAULT_POINTS = 1024  # of a Sobol' sequence, where neither a plan nor levels are written
+LARGEST = 1_000_000_000  # points of a plan; its files alone are counted in 10^5 then
 _Floats = NDArray[np.float64]
 
 
@@ -38,7 +40,7 @@ class Planned:
 
 
 def planned(study: Study) -> Planned:
-    """Return a study's plan; without variables it is the set-point alone."""
+    """Return a study's plan; without variables it is the set-point alone. SweepError where it is too large, or its list cannot be read."""
     if study.plan is not None and study.plan.kind == "list" and study.plan.file is not None:
         table = read_list(study, study.plan.file)
         values = table.to_numpy(dtype=np.float64)
@@ -51,6 +53,8 @@ def planned(study: Study) -> Planned:
     if kind == "factorial":
         levels = [np.linspace(v.low, v.high, v.levels or 2) for v in study.variables]
         size = int(np.prod([len(x) for x in levels], dtype=object))
+        if size > LARGEST:
+            raise SweepError(f"variables: {size:,} points in a full factorial; at most {LARGEST:,} can be planned: fewer levels, or kind = \"sobol\"")
         return Planned(kind, size, names, lambda start, stop: _factorial(levels, start, stop))
     size = (study.plan.points if study.plan is not None else None) or DEFAULT_POINTS
     return Planned(kind, size, names, _drawn(study, kind, size))

@@ -6,11 +6,11 @@ from sweep.plant.failed_batch import FailurePath, failure_path, failure_times
 from sweep.plant.fired import Fired, events_of
 from sweep.plant.limits import LimitRow, holds, limits, margins
 from sweep.plant.profile import batch_longest, productivity_of, profile
-from sweep.plant.responses import Response, evaluate, responses
+from sweep.plant.responses import Response, crashed, evaluate, responses
 from sweep.plant.understood import Understood, understood
 
 __all__ = [
-    "Deviated", "FailurePath", "Fired", "LimitRow", "Response", "Understood", "batch_longest", "class_sentence", "deviations_of",
+    "Deviated", "FailurePath", "Fired", "LimitRow", "Response", "Understood", "batch_longest", "class_sentence", "crashed", "deviations_of",
     "evaluate", "events_of", "failure_path", "failure_times", "holds", "limits", "margins", "productivity_of", "profile", "responses",
     "understood",
 ]  # fmt: skip

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any, Literal, NamedTuple
 
 import numpy as np
 
-from sweep.base.status import DONE, OUTCOMES, RESTLESS, UNBALANCED
+from sweep.base.status import CRASHED, DONE, OUTCOMES, RESTLESS, UNBALANCED
 from sweep.kernel import layout as at
 from sweep.kernel.engine import Marched
 from sweep.plant import states
@@ -119,6 +119,17 @@ def deviate(
     table = table_of(own, changed.overlaid({f"{scenario.path}.at": moment}), index)[0]
     table["at_s"] = moment
     return table
+
+
+def crashed(study: Study, points: pd.DataFrame) -> pd.DataFrame:
+    """Return inputs and responses of points whose evaluation ended its process: failed, with the reason, and null for everything else."""
+    import pandas as pd
+
+    outcome = OUTCOMES[CRASHED]
+    null: dict[str, Floats | list[Any]] = {"float": np.full(len(points), np.nan), "bool": [pd.NA] * len(points), "int": [pd.NA] * len(points)}
+    text = {"status": [outcome.status] * len(points), "reason": [outcome.sentence] * len(points)}
+    found = {r.column: text[r.column.rpartition(".")[2]] if r.kind == "text" else null[r.kind] for r in responses(study)}
+    return pd.concat([points, _table(responses(study), found, points.index)], axis=1)
 
 
 def _table(columns: tuple[Response, ...], found: dict[str, Floats | list[str]], index: pd.Index[Any]) -> pd.DataFrame:

@@ -4,10 +4,10 @@ from collections.abc import Mapping
 from typing import Any
 
 from sweep.report.blocks import Answers, Block, Cell, Section, Table, Words, figure, heads, row, verdict
-from sweep.report.display import Scale, conversion, decimals_for, duration, reach, scale_for, share, temperature
+from sweep.report.display import PERCENT, Scale, conversion, decimals_for, duration, reach, scale_for, share, temperature
 from sweep.report.prepare_window import limit_label, variable_scale
 from sweep.report.results import Results
-from sweep.report.wording import listed, plain, sentence, several, split_unit, words
+from sweep.report.wording import input_name, listed, plain, sentence, several, split_unit, words
 
 SENSES = {"at_most": "at most", "at_least": "at least"}
 
@@ -65,7 +65,9 @@ def headline(results: Results) -> Words:
     broken = [words(limit_label(limit, results)) for limit in limits if not limit["holds"]]
     if not broken:
         every = "The limit holds" if len(limits) == 1 else f"All {len(limits)} limits hold"
-        return Words((f"{every} at the set-point, on the kinetics given.",), look="good")
+        together = results.block("risk").get("all_hold")
+        surely = f" With what is uncertain drawn, all hold with a probability of {stated(together)}." if together else ""
+        return Words((f"{every} at the set-point, on the kinetics given.{surely}",), look="good")
     do = "does" if len(broken) == 1 else "do"
     return Words((f"{len(broken)} of {several(len(limits), 'limit')} {do} not hold at the set-point: {listed(broken)}.",), look="bad")
 
@@ -148,11 +150,73 @@ def _failure(results: Results) -> tuple[str, ...]:
     return tuple(lines)
 
 
+def probability(value: float) -> str:
+    """Return a probability in per cent, with the digits that tell it from none and from all."""
+    away = min(value, 1.0 - value)
+    return share(value) if away >= 1e-3 or away == 0.0 else PERCENT.text(value, decimals_for(100.0 * away, 2))
+
+
+def stated(counted: Mapping[str, Any]) -> str:
+    """Return a counted probability; where no draw failed, or none held, only what bounds it: none of many is not never."""
+    if counted["holding"] == counted["draws"]:
+        return f"above {probability(counted['low'])}"
+    return f"below {probability(counted['high'])}" if counted["holding"] == 0 else probability(counted["probability"])
+
+
+def risk(results: Results) -> tuple[str, ...]:
+    """Return the probability that all limits hold, and the time that nearly all batches need."""
+    if why := results.why_not("risk"):
+        return (f"not assessed: {why}",)
+    found, lines = results.block("risk"), list[str]()
+    together = found.get("all_hold")
+    if together:
+        interval = f"{probability(together['low'])} to {probability(together['high'])}"
+        lines.append(f"all limits hold with a probability of {stated(together)} ({share(found['confidence'])} interval {interval})")
+    worst = min(found.get("limits") or (), key=lambda limit: limit["probability"], default=None)
+    if worst is not None and worst["probability"] < 1.0:
+        lines.append(f"least sure: {words(worst['label'])}, {stated(worst)}")
+    lines += batch_time_line(found)
+    return tuple(lines) or ("no limits are set: percentiles only",)
+
+
+def batch_time_line(found: Mapping[str, Any]) -> list[str]:
+    """Return the batch time that most batches need, with its bound; nothing without a target."""
+    time = found.get("batch_time")
+    if not time:
+        return []
+    if time.get("time_s") is None:
+        return [f"no batch time reaches the target in {share(time['coverage'])} of batches: {time.get('reason')}"]
+    bound = f"at most {duration(time['bound_s'])} with {share(time['confidence'])} confidence" if time.get("bound_s") is not None else time["reason"]
+    return [f"{share(time['coverage'])} of batches reach the target within {duration(time['time_s'])} ({bound})"]
+
+
+def decides(results: Results) -> tuple[str, ...]:
+    """Return the input whose better knowledge buys most, and what moves the least sure limit."""
+    if why := results.why_not("sensitivity"):
+        return (f"not assessed: {why}",)
+    found, lines = results.block("sensitivity"), list[str]()
+    halved = (found.get("halved_spread") or {}).get("inputs") or ()
+    best = next((one for one in halved if one["rise_low"] > 0.0), None)
+    if best is not None:
+        gain = PERCENT.change(best["rise"], digits=2)
+        lines.append(f"{input_name(best['input'])}: with half its spread the probability that all limits hold rises by {gain}")
+    elif halved:
+        lines.append("no input whose halved spread would raise the probability that all limits hold beyond the noise of the draws")
+    for one in found.get("responses") or ():
+        if one.get("shares") and len(lines) < 4:
+            first = one["shares"][0]
+            name = words(split_unit(one["response"])[0])
+            lines.append(f"{name}: {input_name(first['input'])} has {share(first['total'])} of its variance")
+    return tuple(lines) or ("nothing moves any of the responses",)
+
+
 def section(results: Results) -> Section:
     """Return the page's first section."""
     asked = (
         ("What to set", _set(results)), ("How long to run", _run(results)), ("Nearest limit", _nearest(results)),
         ("Operating window", _window(results)), ("If cooling fails at the worst moment", _failure(results)),
+        ("With what probability the limits hold", risk(results)),
+        ("What decides", decides(results)),
     )  # fmt: skip
     blocks: list[Block] = [headline(results), Answers(asked), limits_table(results)]
     warnings = tuple(sentence(text) for text in results.summary.get("warnings") or ())

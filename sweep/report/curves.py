@@ -140,6 +140,58 @@ class ContourMap:
 
 
 @dataclass(frozen=True)
+class Facet:
+    """One response: how probable it is (%, with an interval) that it lies beyond a value, all (N,), and where its limit stands."""
+
+    title: str
+    x_label: str
+    x: Array
+    y: Array
+    low: Array
+    high: Array
+    limit: float
+    said: str
+
+
+@dataclass(frozen=True)
+class Facets:
+    """Exceedance curves, a panel each, on a logarithmic scale of probability from `least` (%) to all."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    facets: tuple[Facet, ...]
+    least: float
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Ranking:
+    """Inputs in order of their effect: bars with intervals, all (N,); marks: a second figure beside each bar, or None."""
+
+    title: str
+    labels: tuple[str, ...]
+    size: Array
+    low: Array
+    high: Array
+    marks: Array | None = None
+
+
+@dataclass(frozen=True)
+class Rankings:
+    """Panels of ranked bars that share their scale."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    x_label: str
+    panels: tuple[Ranking, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
 class Absent:
     """A figure that is not drawn, and why."""
 
@@ -148,4 +200,4 @@ class Absent:
     why: str
 
 
-Prepared = Curves | WindowMap | ContourMap | Absent
+Prepared = Curves | WindowMap | ContourMap | Facets | Rankings | Absent

@@ -16,7 +16,10 @@ from matplotlib.figure import Figure
 from matplotlib.ticker import FixedLocator, FuncFormatter, MaxNLocator
 from numpy.typing import NDArray
 
-__all__ = ["Axes", "Figure", "Ink", "finish", "outline", "plain_ticks", "round_levels", "sheet", "spread", "style", "time_ticks", "wrap"]
+__all__ = [
+    "Axes", "Figure", "Ink", "decade_ticks", "finish",
+    "outline", "plain_ticks", "round_levels", "sheet", "spread", "style", "time_ticks", "wrap",
+]  # fmt: skip
 
 # Okabe and Ito, Color universal design (2008), from memory; ordered so that neighbours differ in grey too.
 COLOURS = ("#0072B2", "#D55E00", "#000000", "#009E73", "#CC79A7", "#56B4E9", "#E69F00")
@@ -108,6 +111,13 @@ def time_ticks(axes: Axes) -> None:
     axes.xaxis.set_major_locator(FixedLocator([hours for hours, _ in _TIMES]))
     axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: min(_TIMES, key=lambda tick: abs(tick[0] - value))[1]))
     axes.xaxis.set_minor_locator(FixedLocator([]))
+
+
+def decade_ticks(axes: Axes) -> None:
+    """Set the ticks of a logarithmic y axis at powers of ten, written out."""
+    axes.yaxis.set_major_locator(FixedLocator([10.0**power for power in range(-6, 4)]))
+    axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+    axes.yaxis.set_minor_locator(FixedLocator([]))
 
 
 def round_levels(low: float, high: float, count: int = 8) -> NDArray[np.float64]:

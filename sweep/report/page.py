@@ -8,12 +8,13 @@ from importlib.resources import files
 import jinja2
 from markupsafe import Markup
 
-from sweep.report import answers, deviations, findings, record
+from sweep.report import answers, deviations, findings, findings_chance, record
 from sweep.report.blocks import Block, Picture, Section, Table, Words, table
 from sweep.report.curves import Absent, Curves, Prepared
 from sweep.report.results import Results
 
-PLACES = {"batch": ("batch_profile", "batch_time"), "window": ("window_map", "batch_time_map"), "failure": ("failure_diagram", "failure_path")}
+PLACES = {"batch": ("batch_profile", "batch_time"), "window": ("window_map", "batch_time_map"), "failure": ("failure_diagram", "failure_path"),
+          "risk": ("exceedance",), "sensitivity": ("spread_halved", "variance_shares")}  # fmt: skip
 
 
 @lru_cache(maxsize=1)
@@ -47,8 +48,9 @@ def sections(results: Results, drawn: list[Prepared], svg: Mapping[str, bytes]) 
     placed = {place: [picture(figure, svg) for figure in drawn if figure.name in names] for place, names in PLACES.items()}
     return [
         answers.section(results), findings.batch_time(results, placed["batch"]), findings.window(results, placed["window"]),
-        findings.failure(results, placed["failure"]), deviations.section(results), record.inputs(results),
-        record.not_assessed(results, drawn), record.points(results), record.cautions(results), record.versions(results), record.signatures(),
+        findings.failure(results, placed["failure"]), deviations.section(results), findings_chance.risk(results, placed["risk"]),
+        findings_chance.sensitivity(results, placed["sensitivity"]), record.inputs(results), record.not_assessed(results, drawn),
+        record.points(results), record.cautions(results), record.versions(results), record.signatures(),
     ]  # fmt: skip
 
 

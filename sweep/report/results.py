@@ -10,10 +10,13 @@ from typing import Any
 import pandas as pd
 
 from sweep.base.errors import SurroundingsError, SweepError
+from sweep.base.records import digest
+from sweep.runner.manifest import sealed
 
 TABLES = (
     "set_point_profile", "batch_time", "batch_time_map", "window_grid", "window_boundary",
-    "failure_times", "failure_path", "limits", "failed_points", "inputs", "measured",
+    "failure_times", "failure_path", "limits", "failed_points", "inputs", "measured", "risk_limits", "risk_percentiles", "risk_exceedance",
+    "risk_drivers", "sensitivity_screening", "sensitivity_shares", "sensitivity_local", "sensitivity_spread",
 )  # fmt: skip
 
 
@@ -92,9 +95,21 @@ def _tables(folder: Path) -> dict[str, pd.DataFrame]:
     return {name: _table(path) for name, path in paths.items() if path.is_file()}
 
 
+def _intact(folder: Path, manifest: Mapping[str, Any]) -> None:
+    """SurroundingsError where the manifest, or an answer or table that it lists, does not hold what was written."""
+    if "digest" in manifest and manifest != sealed(manifest):
+        raise SurroundingsError(f"{folder / 'manifest.json'} is damaged: it does not hold what was written")
+    known = manifest.get("files", {})
+    for name in sorted(name for name in known if name == "summary.json" or name.startswith("analyses/")):
+        path = folder / name
+        if not path.is_file() or digest(path.read_bytes()) != known[name]:
+            raise SurroundingsError(f"{path} is damaged: it does not hold what was written; `sweep run` computes it again")
+
+
 def read(folder: Path, whole: bool = True) -> Results:
     """Return the results in a folder; without `whole`, of one batch, which has no manifest. SweepError where they cannot be read."""
-    summary = _clean(_document(folder / "summary.json"))
     manifest = _document(folder / "manifest.json") if whole else {}
+    summary = _clean(_document(folder / "summary.json"))
+    _intact(folder, manifest)
     text = clean(str(manifest.get("study", "")), keep="\n\t")
     return Results(folder, summary, {**_clean(manifest), "study": text}, _tables(folder))

@@ -47,6 +47,13 @@ def plain(name: str) -> str:
     return name.replace("_", " ")
 
 
+def input_name(name: str) -> str:
+    """Return an uncertain input, a control error, or a group of them, in words."""
+    if name.startswith("variables.") and name.endswith(".error"):
+        return f"control error of {plain(name.removeprefix('variables.').removesuffix('.error'))}"
+    return " + ".join(input_name(part) for part in name.split(" + ")) if " + " in name else plain(name)
+
+
 def split_unit(column: str) -> tuple[str, str]:
     """Return a column's name and its SI unit."""
     for ending, unit in UNITS:

@@ -6,26 +6,31 @@ from pathlib import Path
 import pandas as pd
 
 from sweep.base.records import write_whole
-from sweep.report import prepare_batch, prepare_failure, prepare_overlay, prepare_window
-from sweep.report.curves import Absent, ContourMap, Curves, Prepared
+from sweep.report import prepare_batch, prepare_chance, prepare_failure, prepare_overlay, prepare_window
+from sweep.report.curves import Absent, ContourMap, Curves, Facets, Prepared, Rankings
 from sweep.report.page import page
 from sweep.report.results import Results, read
 
 BATCH = (prepare_batch.profile, prepare_failure.diagram, prepare_overlay.overlay)
 ALL: tuple[Callable[[Results], Prepared], ...] = (
     prepare_batch.profile, prepare_batch.productivity, prepare_window.window, prepare_window.contours, prepare_failure.diagram, prepare_failure.path,
+    prepare_chance.exceedance, prepare_chance.shares, prepare_chance.halved,
 )  # fmt: skip
 
 
-def _ink(figure: Curves | ContourMap | Prepared) -> tuple[bytes, bytes]:
+def _ink(figure: Prepared) -> tuple[bytes, bytes]:
     """Return a figure's SVG and PNG; matplotlib is loaded here, and not before."""
-    from sweep.report import draw, draw_curves, draw_maps
+    from sweep.report import draw, draw_chance, draw_curves, draw_maps
 
     with draw.style(figure.name):
         if isinstance(figure, Curves):
             sheet = draw_curves.draw(figure)
         elif isinstance(figure, ContourMap):
             sheet = draw_maps.draw_contours(figure)
+        elif isinstance(figure, Facets):
+            sheet = draw_chance.draw_facets(figure)
+        elif isinstance(figure, Rankings):
+            sheet = draw_chance.draw_rankings(figure)
         else:
             sheet = draw_maps.draw_window(figure)  # type: ignore[arg-type]
         ink = draw.finish(sheet)

@@ -4,14 +4,15 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from sweep.runner.manifest import read_manifest
     from sweep.runner.parallel import simulate
     from sweep.runner.progress import Progress, Watcher
     from sweep.runner.run import sweep_points
-    from sweep.runner.store import Store, read_manifest, read_points
+    from sweep.runner.store import Store, read_points
 
 _HOME = {
     "simulate": "parallel", "Progress": "progress", "Watcher": "progress", "sweep_points": "run", "Store": "store",
-    "read_manifest": "store", "read_points": "store",
+    "read_manifest": "manifest", "read_points": "store",
 }  # fmt: skip
 __all__ = ["Progress", "Store", "Watcher", "read_manifest", "read_points", "simulate", "sweep_points"]
 

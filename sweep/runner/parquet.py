@@ -39,10 +39,10 @@ def to_bytes(table: pd.DataFrame, schema: pa.Schema) -> bytes:
     return sink.getvalue()
 
 
-def from_file(path: Path) -> pd.DataFrame:
-    """Return the table in a Parquet file; SurroundingsError where it is damaged."""
+def from_bytes(data: bytes, path: Path) -> pd.DataFrame:
+    """Return the table in the bytes of a Parquet file; SurroundingsError, naming its path, where it is damaged."""
     try:
-        table = pq.read_table(path, page_checksum_verification=True)
+        table = pq.read_table(io.BytesIO(data), page_checksum_verification=True)
     except (OSError, pa.ArrowException) as error:
         raise SurroundingsError(f"{path} is damaged: {error}; `sweep run` computes it again") from None
     frame: pd.DataFrame = table.to_pandas(types_mapper={pa.int64(): pd.Int64Dtype(), pa.bool_(): pd.BooleanDtype()}.get).set_index("index")

@@ -61,7 +61,7 @@ class Reader:
         for key in table:
             if key in names:
                 continue
-            place = f"{path}.{key}" if path else key
+            place = f"{path}.{key}" if path else key or '""'
             if key in LATER or place in LATER:
                 self.fault(place, key, "a study without it", "not available yet")
                 continue

@@ -9,7 +9,8 @@ from sweep.study.model import Study
 
 def folder_of(study: Study, out: str | Path | None = None) -> Path:
     """Return the results folder: as asked, or results/<the study file's name>/ where the program is called."""
-    return Path(out) if out is not None else Path("results") / study.name
+    name = study.name if study.name.strip(".") else "study"  # a file named "...toml" must not lead out of results/
+    return Path(out) if out is not None else Path("results") / name
 
 
 def as_csv(table: pd.DataFrame) -> str:

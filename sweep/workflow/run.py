@@ -63,6 +63,8 @@ def run(
     folder, plan = folder_of(study, out), planned(study)
     say = tell or (lambda _: None)
     with Store(folder, study, plan, fresh) as store:
+        if store.broke_off:
+            say("an earlier run here ended without a word: points are evaluated in processes of their own, so that a crash costs one of them")
         sweep_points(store, workers, watcher)
         steps = _Steps(store, study, workers, say)
         summary = steps.summary()
@@ -86,7 +88,7 @@ class _Steps:
         self._judged = study.judged()
 
     def _evaluate(self, points: pd.DataFrame) -> pd.DataFrame:
-        return simulate(self.study, points, self.workers)
+        return simulate(self.study, points, self.workers, self.store.broke_off)
 
     def _judge(self, points: pd.DataFrame) -> pd.DataFrame:
         return simulate(self._judged, points, self.workers)
@@ -138,7 +140,7 @@ class _Steps:
         if self.study.batch_time is None:
             return {"not_assessed": "the study has no [batch_time]"}
         quick = self.study.without_failure()
-        evaluate = partial(simulate, quick, workers=self.workers)
+        evaluate = partial(simulate, quick, workers=self.workers, apart=self.store.broke_off)
         return self._kept("batch_time", "batch time", lambda: best_batch_time(quick, evaluate, self._set_point().row))
 
     def _window(self) -> dict[str, Any]:

@@ -89,6 +89,20 @@ def test_rare_failures_with_a_known_answer(rare):
     assert 0.2 < line["probability"] / ndtr(-4.0) < 5.0 and line["high"] < 1.0 - found["limits"][0]["low"]
 
 
+def test_a_limit_that_only_holds_or_not_does_not_hide_another():
+    """The conversion stands at its target in every draw, as where a batch is ended there; accumulation fails with probability Phi(-4)."""
+    extra = "[limits]\naccumulation = { at_most = 4 }\n[risk]\ndraws = 1024"
+    (line,) = risk_of(lambda x: np.full(len(x), 0.5), extra=extra, accumulation=lambda x: x[:, 0])["rare"]
+    assert line["low"] <= ndtr(-4.0) <= line["high"] < 1e-3
+
+
+def test_where_nothing_moves_the_draws_own_bound_stands():
+    found = risk_of(lambda x: np.full(len(x), 0.5))
+    (line,) = found["rare"]
+    assert (None, 0.0) == (line["probability"], line["low"])
+    assert pytest.approx(1.0 - found["limits"][0]["low"]) == line["high"]
+
+
 def test_what_is_seen_is_not_sought():
     assert [] == risk_of()["rare"]
 
@@ -160,3 +174,27 @@ def test_a_study_without_limits_has_percentiles():
     assert ([], None, None, []) == tuple(found.summary()[key] for key in ("limits", "all_hold", "batch_time", "rare"))
     assert "mtsr_K" in set(found.tables()["risk_percentiles"]["response"])
     assert 0 == len(found.tables()["risk_exceedance"])
+
+
+@pytest.mark.parametrize(("sd", "rare"), [(40.0, False), (20.0, True)])
+def test_marched_probability_against_the_root(sd, rare):
+    """One uncertain input, in which the highest temperature falls: the probability is that of lying above the root, found apart from any draw."""
+    from scipy.optimize import brentq
+
+    text = SMALL.replace('mtsr = { at_most = "85 degC" }', "").replace("[failure]\nmtt = \"100 degC\"", "").replace('"62 degC"', '"51 degC"')
+    text = text.replace("conversion = 0.9", "conversion = 0.5").replace('"300 W/m2/K"', '"600 W/m2/K"')
+    text += f'[uncertain]\nU = {{ of = "vessel.U", distribution = "normal", sd = "{sd} W/m2/K" }}\n[risk]\ndraws = 1024\nrare_draws = 500\n'
+    study = read_text(text)
+
+    def spare(u):
+        return float(sweep.simulate(study, pd.DataFrame({"vessel.U": [u]}), 1)["max_temperature_K"].iloc[0]) - 324.15
+
+    failing = ndtr((brentq(spare, 300.0, 1500.0, xtol=1e-6) - 600.0) / sd)
+    found = assess_risk(study, lambda points: sweep.simulate(study, points, 1)).summary()
+    line = next(one for one in found["limits"] if one["name"] == "max_temperature")
+    assert line["low"] <= 1.0 - failing <= line["high"]
+    assert rare == (failing < 1e-3) == bool(found["rare"])
+    if rare:
+        assert found["rare"][0]["low"] <= failing <= found["rare"][0]["high"] < 20.0 * failing
+    else:
+        assert pytest.approx(1.0 - failing, abs=2.0 / 1024) == line["probability"]  # strata: at most a draw away

@@ -270,7 +270,8 @@ def test_run_of_a_changed_study_is_refused_and_fresh_moves_aside(here, capsys):
     study = here / "small.toml"
     study.write_text(study.read_text().replace("conversion = 0.9", "conversion = 0.8"))
     assert 2 == main(["run", "small.toml", "--quiet"])
-    assert "--fresh" in capsys.readouterr().err
+    said = capsys.readouterr().err
+    assert "another study:\n  target.conversion: 0.9 then, 0.8 now\n--fresh moves" in said
     assert 0 == main(["run", "small.toml", "--quiet", "--fresh"])
     assert (here / "results" / "small.1" / "summary.json").exists()
 
@@ -286,7 +287,7 @@ def test_list_that_is_missing_or_has_changed(here, capsys):
     (here / "points.csv").write_text("dose [mol/L]\n1\n2.1\n")
     capsys.readouterr()
     assert 2 == main(["run", "listed.toml", "--workers", "1"])
-    assert re.search(r"another plan \(list_digest: [0-9a-f]{12} then, [0-9a-f]{12} now\); --fresh", capsys.readouterr().err)
+    assert re.search(r"another plan:\n  list_digest: [0-9a-f]{12} then, [0-9a-f]{12} now\n--fresh", capsys.readouterr().err)
 
 
 def test_report_of_no_results(here, capsys):

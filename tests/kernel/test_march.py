@@ -57,14 +57,14 @@ def _later(program: Program, block: np.ndarray, start: float, stop: float, feed:
 def test_order_by_the_slope_of_the_error():
     """Without step control the steps of a segment follow one pattern, so halving the segments halves every step."""
     program = cases.program_of("extents")
-    errors, counts = [], [2, 4, 8, 16]
+    errors, counts = [], [4, 8, 16, 32]
     exact = march(program, *_points(program, 8, 64, "adiabatic"), tolerance=1e-11).at_end
     for segments in counts:
         found = march(program, *_points(program, 8, segments, "adiabatic"), tolerance=1e9)
         assert 0 == found.out[:, at.OUT_REJECTED].max()
         errors.append(np.median(np.abs(found.at_end[:, 3] - exact[:, 3])))
     slope = -float(np.polyfit(np.log(counts), np.log(errors), 1)[0])
-    assert 4.0 == pytest.approx(slope, abs=0.2)
+    assert 5.0 == pytest.approx(slope, abs=0.2)
 
 
 @pytest.mark.parametrize("name", list(cases.STRUCTURES))
@@ -220,17 +220,17 @@ def test_runaway_stops_above_the_limit_and_keeps_what_came_before():
 def test_steps_are_bounded_hard():
     program = cases.program_of("extents")
     points = _points(program, 20)
-    found = march(program, *points, most_steps=17)
+    found = march(program, *points, most_steps=9)
     assert np.full(20, TOO_MANY_STEPS) == pytest.approx(found.out[:, at.OUT_STATUS])
-    assert np.full(20, 17.0) == pytest.approx(found.out[:, at.OUT_STEPS] + found.out[:, at.OUT_REJECTED])
+    assert np.full(20, 9.0) == pytest.approx(found.out[:, at.OUT_STEPS] + found.out[:, at.OUT_REJECTED])
 
 
 def test_work_is_what_it_was():
     """A change detector on the steps of a fixed set of points, with a tenth of slack; the method needs them, noise does not."""
     program = cases.program_of("extents")
     found = march(program, *_points(program, 200))
-    assert found.out[:, at.OUT_STEPS].mean() < 35.5
-    assert found.out[:, at.OUT_REJECTED].mean() < 3.4
+    assert found.out[:, at.OUT_STEPS].mean() < 24.0
+    assert found.out[:, at.OUT_REJECTED].mean() < 2.3
 
 
 def test_order_of_points_and_number_of_points_do_not_matter():

@@ -6,16 +6,42 @@ import pytest
 from sweep.kernel import method
 from tests.naive import Rodas
 
+STAGES = method.STAGES
+
 
 def _classical() -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Return alpha (6, 6), Gamma (6, 6) and b of the method in the classical form, from the transformed one.
+    """Return alpha, Gamma and the weights b of the method in the classical form, from the transformed one.
 
     Hairer and Wanner II, IV.7: U = Gamma K, so A = alpha Gamma^-1, C = diag(1/gamma) - Gamma^-1, m = b Gamma^-1.
     """
-    inverse = np.eye(6) / method.GAMMA - method.C
+    inverse = np.eye(STAGES) / method.GAMMA - method.C
     gamma = np.linalg.inv(inverse)
-    m = np.concatenate([method.A[5, :5], [1.0]])
-    return method.A @ gamma, gamma, m @ gamma
+    return method.A @ gamma, gamma, _weights(1.0) @ gamma
+
+
+def _weights(last: float) -> np.ndarray:
+    """Return the weights of the stages in the transformed form; last: that of the last stage, which is the error estimate."""
+    return np.concatenate([method.A[-1, :-1], [last]])
+
+
+def _conditions(b: np.ndarray, theta: float = 1.0) -> dict[int, np.ndarray]:
+    """Return by order what is left of the order conditions at a fraction of the step: Hairer and Wanner II, IV.7, table 7.1 and the
+    nine of order 5, by trees with beta = alpha + Gamma where a node has one branch, alpha where it has more."""
+    alpha, gamma, _ = _classical()
+    a, beta = alpha.sum(axis=1), alpha + gamma
+    s = beta.sum(axis=1)
+    inner = alpha @ s
+    sums = {
+        1: [(b.sum(), 1)],
+        2: [(b @ s, 2)],
+        3: [(b @ a**2, 3), (b @ beta @ s, 6)],
+        4: [(b @ a**3, 4), (b @ (a * inner), 8), (b @ beta @ a**2, 12), (b @ beta @ beta @ s, 24)],
+        5: [
+            (b @ a**4, 5), (b @ (a**2 * inner), 10), (b @ inner**2, 20), (b @ (a * (alpha @ a**2)), 15), (b @ (a * (alpha @ beta @ s)), 30),
+            (b @ beta @ a**3, 20), (b @ beta @ (a * inner), 40), (b @ beta @ beta @ a**2, 60), (b @ beta @ beta @ beta @ s, 120),
+        ],
+    }  # fmt: skip
+    return {order: np.array([value - theta**order / density for value, density in pairs]) for order, pairs in sums.items()}
 
 
 def test_times_and_slopes_follow_from_the_coefficients():
@@ -24,33 +50,32 @@ def test_times_and_slopes_follow_from_the_coefficients():
     assert gamma.sum(axis=1) == pytest.approx(method.SLOPES, abs=1e-9)
 
 
-def test_order_conditions_to_order_four():
-    """Hairer and Wanner II, IV.7, table 7.1 (beta = alpha + Gamma)."""
-    alpha, gamma, b = _classical()
-    a, beta = alpha.sum(axis=1), alpha + gamma
-    s = beta.sum(axis=1)
-    assert 1.0 == pytest.approx(b.sum(), abs=1e-9)
-    assert 1 / 2 == pytest.approx(b @ s, abs=1e-9)
-    assert 1 / 3 == pytest.approx(b @ a**2, abs=1e-9)
-    assert 1 / 6 == pytest.approx(b @ beta @ s, abs=1e-9)
-    assert 1 / 4 == pytest.approx(b @ a**3, abs=1e-9)
-    assert 1 / 8 == pytest.approx((b * a) @ alpha @ s, abs=1e-9)
-    assert 1 / 12 == pytest.approx(b @ beta @ a**2, abs=1e-9)
-    assert 1 / 24 == pytest.approx(b @ beta @ beta @ s, abs=1e-9)
+def test_last_stages_start_from_the_one_before():
+    for stage in range(method.FRESH, STAGES):
+        assert [*method.A[stage - 1, : stage - 1], 1.0] == pytest.approx(method.A[stage, :stage])
 
 
-def test_the_embedded_method_is_of_order_three_and_no_more():
+@pytest.mark.parametrize("order", [1, 2, 3, 4, 5])
+def test_order_conditions_to_order_five(order):
+    left = _conditions(_classical()[2])[order]
+    assert np.zeros(left.size) == pytest.approx(left, abs=1e-12)
+
+
+def test_the_embedded_method_is_of_order_four_and_no_more():
     """The error estimate is the last stage: the method without it must be one order lower, or it would estimate nothing."""
-    alpha, gamma, _ = _classical()
-    b = np.concatenate([method.A[5, :5], [0.0]]) @ gamma
-    a, beta = alpha.sum(axis=1), alpha + gamma
-    s = beta.sum(axis=1)
-    assert 1.0 == pytest.approx(b.sum(), abs=1e-9)
-    assert 1 / 2 == pytest.approx(b @ s, abs=1e-9)
-    assert 1 / 3 == pytest.approx(b @ a**2, abs=1e-9)
-    assert 1 / 6 == pytest.approx(b @ beta @ s, abs=1e-9)
-    fourth = [b @ a**3 - 1 / 4, (b * a) @ alpha @ s - 1 / 8, b @ beta @ a**2 - 1 / 12, b @ beta @ beta @ s - 1 / 24]
-    assert np.max(np.abs(fourth)) > 1e-4
+    left = _conditions(_weights(0.0) @ _classical()[1])
+    for order in (1, 2, 3, 4):
+        assert np.zeros(left[order].size) == pytest.approx(left[order], abs=1e-12)
+    assert np.max(np.abs(left[5])) > 1e-4
+
+
+@pytest.mark.parametrize("theta", [0.1, 0.5, 0.9])
+def test_the_dense_output_is_of_order_four(theta):
+    p, q, r = method.DENSE
+    weights = theta * _weights(1.0) + theta * (1.0 - theta) * (p + theta * (q + theta * r))
+    left = _conditions(weights @ _classical()[1], theta)
+    for order in (1, 2, 3, 4):
+        assert np.zeros(left[order].size) == pytest.approx(left[order], abs=1e-12)
 
 
 def test_stiffly_accurate():
@@ -63,7 +88,7 @@ def test_stiffly_accurate():
 def _stability(z: complex) -> complex:
     """Return R(z) of the method: one step of y' = z y from 1."""
     alpha, gamma, b = _classical()
-    k = np.linalg.solve(np.eye(6) - z * (alpha + gamma), np.ones(6))
+    k = np.linalg.solve(np.eye(STAGES) - z * (alpha + gamma), np.ones(STAGES))
     return 1.0 + z * (b @ k)
 
 
@@ -98,11 +123,11 @@ def test_order_by_the_slope_of_the_error():
     exact = twin.fixed(y0, 2.0, 4096)
     steps = [16, 32, 64, 128]
     errors = [float(np.max(np.abs(twin.fixed(y0, 2.0, n) - exact))) for n in steps]
-    assert 4.0 == pytest.approx(_slope(steps, errors), abs=0.2)
+    assert 5.0 == pytest.approx(_slope(steps, errors), abs=0.2)
 
 
 def test_order_of_the_dense_output_by_the_slope_of_the_error():
-    """One step of varying length: a dense output of order 3 leaves an error of h^4."""
+    """One step of varying length: a dense output of order 4 leaves an error of h^5."""
     twin, y0 = _oscillator()
     lengths, errors = [0.2, 0.1, 0.05, 0.025], []
     for h in lengths:
@@ -110,7 +135,7 @@ def test_order_of_the_dense_output_by_the_slope_of_the_error():
         exact = twin.fixed(y0, 0.4 * h, 64)
         errors.append(float(np.max(np.abs(twin.dense(y0, new, k, 0.4) - exact))))
     slope = float(np.polyfit(np.log(lengths), np.log(errors), 1)[0])
-    assert slope > 3.8
+    assert slope > 4.8
 
 
 @pytest.mark.parametrize(

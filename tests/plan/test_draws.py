@@ -92,6 +92,14 @@ def test_a_scrambled_sequence_is_a_net():
         assert 64 == len({tuple(box) for box in boxes})
 
 
+def test_the_sequence_under_the_scrambling():
+    """First eight points with the direction numbers of Joe and Kuo (SIAM J. Sci. Comput. 30 (2008) 2635, from memory)."""
+    from scipy.stats import qmc
+
+    expected = [(0, 0, 0), (4, 4, 4), (6, 2, 2), (2, 6, 6), (3, 3, 5), (7, 7, 1), (5, 1, 7), (1, 5, 3)]
+    assert (np.array(expected) / 8.0).tolist() == qmc.Sobol(3, scramble=False).random(8).tolist()
+
+
 def test_strata_fill_better_than_chance():
     from scipy.stats import qmc
 

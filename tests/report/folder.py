@@ -8,6 +8,8 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from tests.report import chance_folder
+
 STUDY = '# Invented data for a demonstration; not for any real vessel.\n[study]\ntitle = "Fed-batch acylation in vessel K-310"\nseed = 310\n'
 SET = {
     "charge_temperature": {"value": 318.15, "unit": "K", "written_unit": "degC"},
@@ -91,7 +93,8 @@ SUMMARY: dict[str, Any] = {
     "limits": LIMITS,
     "nearest_limit": {"name": "conversion", "sense": "at_least", "margin": 0.0043, "unit": "1", "label": "conversion", "share": 0.018,
         "of": "the spread of conversion over the plan's points"},
-    "batch_time": BATCH_TIME, "window": WINDOW, "failure": FAILURE,
+    "batch_time": BATCH_TIME, "window": WINDOW, "failure": FAILURE, "risk": chance_folder.RISK,
+    "sensitivity": chance_folder.SENSITIVITY,
     "points": {"planned": 2025, "done": 2025, "runaway": 0, "failed": 0, "all_hold": 611},
     "warnings": ["The temperature leaves the valid range of acylation's rate constant at 12 points."],
     "cautions": ["The closed form of TMRad is shorter than the integrated one."],
@@ -201,7 +204,7 @@ def tables() -> dict[str, pd.DataFrame]:
         "unit_si": ["mol**(-1)*m**(3)*s**(-1)", "J/mol", "W/m^2/K", "K"], "source": ["runs 3 to 7", "", "", ""]})  # fmt: skip
     return {
         "set_point_profile": profile_table(), "window_grid": grid_table(), "window_boundary": boundary_table(),
-        **batch_time_tables(), **failure_tables(),
+        **batch_time_tables(), **failure_tables(), **chance_folder.tables(),
         "limits": pd.DataFrame(LIMITS), "inputs": inputs,
         "failed_points": pd.DataFrame({"charge_temperature_K": [], "dosing_time_s": [], "amine_mol_per_m3": [], "status": [], "reason": []}),
     }  # fmt: skip
@@ -225,7 +228,8 @@ def write(folder: Path, summary: dict[str, Any], manifest: dict[str, Any] | None
 def without(summary: dict[str, Any], found: dict[str, pd.DataFrame], block: str, reason: str) -> None:
     """Take an analysis out of a run: its block says why, its tables are gone."""
     summary[block] = {"not_assessed": reason}
-    gone = {"window": ("window_", "batch_time_map"), "failure": ("failure_",), "batch_time": ("batch_time",)}[block]
+    gone = {"window": ("window_", "batch_time_map"), "failure": ("failure_",), "batch_time": ("batch_time",), "risk": ("risk_",),
+            "sensitivity": ("sensitivity_",)}[block]
     for name in [name for name in found if name.startswith(gone)]:
         del found[name]
 

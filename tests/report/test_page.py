@@ -20,7 +20,8 @@ from tests.report import folder
 
 Made = tuple[dict[str, Any], dict[str, Any], dict[str, Any]]
 VARIANTS = (folder.whole, folder.no_target, folder.not_reached, folder.failed_points, folder.hostile)
-FIGURES = {"batch_profile", "batch_time", "window_map", "batch_time_map", "failure_diagram", "failure_path"}
+FIGURES = {"batch_profile", "batch_time", "window_map", "batch_time_map", "failure_diagram", "failure_path", "exceedance", "variance_shares",
+           "spread_halved"}  # fmt: skip
 
 
 class Reader(HTMLParser):
@@ -222,6 +223,8 @@ def test_a_figure_that_no_longer_stands_is_removed(tmp_path: Path) -> None:
     summary, manifest, tables = folder.no_target()
     folder.without(summary, tables, "failure", "no decomposition is given")
     folder.without(summary, tables, "window", "no axes are given")
+    folder.without(summary, tables, "risk", "nothing is uncertain")
+    folder.without(summary, tables, "sensitivity", "nothing is uncertain")
     left = [tmp_path / "figures" / f"failure_diagram.{ending}" for ending in ("svg", "png", "csv")]
     left[0].parent.mkdir(parents=True)
     for path in left:

@@ -57,15 +57,3 @@ def test_stretches_come_in_order_and_whole(study):
     found = list(in_order(study, plan, [0, 200, 400], 200, workers=2))
     assert [0, 200, 400] == [start for start, _ in found]
     np.testing.assert_array_equal(np.arange(plan.size), np.concatenate([t.index for _, t in found]))
-
-
-@pytest.mark.long
-def test_processes_give_what_threads_give(study, monkeypatch):
-    from sweep.runner import parallel
-
-    plan = planned(study)
-    threads = pd.concat([t for _, t in in_order(study, plan, [0], plan.size, workers=2)])
-    monkeypatch.setattr(parallel, "PROCESSES_FROM", 1)
-    monkeypatch.setattr(parallel, "PIECE", 200)
-    processes = pd.concat([t for _, t in in_order(study, plan, [0], plan.size, workers=2)])
-    pd.testing.assert_frame_equal(threads, processes, check_exact=True)

@@ -12,6 +12,7 @@ import pytest
 from sweep.base.errors import ForeignResultsError, SurroundingsError
 from sweep.plan import planned
 from sweep.runner import Store, read_points, store, sweep_points
+from sweep.runner.manifest import sealed
 from sweep.study import read_text
 from tests.texts import SMALL
 
@@ -89,7 +90,7 @@ def test_other_versions_are_refused_with_what_changed(tmp_path, study):
     _run(tmp_path, study)
     manifest = json.loads((tmp_path / "manifest.json").read_text())
     manifest["versions"]["numpy"] = "1.0"
-    (tmp_path / "manifest.json").write_text(json.dumps(manifest))
+    (tmp_path / "manifest.json").write_text(json.dumps(sealed(manifest)))
     with pytest.raises(ForeignResultsError, match=r"numpy: 1\.0 then"):
         _run(tmp_path, study)
 
@@ -125,7 +126,17 @@ def test_lock_of_another_machine_is_respected(tmp_path, study):
         Store(tmp_path, study, planned(study))
 
 
-@pytest.mark.parametrize(("text", "words"), [("{", "cannot be read"), ("[]", "lists no files"), ('{"files": {}, "schema": 99}', "schema 99")])
+@pytest.mark.parametrize(
+    ("text", "words"),
+    [
+        ("{", "is damaged: .*--fresh"),
+        ("[]", "lists no files; --fresh"),
+        ('{"schema": 99}', "schema 99, of a newer version.*--fresh"),
+        ('{"schema": 1, "files": {}}', "lists no files; --fresh"),
+        ("[" * 100_000, "is damaged: .*--fresh"),
+    ],
+    ids=["cut", "a list", "newer", "without analyses", "deep"],
+)
 def test_manifest_that_cannot_be_used(tmp_path, study, text, words):
     (tmp_path / "manifest.json").write_text(text)
     with pytest.raises(SurroundingsError, match=words):

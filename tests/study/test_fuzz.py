@@ -11,7 +11,25 @@ from hypothesis import strategies as st
 from sweep.base.errors import StudyError
 from sweep.study import Study, read_text
 
-TEXT = Path(__file__).with_name("fedbatch.toml").read_text()
+UNCERTAIN = """
+[uncertain]
+k = { of = "reactions.acylation.rate_constant.value", distribution = "lognormal", relative_sd = 0.10 }
+E = { of = "reactions.acylation.rate_constant.activation_energy", distribution = "normal", sd = "2.5 kJ/mol" }
+U = { of = "vessel.U", distribution = "triangular", low = "240 W/m2/K", mode = "310 W/m2/K", high = "340 W/m2/K" }
+inlet = { of = "cooling.inlet", distribution = "truncated-normal", sd = "2 K", low = "2 degC" }
+flow = { of = "cooling.flow", distribution = "uniform", relative_low = 0.8, relative_high = 1.0 }
+[[correlations]]
+between = ["k", "E"]
+rank = 0.6
+[[correlations]]
+between = ["U", "E"]
+linear = -0.3
+[risk]
+draws = 4096
+[sensitivity]
+"""
+TEXT = Path(__file__).with_name("fedbatch.toml").read_text().replace('"6 h", levels = 15 }', '"6 h", levels = 15, tolerance = { sd = "5 min" } }')
+TEXT += UNCERTAIN
 DEADLINE = 4000  # ms; a study reads in 20 ms, on a busy machine in a few times that
 PIECES = re.findall(r'"[^"\n]*"|[\w.+-]+|[\[\]{}=,]|->|\n', TEXT)
 SIGNS = [*'"\'[]{}=,.#\n\\ \t+-*/^()<>%_\x00\u00e9\u2212\u00b7', "<=>", "->", '"""', "'''", "[[", "]]", "nan", "-inf", "1e999", "0", "-1", "1" * 400,

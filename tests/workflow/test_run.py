@@ -51,6 +51,7 @@ WHOLE = {
     "uncertain": QUICK + UNCERTAIN,
     "uncertain without target": _cut(QUICK, "[target]", "[batch_time]") + UNCERTAIN,
     "uncertain without limits": _cut(QUICK, "[limits]", "[target]", "[batch_time]") + UNCERTAIN,
+    "uncertain to target": QUICK.replace('batch_time = "6 h"', 'batch_time = "to target"') + UNCERTAIN,
     "uncertain runaway": QUICK.replace('"-80 kJ/mol"', '"-3000 kJ/mol"') + UNCERTAIN,
     "uncertain and never reached": QUICK.replace("conversion = 0.9", "conversion = 0.999999") + UNCERTAIN,
     "whole": QUICK,
