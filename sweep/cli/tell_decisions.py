@@ -87,4 +87,5 @@ def _aim(objective: dict[str, Any], value: float | None) -> str:
         return difference(value, objective["unit"], None)
     if objective["name"] == "cost":
         return f"{value:.4g} {objective['unit']}"
-    return in_words(value, objective["unit"] or "1")
+    unit = str(objective["unit"])
+    return in_words(value, unit or "1", unit.replace("^3/s", "3/h") if unit.endswith("/m^3/s") else None)
