@@ -83,6 +83,10 @@ def not_assessed(study: Study) -> list[str]:
         found.append("Risk, the probability that the limits hold with uncertain inputs: the study has no [risk].")
     if study.sensitivity is None:
         found.append("Sensitivity, which inputs decide: the study has no [sensitivity].")
+    if study.ranges is None:
+        found.append("Acceptable ranges, within which every limit holds: the study has no [ranges].")
+    if study.optimum is None:
+        found.append("An optimum, the best setting within the limits: the study has no [optimum].")
     if not study.scenarios:
         found.append("Deviations other than a total loss of cooling: the study has no [scenarios] and no [deviations].")
     return found

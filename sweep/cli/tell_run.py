@@ -5,6 +5,7 @@ from typing import Any
 from sweep.base.units import show
 from sweep.cli.tell_batch import difference, in_words, limit_sentence, tell_failure
 from sweep.cli.tell_chance import tell_risk, tell_sensitivity
+from sweep.cli.tell_decisions import tell_map, tell_optimum, tell_ranges
 from sweep.cli.tell_deviations import tell_deviations
 from sweep.cli.terminal import Terminal
 from sweep.study.model import Study
@@ -35,6 +36,9 @@ def tell_run(found: Run, study: Study, terminal: Terminal) -> None:
         tell_deviations(summary["deviations"]["table"], terminal)
     tell_risk(summary["risk"], terminal)
     tell_sensitivity(summary["sensitivity"], terminal)
+    tell_map(summary["probability_map"], terminal)
+    tell_ranges(summary["ranges"], terminal)
+    tell_optimum(summary["optimum"], terminal)
     terminal.line("")
     terminal.line(f"report: {found.folder / 'report.html'}")
     terminal.line("This screens; it does not approve. Figures rest on the kinetics given; have hazards tested and reviewed by qualified people.")

@@ -110,18 +110,18 @@ class Draws:
         """
         import pandas as pd
 
-        levels, factors = self.probabilities[which], spread or {}
+        levels, factors = self.probabilities, spread or {}  # each draw once, however many points it meets
         for name in factors:
             if name not in inputs_of(self.study):
                 raise SweepError(f"{name} is not drawn in this study; drawn are {', '.join(inputs_of(self.study)) or 'none'}")
         place = {name: k for k, names in enumerate(dimensions_of(self.study)) for name in names}
         columns: dict[str, _Floats] = {}
         for one in self.study.uncertain:
-            columns[one.name] = _drawn(one, levels[:, place[one.name]], factors.get(one.name, 1.0))
+            columns[one.name] = _drawn(one, levels[:, place[one.name]], factors.get(one.name, 1.0))[which]
         for v in self.study.variables:
             if v.tolerance is not None:
                 chosen = points[v.name].to_numpy(dtype=np.float64) if v.name in points else self.study.values[v.sets[0]]
-                columns[v.error] = _missed(v.tolerance, levels[:, place[v.error]], factors.get(v.error, 1.0)) * (
+                columns[v.error] = _missed(v.tolerance, levels[:, place[v.error]], factors.get(v.error, 1.0))[which] * (
                     np.abs(chosen) if v.tolerance.relative else 1.0
                 )
         return pd.concat([points.reset_index(drop=True), pd.DataFrame(columns, index=pd.RangeIndex(len(points)))], axis=1)

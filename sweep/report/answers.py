@@ -4,6 +4,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from sweep.report.blocks import Answers, Block, Cell, Section, Table, Words, figure, heads, row, verdict
+from sweep.report.decided import optimum_lines, ranges_lines
 from sweep.report.display import PERCENT, Scale, conversion, decimals_for, duration, reach, scale_for, share, temperature
 from sweep.report.prepare_window import limit_label, variable_scale
 from sweep.report.results import Results
@@ -213,7 +214,8 @@ def decides(results: Results) -> tuple[str, ...]:
 def section(results: Results) -> Section:
     """Return the page's first section."""
     asked = (
-        ("What to set", _set(results)), ("How long to run", _run(results)), ("Nearest limit", _nearest(results)),
+        ("What to set", _set(results)), ("Within which ranges", ranges_lines(results)), ("Best setting within the limits", optimum_lines(results)),
+        ("How long to run", _run(results)), ("Nearest limit", _nearest(results)),
         ("Operating window", _window(results)), ("If cooling fails at the worst moment", _failure(results)),
         ("With what probability the limits hold", risk(results)),
         ("What decides", decides(results)),

@@ -192,6 +192,61 @@ class Rankings:
 
 
 @dataclass(frozen=True)
+class ChanceField:
+    """The probability (%) that all limits hold over the window's plane, (n, m), and the levels of its contours."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    ground: Ground
+    values: Array
+    levels: tuple[float, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class RangeBar:
+    """One variable: places as shares of the range studied; studied, ends: what stands at the ends of that and of the acceptable range."""
+
+    label: str
+    set_point: float
+    normal: tuple[float, float] | None
+    acceptable: tuple[float, float]
+    alone: tuple[float, float] | None
+    studied: tuple[str, str]
+    ends: tuple[str, str]
+
+
+@dataclass(frozen=True)
+class RangeBars:
+    """The ranges of all variables, a bar each."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    rows: tuple[RangeBar, ...]
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Front:
+    """Two objectives of the settings that nothing betters in both, (N,) each; the set-point's, and whether it is acceptable."""
+
+    name: str
+    title: str
+    caption: str
+    description: str
+    labels: tuple[str, str]
+    x: Array
+    y: Array
+    set_point: tuple[float, float] | None
+    acceptable: bool
+    tables: dict[str, pd.DataFrame] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
 class Absent:
     """A figure that is not drawn, and why."""
 
@@ -200,4 +255,4 @@ class Absent:
     why: str
 
 
-Prepared = Curves | WindowMap | ContourMap | Facets | Rankings | Absent
+Prepared = Curves | WindowMap | ContourMap | Facets | Rankings | ChanceField | RangeBars | Front | Absent

@@ -94,7 +94,8 @@ def _crossed_ring(axes: Axes, x: float, y: float, **where: Any) -> None:
     axes.plot([x], [y], marker="+", markersize=9, color=INK, markeredgewidth=1.4, **where)
 
 
-def _set_point(axes: Axes, ground: Ground) -> None:
+def mark_set_point(axes: Axes, ground: Ground) -> None:
+    """Draw the set-point where it lies in the range mapped."""
     if ground.set_point is not None and within(ground):
         _crossed_ring(axes, *ground.set_point, zorder=6)
 
@@ -158,7 +159,8 @@ def _key(axes: Axes, window: WindowMap, present: list[int], unnamed: bool) -> No
         axes.text(1.15, top - 0.03, "set-point", transform=axes.transAxes, fontsize=LABEL, va="center")
 
 
-def _frame(axes: Axes, ground: Ground) -> None:
+def frame(axes: Axes, ground: Ground) -> None:
+    """Set the axes' range, labels and ticks."""
     axes.set_xlim(ground.x.min(), ground.x.max())
     axes.set_ylim(ground.y.min(), ground.y.max())
     axes.set_xlabel(wrap(ground.labels[0], 60))
@@ -173,7 +175,7 @@ def draw_window(window: WindowMap) -> Figure:
     figure = sheet(height)
     axes = figure.add_axes((0.78 / WIDTH, 0.58 / height, 4.6 / WIDTH, 4.25 / height))
     found = region(window)
-    _frame(axes, window.ground)
+    frame(axes, window.ground)
     _regions(axes, window, found)
     _edge(axes, window)
     clear = _clear(window.ground, found)
@@ -183,7 +185,7 @@ def draw_window(window: WindowMap) -> Figure:
         _name(axes, found, k, words(window.limits[k]), clear)
     if (found.kind == HOLDS).any():
         _name(axes, found, HOLDS, "every limit holds", clear)
-    _set_point(axes, window.ground)
+    mark_set_point(axes, window.ground)
     _arrows(axes, window)
     _key(axes, window, present, bool((found.kind == NO_VALUE).any()))
     axes.set_xlim(window.ground.x.min(), window.ground.x.max())
@@ -242,7 +244,7 @@ def draw_contours(contours: ContourMap) -> Figure:
     width = 2.95 if count == 2 else 4.6
     for k, field in enumerate(contours.fields):
         axes = figure.add_axes(((0.78 + k * (width + 0.5)) / WIDTH, 0.58 / height, width / WIDTH, (height - 1.1) / height))
-        _frame(axes, contours.ground)
+        frame(axes, contours.ground)
         axes.set_title(f"{field.title} ({field.unit})", fontsize=9.5, loc="left")
         if k:
             axes.set_ylabel("")
@@ -250,5 +252,5 @@ def draw_contours(contours: ContourMap) -> Figure:
         _contour(axes, contours.ground, field)
         for piece in contours.ground.boundaries:
             axes.plot(piece.x, piece.y, color=GREY, linewidth=3.2, alpha=0.75, zorder=2, solid_capstyle="butt")
-        _set_point(axes, contours.ground)
+        mark_set_point(axes, contours.ground)
     return figure

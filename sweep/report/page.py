@@ -8,13 +8,14 @@ from importlib.resources import files
 import jinja2
 from markupsafe import Markup
 
-from sweep.report import answers, deviations, findings, findings_chance, record
+from sweep.report import answers, deviations, findings, findings_chance, findings_decisions, record
 from sweep.report.blocks import Block, Picture, Section, Table, Words, table
 from sweep.report.curves import Absent, Curves, Prepared
 from sweep.report.results import Results
 
 PLACES = {"batch": ("batch_profile", "batch_time"), "window": ("window_map", "batch_time_map"), "failure": ("failure_diagram", "failure_path"),
-          "risk": ("exceedance",), "sensitivity": ("spread_halved", "variance_shares")}  # fmt: skip
+          "risk": ("exceedance",), "sensitivity": ("spread_halved", "variance_shares"),
+          "map": ("probability_map",), "ranges": ("acceptable_ranges",), "optimum": ("optimum_front",)}  # fmt: skip
 
 
 @lru_cache(maxsize=1)
@@ -49,7 +50,9 @@ def sections(results: Results, drawn: list[Prepared], svg: Mapping[str, bytes]) 
     return [
         answers.section(results), findings.batch_time(results, placed["batch"]), findings.window(results, placed["window"]),
         findings.failure(results, placed["failure"]), deviations.section(results), findings_chance.risk(results, placed["risk"]),
-        findings_chance.sensitivity(results, placed["sensitivity"]), record.inputs(results), record.not_assessed(results, drawn),
+        findings_chance.sensitivity(results, placed["sensitivity"]), findings_decisions.chance_map(results, placed["map"]),
+        findings_decisions.ranges(results, placed["ranges"]), findings_decisions.optimum(results, placed["optimum"]),
+        record.inputs(results), record.not_assessed(results, drawn),
         record.points(results), record.cautions(results), record.versions(results), record.signatures(),
     ]  # fmt: skip
 

@@ -52,7 +52,8 @@ def not_assessed(results: Results, drawn: list[Prepared]) -> Section:
     """Return what was not assessed, and the figures that are missing for it."""
     lines = [sentence(text) for text in results.summary.get("not_assessed") or ()]
     named = (("batch_time", "Batch time"), ("window", "Operating window"), ("failure", "Cooling failure"), ("risk", "Risk"),
-             ("sensitivity", "Sensitivity"))  # fmt: skip
+             ("sensitivity", "Sensitivity"),
+             ("probability_map", "Probability map"), ("ranges", "Acceptable ranges"), ("optimum", "Optimum"))  # fmt: skip
     lines += [line for name, said in named if (why := results.why_not(name)) and not _said(why, lines) and (line := sentence(f"{said}: {why}"))]
     left_out = "Left out by the model: mass transfer between phases, solids, imperfect mixing, heat of crystallisation. Emergency relief: not sized."
     figures = [sentence(f"{figure.title}: {figure.why}") for figure in drawn if isinstance(figure, Absent)]

@@ -17,6 +17,7 @@ TABLES = (
     "set_point_profile", "batch_time", "batch_time_map", "window_grid", "window_boundary",
     "failure_times", "failure_path", "limits", "failed_points", "inputs", "measured", "risk_limits", "risk_percentiles", "risk_exceedance",
     "risk_drivers", "sensitivity_screening", "sensitivity_shares", "sensitivity_local", "sensitivity_spread",
+    "probability_map", "ranges", "ranges_corners", "optimum_search", "optimum_front",
 )  # fmt: skip
 
 

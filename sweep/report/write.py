@@ -6,8 +6,8 @@ from pathlib import Path
 import pandas as pd
 
 from sweep.base.records import write_whole
-from sweep.report import prepare_batch, prepare_chance, prepare_failure, prepare_overlay, prepare_window
-from sweep.report.curves import Absent, ContourMap, Curves, Facets, Prepared, Rankings
+from sweep.report import prepare_batch, prepare_chance, prepare_decisions, prepare_failure, prepare_overlay, prepare_window
+from sweep.report.curves import Absent, ChanceField, ContourMap, Curves, Facets, Front, Prepared, RangeBars, Rankings
 from sweep.report.page import page
 from sweep.report.results import Results, read
 
@@ -15,12 +15,13 @@ BATCH = (prepare_batch.profile, prepare_failure.diagram, prepare_overlay.overlay
 ALL: tuple[Callable[[Results], Prepared], ...] = (
     prepare_batch.profile, prepare_batch.productivity, prepare_window.window, prepare_window.contours, prepare_failure.diagram, prepare_failure.path,
     prepare_chance.exceedance, prepare_chance.shares, prepare_chance.halved,
+    prepare_decisions.chance_map, prepare_decisions.bars, prepare_decisions.front,
 )  # fmt: skip
 
 
 def _ink(figure: Prepared) -> tuple[bytes, bytes]:
     """Return a figure's SVG and PNG; matplotlib is loaded here, and not before."""
-    from sweep.report import draw, draw_chance, draw_curves, draw_maps
+    from sweep.report import draw, draw_chance, draw_curves, draw_decisions, draw_maps
 
     with draw.style(figure.name):
         if isinstance(figure, Curves):
@@ -31,6 +32,12 @@ def _ink(figure: Prepared) -> tuple[bytes, bytes]:
             sheet = draw_chance.draw_facets(figure)
         elif isinstance(figure, Rankings):
             sheet = draw_chance.draw_rankings(figure)
+        elif isinstance(figure, ChanceField):
+            sheet = draw_decisions.draw_chance(figure)
+        elif isinstance(figure, RangeBars):
+            sheet = draw_decisions.draw_bars(figure)
+        elif isinstance(figure, Front):
+            sheet = draw_decisions.draw_front(figure)
         else:
             sheet = draw_maps.draw_window(figure)  # type: ignore[arg-type]
         ink = draw.finish(sheet)

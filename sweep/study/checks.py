@@ -5,7 +5,7 @@ from collections.abc import Mapping
 from itertools import product
 from typing import NamedTuple
 
-from sweep.study.model import FAILURE, Charge, Event, Feed, Limit, Reaction, Species, Target, Variable
+from sweep.study.model import FAILURE, Charge, Event, Feed, Limit, Objective, Reaction, Species, Target, Variable
 from sweep.study.reader import Reader
 
 _MOST_CORNERS = 5  # variables; beyond, only the set-point is looked at
@@ -62,11 +62,14 @@ def check_equilibria(reader: Reader, reactions: tuple[Reaction, ...]) -> None:
             reader.needed(f"{path}.equilibrium_constant.at", "an equilibrium moves with temperature, by van 't Hoff")
 
 
-def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Reaction, ...], target: Target | None) -> None:
-    """Fault limits without what they need."""
+def check_limits(
+    reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Reaction, ...], target: Target | None, objectives: tuple[Objective, ...] = ()
+) -> None:
+    """Fault limits and objectives without what they need."""
     decomposes = any(r.purpose == "decomposition" for r in reactions)
-    for whole in dict.fromkeys(limit.name for limit in limits):
-        path, name = f"limits.{whole}", whole.rpartition(".")[2]
+    places = {one.name: f"optimum.{one.sense}" for one in objectives if one.kind == "response"}
+    for whole, path in {**places, **{limit.name: f"limits.{limit.name}" for limit in limits}}.items():
+        name = whole.rpartition(".")[2]
         tested = "failure.td24" in reader.values and name in ("td24", "criticality_class")
         unread = any(f.key.startswith("reactions.") and f.key.endswith((".equation", ".orders")) for f in reader.faults)
         if name in ("tmr_ad", "td24", "criticality_class") and not decomposes and not tested and not unread:
@@ -79,7 +82,7 @@ def check_limits(reader: Reader, limits: tuple[Limit, ...], reactions: tuple[Rea
             reader.needed("vessel.volume", "productivity is per volume of vessel")
         if name in (*FAILURE, "accumulation", "cooling_duty", "heat_release"):
             for reaction in reactions:
-                reader.needed(f"reactions.{reaction.name}.heat.value", f"the limit {name} needs the heats")
+                reader.needed(f"reactions.{reaction.name}.heat.value", f"{name} needs the heats")
     horizon = reader.values["failure.horizon"]
     for name in {limit.name for limit in limits if limit.name.rpartition(".")[2] == "tmr_ad"}:
         bound = reader.values.get(f"limits.{name}.at_least")

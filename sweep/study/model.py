@@ -217,6 +217,59 @@ class SensitivitySettings:
 
 
 @dataclass(frozen=True)
+class Assurance:
+    """With which probability limits are to hold (None: nominally), judged with how many draws and with which confidence."""
+
+    probability: float | None
+    draws: int
+    confidence: float
+
+
+@dataclass(frozen=True)
+class MapSettings:
+    """The probability that all limits hold, over the window's axes. steps: of each axis; draws: the same at every node."""
+
+    steps: int
+    draws: int
+    confidence: float
+
+
+@dataclass(frozen=True)
+class RangesSettings:
+    """The largest box of acceptable ranges. variables: its sides; points: spread over it in the hunt for a counter-example."""
+
+    variables: tuple[str, ...]
+    assurance: Assurance
+    points: int
+
+
+@dataclass(frozen=True)
+class Objective:
+    """What is made least or largest. kind: "response" (of a column), "margin" (of the limit labelled `name`) or "cost"."""
+
+    name: str
+    sense: str
+    kind: str
+    column: str
+    unit: str
+
+
+@dataclass(frozen=True)
+class OptimumSettings:
+    """One objective or two. prices: species -> per mol, "vessel_time" -> per s, in `currency`; population, generations: of the search;
+    verify: fresh draws that judge the winner."""
+
+    objectives: tuple[Objective, ...]
+    variables: tuple[str, ...]
+    assurance: Assurance
+    verify: int
+    population: int
+    generations: int
+    prices: Mapping[str, float] = field(default_factory=dict)
+    currency: str = ""
+
+
+@dataclass(frozen=True)
 class Plan:
     """How the space is covered."""
 
@@ -322,6 +375,9 @@ class Study:
     correlations: tuple[Correlation, ...] = ()
     risk: RiskSettings | None = None
     sensitivity: SensitivitySettings | None = None
+    map: MapSettings | None = None
+    ranges: RangesSettings | None = None
+    optimum: OptimumSettings | None = None
 
     def without_failure(self) -> "Study":
         """Return this study without scenarios, the figures of a cooling failure and the limits on them, for what does not need them."""

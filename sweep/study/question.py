@@ -24,15 +24,15 @@ from sweep.study.model import (
 from sweep.study.reader import Reader
 from sweep.study.uncertain import difference_of, read_tolerance
 
-_PLAIN = {
+PLAIN = {
     "conversion": ("", "dimensionless"), "accumulation": ("", "dimensionless"), "criticality_class": ("", "dimensionless"),
     "max_temperature": ("_K", "temperature"), "mtsr": ("_K", "temperature"), "td24": ("_K", "temperature"),
     "mtt": ("_K", "temperature"), "tmr_ad": ("_s", "time"), "time_to_target": ("_s", "time"), "cycle_time": ("_s", "time"),
     "cooling_duty": ("_W", "power"), "heat_release": ("_W", "power"), "productivity": ("", "productivity"),
 }  # fmt: skip
-_BY_SPECIES = ("yield_", "per_product_", "fraction_")
+BY_SPECIES = ("yield_", "per_product_", "fraction_")
 TAKEN = frozenset(
-    (*_PLAIN, *(name + ending for name, (ending, _) in _PLAIN.items()), "status", "reason", "time_of_max_temperature_s", "mtsr_time_s",
+    (*PLAIN, *(name + ending for name, (ending, _) in PLAIN.items()), "status", "reason", "time_of_max_temperature_s", "mtsr_time_s",
      "tmr_ad_time_s", "tmr_ad_censored", "highest_conversion", "most_productive_time_s", "most_productive_conversion", "energy_balance_error")
 )  # fmt: skip
 
@@ -69,16 +69,16 @@ def read_target(reader: Reader, table: dict[str, Any] | None, names: set[str], b
     return Target(table["species"], table.get("product"))
 
 
-def _response(reader: Reader, name: str, counted: set[str], target: Target | None) -> tuple[str, str] | None:
+def response_of(reader: Reader, name: str, counted: set[str], target: Target | None) -> tuple[str, str] | None:
     """Return the column and the dimension of a response; `counted`: the species that are neither solvent nor gas."""
     if name == "productivity":
         mass = target is not None and f"species.{target.product}.molar_mass" in reader.values
         unit = "kg/m^3/s" if mass else "mol/m^3/s"
         return f"productivity_{'kg' if mass else 'mol'}_per_m3_s", unit
-    if name in _PLAIN:
-        ending, dimension = _PLAIN[name]
+    if name in PLAIN:
+        ending, dimension = PLAIN[name]
         return name + ending, dimension
-    for prefix in _BY_SPECIES:
+    for prefix in BY_SPECIES:
         if name.startswith(prefix) and name.removeprefix(prefix) in counted:
             of_itself = prefix == "per_product_" and target is not None and name.removeprefix(prefix) == target.product
             return None if of_itself else (name, "dimensionless")
@@ -88,14 +88,14 @@ def _response(reader: Reader, name: str, counted: set[str], target: Target | Non
 def columns_of(reader: Reader, species: tuple[Species, ...], target: Target | None) -> dict[str, str]:
     """Return the column of every response that can be named."""
     counted = {s.name for s in species if s.role is None}
-    names = ("productivity", *_PLAIN, *(p + s for p in _BY_SPECIES for s in sorted(counted)))
-    return {name: found[0] for name in names if (found := _response(reader, name, counted, target)) is not None}
+    names = ("productivity", *PLAIN, *(p + s for p in BY_SPECIES for s in sorted(counted)))
+    return {name: found[0] for name in names if (found := response_of(reader, name, counted, target)) is not None}
 
 
 def asked_of(scenarios: tuple[Scenario, ...], limits: tuple[Limit, ...]) -> tuple[Scenario, ...]:
     """Return the scenarios, each knowing whether a limit, or its worst moment, asks for a failure figure of it."""
     asked = {limit.name.split(".")[0] for limit in limits if limit.name.split(".")[-1] in FAILURE and "." in limit.name}
-    columns = {name + _PLAIN[name][0] for name in FAILURE}
+    columns = {name + PLAIN[name][0] for name in FAILURE}
     return tuple(replace(s, asks_failure=s.name in asked or s.worst in columns) for s in scenarios)
 
 
@@ -123,16 +123,16 @@ def read_limits(
             near = difflib.get_close_matches(scenario, sorted(scenarios), 1)
             reader.fault(path, scenario, near[0] if near else "a scenario of this study", f"[scenarios.{scenario}] is not written")
             continue
-        found = _response(reader, response, counted, target)
+        found = response_of(reader, response, counted, target)
         if found is not None and dot:
             found = f"{scenario}.{found[0]}", found[1]
         if found is None:
             if name == "max_pressure":
                 reader.fault(path, name, "a study without it", "not available yet")
                 continue
-            known = [*_PLAIN, *(p + s for p in _BY_SPECIES for s in sorted(counted) if _response(reader, p + s, counted, target))]
+            known = [*PLAIN, *(p + s for p in BY_SPECIES for s in sorted(counted) if response_of(reader, p + s, counted, target))]
             near = difflib.get_close_matches(response, known, 1)
-            reader.fault(path, name, near[0] if near else "one of " + ", ".join(_PLAIN), "no response has this name")
+            reader.fault(path, name, near[0] if near else "one of " + ", ".join(PLAIN), "no response has this name")
             continue
         if not isinstance(bounds, dict):
             reader.fault(path, repr(bounds), "{ at_most = ... } or { at_least = ... }", "a limit says on which side it stands")
@@ -157,7 +157,7 @@ def read_variables(reader: Reader, table: dict[str, Any]) -> tuple[Variable, ...
     for name, entry in reader.names(table, "variables").items():
         path = f"variables.{name}"
         reader.named.add(name)
-        if name in TAKEN or name.startswith(_BY_SPECIES):
+        if name in TAKEN or name.startswith(BY_SPECIES):
             reader.fault(path, name, "another name", "a response has this name")
         reader.only(entry, path, ("sets", "from", "to", "levels", "tolerance"))
         sets = entry.get("sets")

@@ -7,14 +7,14 @@ from typing import Any
 
 from sweep.base.errors import Fault, StudyError
 from sweep.base.records import digest
-from sweep.study import batch, checks, doubts, equipment, events, question, scenarios, substances, uncertain
+from sweep.study import batch, checks, decisions, doubts, equipment, events, question, scenarios, substances, uncertain
 from sweep.study.lines import lines_of
 from sweep.study.model import FAILURE, Study, Uncertain
 from sweep.study.reader import Reader
 
 _SECTIONS = ("study", "species", "reactions", "vessel", "cooling", "recipe", "events", "target", "limits", "variables",
              "accuracy", "plan", "window", "batch_time", "failure", "scenarios", "deviations", "uncertain", "correlations", "risk",
-             "sensitivity")  # fmt: skip
+             "sensitivity", "ranges", "optimum")  # fmt: skip
 _LARGEST_FILE = 4_000_000  # characters
 
 
@@ -102,13 +102,17 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     drawn = bool(inputs) or any(v.tolerance is not None for v in variables)
     risk = uncertain.read_risk(reader, given("risk"), drawn)
     sensitivity = uncertain.read_sensitivity(reader, given("sensitivity"), drawn, variables)
-    asks_failure = failure is not None or any(limit.name in FAILURE for limit in limits)
+    chance_map = decisions.read_map(reader, given("risk"), window, drawn)
+    ranges = decisions.read_ranges(reader, given("ranges"), variables, drawn)
+    optimum = decisions.read_optimum(reader, given("optimum"), variables, species, target, limits, drawn)
+    asked = (*(limit.name for limit in limits), *(one.name for one in (optimum.objectives if optimum else ())))
+    asks_failure = failure is not None or any(name in FAILURE for name in asked)
     asks_any = asks_failure or any(s.asks_failure for s in deviating)
     isothermal = {kind, *kinds} == {"isothermal"} and not asks_any
     why = "cooling failure needs an energy balance" if asks_any else f"a cooling of kind {kind} needs an energy balance"
     checks.check_thermal(reader, species, reactions, isothermal, why)
     checks.check_equilibria(reader, reactions)
-    checks.check_limits(reader, limits, reactions, target)
+    checks.check_limits(reader, limits, reactions, target, optimum.objectives if optimum else ())
     for several in (happens, *(s.events for s in deviating)):
         checks.check_conditions(reader, several, reactions, target, {kind, *kinds})
     checks.check_heat_capacities(reader, species, variables)
@@ -126,6 +130,7 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
         target=target, limits=limits, variables=variables, plan=plan, window=window, batch_time=batch_time, failure=failure,
         values=reader.values, units=reader.units, dimensions=reader.dimensions, bounds=reader.bounds, asks_failure=asks_failure,
         warnings=tuple(reader.warnings), scenarios=deviating, uncertain=inputs, correlations=correlations, risk=risk, sensitivity=sensitivity,
+        map=chance_map, ranges=ranges, optimum=optimum,
     )  # fmt: skip
 
 

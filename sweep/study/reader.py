@@ -13,7 +13,7 @@ from sweep.study.lines import line_of
 from sweep.study.model import HOTTEST, Bound, differs, unset
 
 _PLANNED = """
-    ranges optimum fit vessels
+    fit vessels
     recipe.phases rate pressure max_pressure
 """
 LATER = frozenset(_PLANNED.split())  # keys that are planned and not there

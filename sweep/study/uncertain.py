@@ -280,7 +280,7 @@ def _possible(reader: Reader, found: tuple[Correlation, ...]) -> None:
         reader.fault("correlations", given, f"a possible matrix; the nearest: {said}", "no inputs can be correlated so all at once")
 
 
-def _whole(reader: Reader, table: dict[str, Any], place: str, default: int, least: int, power: bool = False) -> int:
+def whole(reader: Reader, table: dict[str, Any], place: str, default: int, least: int, power: bool = False) -> int:
     """Return a whole number from `least` to ten million, a power of two where asked."""
     value = table.get(place.rpartition(".")[2], default)
     if not isinstance(value, int) or isinstance(value, bool) or not least <= value <= 10_000_000:
@@ -292,7 +292,7 @@ def _whole(reader: Reader, table: dict[str, Any], place: str, default: int, leas
     return value
 
 
-def _confidence(reader: Reader, table: dict[str, Any], place: str) -> float:
+def confidence(reader: Reader, table: dict[str, Any], place: str) -> float:
     value = table.get("confidence", 0.95)
     if isinstance(value, bool) or not isinstance(value, (int, float)) or not 0.5 <= value < 1.0:
         reader.fault(f"{place}.confidence", repr(value), "a number from 0.5 to below 1", "an interval holds the truth with this probability")
@@ -304,14 +304,14 @@ def read_risk(reader: Reader, table: dict[str, Any] | None, drawn: bool) -> Risk
     """Return how risk is computed. drawn: something is uncertain."""
     if table is None:
         return None
-    reader.only(table, "risk", ("draws", "sampling", "confidence", "interval", "rare", "rare_draws"))
+    reader.only(table, "risk", ("draws", "sampling", "confidence", "interval", "rare", "rare_draws", "map"))
     if not drawn and not reader.uncertain:
         reader.fault("risk", "nothing uncertain", "[uncertain], or a variable with a tolerance", "without either nothing is at risk")
     sampling = reader.choice(table, "risk", "sampling", SAMPLINGS, "latin-hypercube")
     return RiskSettings(
-        _whole(reader, table, "risk.draws", 4096, 16, sampling == "sobol"), sampling, _confidence(reader, table, "risk"),
+        whole(reader, table, "risk.draws", 4096, 16, sampling == "sobol"), sampling, confidence(reader, table, "risk"),
         reader.choice(table, "risk", "interval", ("wilson", "clopper-pearson"), "wilson"),
-        reader.choice(table, "risk", "rare", ("together", "each", "none"), "together"), _whole(reader, table, "risk.rare_draws", 1000, 100),
+        reader.choice(table, "risk", "rare", ("together", "each", "none"), "together"), whole(reader, table, "risk.rare_draws", 1000, 100),
     )  # fmt: skip
 
 
@@ -326,6 +326,6 @@ def read_sensitivity(reader: Reader, table: dict[str, Any] | None, drawn: bool, 
     if over == "variables" and not variables and not reader.named:
         reader.fault("sensitivity", "nothing to vary", "[uncertain] or [variables]", "a sensitivity is to something")
     return SensitivitySettings(
-        over, _whole(reader, table, "sensitivity.trajectories", 20, 4), _whole(reader, table, "sensitivity.blocks", 512, 16, True),
-        _whole(reader, table, "sensitivity.draws", 1024, 16), _confidence(reader, table, "sensitivity"),
+        over, whole(reader, table, "sensitivity.trajectories", 20, 4), whole(reader, table, "sensitivity.blocks", 512, 16, True),
+        whole(reader, table, "sensitivity.draws", 1024, 16), confidence(reader, table, "sensitivity"),
     )  # fmt: skip

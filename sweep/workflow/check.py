@@ -7,7 +7,7 @@ from sweep.plan import planned
 from sweep.plan.draws import log_sd
 from sweep.plant.told_events import cause_of, effect_of, set_of
 from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
-from sweep.study.model import Correlation, Limit, Study, Tolerance, Uncertain, Variable
+from sweep.study.model import Assurance, Correlation, Limit, Study, Tolerance, Uncertain, Variable
 
 _SENSE = {"at_most": "at most", "at_least": "at least"}
 
@@ -155,3 +155,16 @@ def _asked(study: Study) -> Iterator[str]:
     if study.sensitivity is not None:
         what = "the uncertain inputs" if study.sensitivity.over == "uncertain" else "the variables, over their ranges"
         yield f"sensitivity to {what}: {study.sensitivity.trajectories} trajectories, {study.sensitivity.blocks:,} blocks"
+    if study.map is not None:
+        yield f"probability map: {study.map.steps} steps each way, {study.map.draws:,} draws"
+    if study.ranges is not None:
+        yield f"acceptable ranges of {', '.join(study.ranges.variables)}, limits holding {_sure(study.ranges.assurance)}"
+    if study.optimum is not None:
+        aims = " and ".join(f"{one.sense} {'margin_' if one.kind == 'margin' else ''}{one.name}" for one in study.optimum.objectives)
+        yield f"optimum: {aims} over {', '.join(study.optimum.variables)}, limits holding {_sure(study.optimum.assurance)}"
+
+
+def _sure(assurance: Assurance) -> str:
+    if assurance.probability is None:
+        return "nominally"
+    return f"with a probability of {assurance.probability:g} ({assurance.draws:,} draws, confidence {assurance.confidence:g})"

@@ -11,18 +11,23 @@ import pandas as pd
 
 from sweep.analysis import statements
 from sweep.analysis.batch_time import best_batch_time
+from sweep.analysis.chance_map import assess_map
 from sweep.analysis.deviations import look_at_deviations
 from sweep.analysis.failure import fail_cooling
+from sweep.analysis.optimum import assess_optimum
 from sweep.analysis.overview import overlook
+from sweep.analysis.ranges import assess_ranges
 from sweep.analysis.risk import assess_risk
 from sweep.analysis.sensitivity import assess_sensitivity
 from sweep.analysis.set_point import SetPoint, look_at_set_point
 from sweep.analysis.window import window
 from sweep.base.records import canonical
+from sweep.chance import Memory
 from sweep.plan import planned
 from sweep.plant import limits, margins
 from sweep.runner import Store, Watcher, checked_address, read_manifest, read_points, simulate, sweep_points
 from sweep.study.model import Study
+from sweep.workflow.memory import FolderMemory
 from sweep.workflow.results import as_csv, folder_of
 
 SCHEMA = 1
@@ -128,6 +133,9 @@ class _Steps:
         blocks["deviations"] = self._deviations()
         blocks["risk"] = self._risk()
         blocks["sensitivity"] = self._sensitivity()
+        blocks["probability_map"] = self._map()
+        blocks["ranges"] = self._ranges()
+        blocks["optimum"] = self._optimum()
         self.store.add("analyses/inputs.csv", as_csv(statements.inputs(study)))
         warnings = [f"{w.key}: {w.found}; expected {w.expected}; {w.because}" for w in study.warnings]
         return {
@@ -171,6 +179,32 @@ class _Steps:
         if self.study.sensitivity is None:
             return {"not_assessed": "the study has no [sensitivity]"}
         return self._kept("sensitivity", "sensitivity", lambda: assess_sensitivity(self._judged, self._judge))
+
+    def _searched(self, name: str, title: str, find: Callable[[Memory], Found]) -> dict[str, Any]:
+        """Return the block of a long search, which goes on where it was interrupted."""
+        memory = FolderMemory(self.store.folder / "searches" / name)
+        block = self._kept(name, title, lambda: find(memory))
+        memory.forget()
+        return block
+
+    def _map(self) -> dict[str, Any]:
+        if self.study.map is None:
+            return {"not_assessed": "the study asks for no map in [risk]"}
+        if not limits(self.study):
+            return {"not_assessed": "the study has no limits and no target, which could hold with a probability"}
+        return self._searched("probability_map", "probability map", lambda memory: assess_map(self.study, self._evaluate, memory))
+
+    def _ranges(self) -> dict[str, Any]:
+        if self.study.ranges is None:
+            return {"not_assessed": "the study has no [ranges]"}
+        if not limits(self.study):
+            return {"not_assessed": "the study has no limits and no target: every setting is acceptable"}
+        return self._searched("ranges", "acceptable ranges", lambda memory: assess_ranges(self.study, self._evaluate, memory))
+
+    def _optimum(self) -> dict[str, Any]:
+        if self.study.optimum is None:
+            return {"not_assessed": "the study has no [optimum]"}
+        return self._searched("optimum", "optimum", lambda memory: assess_optimum(self.study, self._evaluate, memory))
 
 
 def stored(folder: str | Path) -> dict[str, Any] | None:

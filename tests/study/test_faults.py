@@ -383,8 +383,6 @@ def test_fault(case):
 
 
 LATER = {
-    "ranges": "[ranges]",
-    "optimum": "[optimum]\nminimise = 'cycle_time'",
     "fit": "[fit]",
 }
 

@@ -140,7 +140,7 @@ CASES = {
     "beyond the horizon": ('"24 h" }', '"60 d" }', "limits.tmr_ad.at_least", "beyond the horizon"),
     "no product": ('product    = "amide"', "", "limits.per_product_diamide", "it counts on the product"),
     "unknown limit": ("cooling_duty  ", "coling_duty  ", "limits.coling_duty", "no response has this name"),
-    "later section": ("[accuracy]", "[ranges]\n[accuracy]", "ranges", "not available yet"),
+    "later section": ("[accuracy]", "[vessels]\n[accuracy]", "vessels", "not available yet"),
     "later limit": (
         "[limits]",
         '[limits]\nmax_pressure = { at_most = "2 bar" }',

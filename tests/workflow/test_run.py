@@ -9,6 +9,7 @@ import pandas as pd
 import pytest
 
 import sweep
+import sweep.workflow.run as workflow
 from sweep.analysis.set_point import look_at_set_point
 from sweep.study import read_text
 from sweep.workflow.run import run
@@ -47,7 +48,37 @@ trajectories = 4
 blocks = 16
 draws = 32
 """
+DECIDE = """
+[ranges]
+points = 16
+[optimum]
+maximise = "productivity"
+generations = 2
+population = 8
+"""
+CHANCE = """
+[ranges]
+probability = 0.5
+draws = 16
+points = 16
+[optimum]
+minimise = ["cycle_time", "per_product_S"]
+probability = 0.5
+draws = 16
+verify = 64
+generations = 1
+population = 8
+[risk.map]
+steps = 10
+draws = 16
+"""
+MILD = _cut(QUICK, "[failure]").replace('mtsr = { at_most = "85 degC" }', "")  # without the figures of a failure: quick to march
 WHOLE = {
+    "decisions": QUICK + DECIDE,
+    "decisions with a probability": MILD + UNCERTAIN + CHANCE,
+    "decisions without limits": _cut(QUICK, "[limits]", "[target]", "[batch_time]") + DECIDE.replace('"productivity"', '"heat_release"'),
+    "nothing to decide": MILD.replace("62 degC", "26 degC") + DECIDE,
+    "nothing to decide with a probability": MILD.replace("62 degC", "26 degC") + UNCERTAIN + CHANCE,
     "uncertain": QUICK + UNCERTAIN,
     "uncertain without target": _cut(QUICK, "[target]", "[batch_time]") + UNCERTAIN,
     "uncertain without limits": _cut(QUICK, "[limits]", "[target]", "[batch_time]") + UNCERTAIN,
@@ -76,6 +107,39 @@ def test_summary_keeps_its_schema_whatever_is_asked(tmp_path, schema, name):
     jsonschema.validate(written, schema)
     assert written["points"]["planned"] == sum(len(t) for t in found.points())
     assert written["not_assessed"]
+
+
+def test_decisions_are_the_same_bytes_whatever_interrupts_them(tmp_path, monkeypatch):
+    """Cut off in each long search, and gone on with: the answers of an undisturbed run, and nothing of the searches is left."""
+    study = read_text(MILD + UNCERTAIN + CHANCE)
+    run(study, tmp_path / "whole", workers=1, figures=False)
+    calls = {"count": 0}
+
+    def cut_off(find):
+        def found(study, evaluate, memory):
+            def sometimes(points):
+                calls["count"] += 1
+                if calls["count"] % 7 == 0:
+                    raise KeyboardInterrupt
+                return evaluate(points)
+
+            return find(study, sometimes, memory)
+
+        return found
+
+    for name in ("assess_map", "assess_ranges", "assess_optimum"):
+        monkeypatch.setattr(f"sweep.workflow.run.{name}", cut_off(getattr(workflow, name)))
+    for _ in range(200):
+        try:
+            run(study, tmp_path / "cut", workers=1, figures=False)
+            break
+        except KeyboardInterrupt:
+            continue
+    assert calls["count"] > 14
+    assert (tmp_path / "whole" / "summary.json").read_bytes() == (tmp_path / "cut" / "summary.json").read_bytes()
+    for name in ("ranges", "ranges_corners", "optimum_search", "optimum_front", "probability_map"):
+        assert (tmp_path / "whole" / "analyses" / f"{name}.csv").read_bytes() == (tmp_path / "cut" / "analyses" / f"{name}.csv").read_bytes()
+    assert not (tmp_path / "cut" / "searches").exists()
 
 
 def test_uncertain_answers_are_the_same_bytes_for_any_number_of_workers(tmp_path):
@@ -160,7 +224,7 @@ def test_window_of_each_demo_is_bounded_by_four_limits():
     from sweep.plant import limits, margins
 
     for file in Path("studies").glob("*.toml"):
-        study = sweep.read_study(file)
+        study = sweep.read_study(file).judged()
         block = window(study, partial(sweep.simulate, study), margins, limits(study)).summary()
         assert block["set_point"]["holds"], file
         assert len(block["limits_binding"]) >= 4, (file, block["limits_binding"])
