@@ -46,7 +46,8 @@ def _watch(study: Study, structure: Structure, when: Condition, back: bool) -> W
 
 
 class _Search:
-    """Events by condition while they are sought. armed, fired (N, C): ready to fire; how often it has; arms (N, C) s: when it will be."""
+    """Events by condition while they are sought. armed, fired (N, C): ready to fire; how often it has; arms (N, C) s: when it will be;
+    end (N,) s: when the batch ends as far as is known, NaN where it ends at its target."""
 
     def __init__(self, study: Study, values: Values, happened: Happenings) -> None:
         self.study, self.values, self.happened = study, values, happened
@@ -56,7 +57,7 @@ class _Search:
         shape = (values.count, len(self.events))
         waits = np.array([bool(study.events[k].after) for k in self.events], dtype=bool)
         self.armed, self.fired = np.broadcast_to(~waits, shape).copy(), np.zeros((values.count, len(study.events)), dtype=int)
-        self.arms = np.full(shape, np.inf)
+        self.arms, self.end = np.full(shape, np.inf), np.full(values.count, np.nan)
         self.columns: dict[tuple[int, int], int] = {}  # event and how often it fired before -> its column among the happenings
         every = np.arange(values.count)
         for h, k in enumerate(happened.columns):
@@ -115,6 +116,8 @@ class _Search:
                 self.happened = with_fired(self.happened, k, never, never)
         place = np.array([self.columns[(k, int(times))] for times in before], dtype=int)
         acts = time + self.values.get(f"{self.study.events[k].path}.delay")[rows]
+        if any(path.endswith(".rate_factor") for path in self.study.events[k].sets):
+            acts = np.where(acts > self.end[rows], np.inf, acts)  # a batch that is over takes no more feed, and its end does not move
         self.happened.fired[rows, place] = time
         self.happened.when[rows, place] = acts
         self.fired[rows, k] += 1
@@ -147,6 +150,7 @@ def _search(study: Study, values: Values, happened: Happenings) -> Happenings:
         every = np.arange(rows.size)
         blocks, constants = cut_segments(plant, every, time, time + span), passive_constants(plant, every, span)
         out = march(plant.program, blocks, state, constants, None, tolerance, levels=search.levels(plant, rows))
+        search.end[rows] = plant.constants[:, at.END_FIXED]
         met, done = out.out[:, at.OUT_EVENT].astype(int), out.out[:, at.OUT_STATUS] == DONE
         hit = going & (met >= 0)
         kept = hit | (going & done & (following <= stop))

@@ -4,8 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, replace
-
-import pandas as pd
+from typing import TYPE_CHECKING
 
 from sweep.plant.course import charge_plant
 from sweep.plant.deviation import under
@@ -15,6 +14,9 @@ from sweep.plant.responses import deviate, table_of
 from sweep.plant.sense import one_point
 from sweep.plant.values import Values
 from sweep.study.model import Condition, Event, Scenario, Study
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 LEVELS = {"MTT": "failure.mtt", "limit max_temperature": "limits.max_temperature.at_most"}
 
@@ -35,6 +37,8 @@ class Deviated:
 
 def deviations_of(study: Study, point: Mapping[str, float] | None = None) -> tuple[Deviated, ...]:
     """Return the batch as written, and under each scenario in the study's order; failure figures where the study asks for them."""
+    import pandas as pd
+
     values, index = one_point(study, point), pd.RangeIndex(1)
     table, end = table_of(replace(study, scenarios=()), values, index)
     found = [_one(study, None, values, table)]

@@ -131,7 +131,7 @@ def plant_of(
         if slowed:
             terms = chemistry.rate_terms(study, here, heats, structure.rate_terms)
             block[:, program.integers[at.BLOCK_RATE] : program.integers[at.BLOCK_HEAT]] = _flat(terms)
-        was, begin = kind, stop
+        was, begin = np.where(stop > begin, kind, was), stop  # a segment of no length hands on what it follows
     starts = np.zeros((n, structure.rows))
     nz = structure.sources.shape[0]
     if not extents:

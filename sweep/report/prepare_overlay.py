@@ -40,7 +40,12 @@ def _panels(table: pd.DataFrame, name: str) -> list[Panel]:
     both = (Line("measured", scale.of(_joined(seconds, measured))), Line("model", scale.of(model)))
     label = said[:1].upper() + said[1:]
     gap = Line("measured less model", _joined(seconds, residual) * scale.factor)
-    return [Panel(f"{label} ({scale.unit})", both), Panel(f"Difference ({scale.step})", (gap,))]
+    step = "points" if scale is PERCENT else scale.step  # room is short beside a panel
+    return [Panel(f"{label} ({scale.unit})", both), Panel(f"Difference ({step})", (gap,))]
+
+
+def _unit(panel: Panel) -> str:
+    return panel.label.rsplit("(", 1)[-1].rstrip(")")
 
 
 def overlay(results: Results) -> Curves | Absent:
@@ -49,13 +54,15 @@ def overlay(results: Results) -> Curves | Absent:
     if table is None:
         return Absent(*OVERLAY, "no measured batch was given")
     names = [str(column).removesuffix("_measured") for column in table.columns if str(column).endswith("_measured")]
-    panels = [panel for name in names for panel in _panels(table, name)]
+    drawn = {name: _panels(table, name) for name in names}
+    panels = [panel for several in drawn.values() for panel in several]
     if not panels:
         return Absent(*OVERLAY, "no measured moment lies within the batch")
     seconds = table["time_s"].to_numpy(dtype=np.float64)
     scale = axis_times(float(seconds[-1] - seconds[0]))
     x = scale.of(seconds)
-    numbers = pd.DataFrame({f"time ({scale.unit})": x} | {f"{panel.label}: {line.name}": line.y for panel in panels for line in panel.lines})
+    columns = {f"{_scale(name)[0]}: {line.name} ({_unit(panel)})": line.y for name in names for panel in drawn[name] for line in panel.lines}
+    numbers = pd.DataFrame({f"time ({scale.unit})": x} | columns)
     caption = "Measured values, joined by straight lines, and the batch computed at the same moments; below each their difference."
     description = f"{len(panels)} panels over time: measured and computed values and their difference."
     return Curves(*OVERLAY, caption, description, f"Time since the start of the batch ({scale.unit})", x, tuple(panels), (), numbers)

@@ -386,6 +386,13 @@ class Study:
         kept = tuple(limit for limit in self.limits if limit.name not in FAILURE and "." not in limit.name)
         return replace(self, failure=None, asks_failure=False, limits=kept, scenarios=())
 
+    def judged(self) -> "Study":
+        """Return this study with those scenarios only that a limit names: what a search for where the limits hold has to march."""
+        from dataclasses import replace
+
+        named = {limit.name.partition(".")[0] for limit in self.limits if "." in limit.name}
+        return replace(self, scenarios=tuple(s for s in self.scenarios if s.name in named))
+
     def under(self, scenario: Scenario, asks_failure: bool | None = None) -> "Study":
         """Return this study with a scenario's events beside its own, and no scenarios; `asks_failure`: unlike its limits ask."""
         from dataclasses import replace

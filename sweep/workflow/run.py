@@ -90,9 +90,13 @@ class _Steps:
     def __init__(self, store: Store, study: Study, workers: int | None, say: Teller) -> None:
         self.store, self.study, self.workers, self.say = store, study, workers, say
         self._seen: SetPoint | None = None
+        self._judged = study.judged()
 
     def _evaluate(self, points: pd.DataFrame) -> pd.DataFrame:
         return simulate(self.study, points, self.workers, self.store.broke_off)
+
+    def _judge(self, points: pd.DataFrame) -> pd.DataFrame:
+        return simulate(self._judged, points, self.workers)
 
     def _kept(self, name: str, title: str, find: Callable[[], Found]) -> dict[str, Any]:
         """Return an analysis' block, from the manifest where its tables are there whole."""
@@ -152,7 +156,7 @@ class _Steps:
             return {"not_assessed": "the study has no [window]"}
         if not limits(self.study):
             return {"not_assessed": "the study has no limits and no target: there is nothing that a window could hold"}
-        return self._kept("window", "operating window", lambda: window(self.study, self._evaluate, margins, limits(self.study)))
+        return self._kept("window", "operating window", lambda: window(self._judged, self._judge, margins, limits(self._judged)))
 
     def _failure(self) -> dict[str, Any]:
         if not self.study.asks_failure:
@@ -167,12 +171,12 @@ class _Steps:
     def _risk(self) -> dict[str, Any]:
         if self.study.risk is None:
             return {"not_assessed": "the study has no [risk]"}
-        return self._kept("risk", "risk at the set-point", lambda: assess_risk(self.study, self._evaluate))
+        return self._kept("risk", "risk at the set-point", lambda: assess_risk(self._judged, self._judge))
 
     def _sensitivity(self) -> dict[str, Any]:
         if self.study.sensitivity is None:
             return {"not_assessed": "the study has no [sensitivity]"}
-        return self._kept("sensitivity", "sensitivity", lambda: assess_sensitivity(self.study, self._evaluate))
+        return self._kept("sensitivity", "sensitivity", lambda: assess_sensitivity(self._judged, self._judge))
 
     def _searched(self, name: str, title: str, find: Callable[[Memory], Found]) -> dict[str, Any]:
         """Return the block of a long search, which goes on where it was interrupted."""

@@ -334,3 +334,18 @@ def test_a_reset_that_is_armed_by_its_trip_each_time():
     expected = [(0, up), (1, up + down), (0, up + down + again), (1, up + 2.0 * down + again)]
     assert [k for k, _ in expected] == [k for k, _ in found[:4]]
     assert [t for _, t in expected] == pytest.approx([t for _, t in found[:4]], rel=1e-7)
+
+
+def test_a_batch_that_is_over_takes_no_more_feed():
+    """Stopped by the level at 30 min; what would start it again comes only after the batch's end, though the march goes on beyond it."""
+    text = FED.replace('kind = "adiabatic"', 'kind = "coolant"\ntemperature = "20 degC"\n[vessel]\nU = "300 W/m2/K"\narea = "1 m2"')
+    text = text.replace("[accuracy]", '[batch_time]\nlongest = "9 h"\n[accuracy]') + (
+        event('name = "full"\nwhen = { volume = { above = "1.2 m3" } }', '"recipe.feeds.b.rate_factor" = 0')
+        + event('after = "full"\nwhen = { temperature = { below = "30 degC" } }', '"recipe.feeds.b.rate_factor" = 1')
+    )
+    study = read_text(text)
+    row = evaluate(study, pd.DataFrame(index=[0])).iloc[0]
+    assert 3600.0 == row["cycle_time_s"]
+    line = profile(study, {}, [32_000.0]).iloc[0]
+    assert line["temperature_K"] < 303.15
+    assert 1.2 == pytest.approx(line["volume_m3"], rel=1e-12)

@@ -1,5 +1,6 @@
 """Events by condition in whole studies: the same as a recipe with the times written, for any cut of the table, and seen by every figure."""
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -87,3 +88,46 @@ def test_conditions_on_what_reacts(name):
     line = profile(study, {}, [one.met]).iloc[0]
     value = {"conversion": line["conversion"], "c_amide": line["n_amide_mol"] / line["volume_m3"], "n_amine": line["n_amine_mol"]}[name]
     assert {"conversion": 0.5, "c_amide": 500.0, "n_amine": 2000.0}[name] == pytest.approx(value, rel=1e-6)
+
+
+def test_a_kind_of_cooling_switched_by_a_condition():
+    """Adiabatic until 47 degC, then a cold jacket that starts at its own temperature; its warming is looked for from there on."""
+    events = (
+        '[[events]]\nname = "warm"\nwhen = { temperature = { above = "47 degC" } }\n'
+        'set = { "cooling.kind" = "jacket", "cooling.start" = "10 degC" }\n'
+        '[[events]]\nafter = "warm"\nwhen = { jacket_temperature = { above = "14 degC" } }\nset = { "vessel.U" = { times = 0.5 } }\n'
+        '[[events]]\nwhen = { cooling_duty = { above = "20 kW" } }\nset = { "vessel.stirrer_power" = "1 kW" }\n'
+    )
+    text = TEXT.replace('kind      = "jacket"', 'kind      = "adiabatic"').replace("[target]", events + "[target]")
+    text = text.replace('flow      = "9 m3/h"', 'flow      = "0.5 m3/h"')
+    study = read_text(text)
+    met = {one.event: one.met for one in events_of(study) if one.met is not None}
+    assert {0, 1, 2, 3} == set(met)
+    assert met[0] <= met[2] < met[1]
+    lines = profile(study, {}, [met[0], met[1], met[2] - 1e-3, met[2] + 60.0])
+    assert 320.15 == pytest.approx(lines["temperature_K"][0], abs=1e-6)
+    assert 283.15 == pytest.approx(lines["jacket_temperature_K"][0], abs=1e-6)
+    assert 287.15 == pytest.approx(lines["jacket_temperature_K"][1], abs=1e-5)
+    assert evaluate(study, pd.DataFrame(index=[0]))["energy_balance_error"][0] < 1e-6
+
+
+def test_every_condition_of_the_demo_is_met_at_its_level():
+    """Under each of its scenarios: what the search found is what the batch, marched as it went, has at that moment."""
+    from sweep.plant import deviations_of
+
+    text = Path("studies/nitration.toml").read_text(encoding="utf-8").replace("usual = true", 'usual = true\nat = "4.25 h"')
+    study = read_text(text)
+    plain = replace(study.without_failure(), scenarios=study.scenarios)
+    seen = 0
+    for one in deviations_of(plain):
+        for fired in one.fired:
+            event = one.study.events[fired.event]
+            if event.when is None or fired.met is None or one.scenario is None or one.scenario.sets or one.scenario.worst or one.scenario.feed:
+                continue
+            line = profile(plain.under(one.scenario), {}, [fired.met]).iloc[0]
+            value = {"temperature": line["temperature_K"], "conversion": line["conversion"]}[event.when.quantity]
+            level = study.values[event.when.path]
+            inside = value >= level - 1e-6 if event.when.sense == "above" else value <= level + 1e-6
+            assert inside, (one.scenario.name, event)
+            seen += abs(value - level) < 1e-5 * level
+    assert seen >= 8

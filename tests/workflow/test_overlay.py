@@ -46,6 +46,10 @@ def test_residuals_are_those_put_in(measured, tmp_path):
     assert 61 == lines["temperature_K"]["values"]
     assert 31 == lines["conversion"]["values"]
     assert (tmp_path / "batch/figures/measured.svg").is_file()
+    drawn = pd.read_csv(tmp_path / "batch/figures/measured.csv")
+    assert 1 + 3 * 5 == drawn.shape[1]
+    assert drawn["jacket temperature: measured less model (K)"].abs().max() < 1e-6
+    assert drawn["heat release: measured (kW)"].notna().all()
     table = pd.read_csv(tmp_path / "batch/analyses/measured.csv")
     assert 63 == len(table)
     assert {"temperature_K_measured", "temperature_K_model", "temperature_K_residual"} <= set(table.columns)

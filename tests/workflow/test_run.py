@@ -224,7 +224,7 @@ def test_window_of_each_demo_is_bounded_by_four_limits():
     from sweep.plant import limits, margins
 
     for file in Path("studies").glob("*.toml"):
-        study = sweep.read_study(file)
+        study = sweep.read_study(file).judged()
         block = window(study, partial(sweep.simulate, study), margins, limits(study)).summary()
         assert block["set_point"]["holds"], file
         assert len(block["limits_binding"]) >= 4, (file, block["limits_binding"])
