@@ -83,30 +83,33 @@ def table_of(sides: tuple[Side, ...], points: Floats) -> pd.DataFrame:
     return pd.DataFrame(columns)
 
 
-def inward(sides: tuple[Side, ...], low: Floats, high: Floats) -> tuple[Floats, Floats]:
-    """Return ranges (D,) whose ends are round numbers in the written units, none outside the given ones and none beyond the set-point."""
+def inward(
+    sides: tuple[Side, ...], low: Floats, high: Floats, core: tuple[Floats, Floats] | None = None
+) -> tuple[Floats, Floats]:
+    """Return ranges (D,) whose ends are round numbers in the written units, none outside the given ones and none within the core (low, high), by
+    default the set-point."""
     low, high = np.where(low < _NOTHING, 0.0, low), np.where(high > 1.0 - _NOTHING, 1.0, high)
-    centre, ends = centre_of(sides), np.empty((len(sides), 2))
+    inner, ends = core or (centre_of(sides), centre_of(sides)), np.empty((len(sides), 2))
     for k, side in enumerate(sides):
-        found = _rounded(side, *(side.at(float(share)) for share in (low[k], high[k])))
+        found = _rounded(side, *(side.at(float(share)) for share in (low[k], high[k])), *(side.at(float(part[k])) for part in inner))
         ends[k] = [side.share(value) for value in found]
-    return np.maximum(np.minimum(ends[:, 0], centre), low), np.minimum(np.maximum(ends[:, 1], centre), high)
+    return np.maximum(np.minimum(ends[:, 0], inner[0]), low), np.minimum(np.maximum(ends[:, 1], inner[1]), high)
 
 
 def nearby(sides: tuple[Side, ...], point: Floats, finer: int) -> Floats:
     """Return round settings around a point (D,), each side rounded down and up, (2^D, D); finer: by how many digits."""
     from itertools import product
 
-    pairs = [[_step(side, side.at(float(x)), finer, turn) for turn in (math.floor, math.ceil)] for side, x in zip(sides, point, strict=True)]
+    pairs = [[stepped(side, side.at(float(x)), finer, turn) for turn in (math.floor, math.ceil)] for side, x in zip(sides, point, strict=True)]
     return np.unique(np.array(list(product(*pairs))), axis=0)
 
 
 def snapped(sides: tuple[Side, ...], points: Floats) -> Floats:
     """Return points (M, D) moved to the nearest round settings."""
-    return np.array([[_step(side, side.at(float(x)), 0, round) for side, x in zip(sides, point, strict=True)] for point in points])
+    return np.array([[stepped(side, side.at(float(x)), 0, round) for side, x in zip(sides, point, strict=True)] for point in points])
 
 
-def _step(side: Side, value: float, finer: int, turn: Callable[[float], float]) -> float:
+def stepped(side: Side, value: float, finer: int, turn: Callable[[float], float]) -> float:
     """Return the coordinate of a value moved to a multiple of a power of ten, of at most a two-hundredth of the range, in its written unit."""
     width = abs(side.shown(side.variable.high) - side.shown(side.variable.low))
     power = math.floor(math.log10(width / 200.0)) - finer
@@ -114,20 +117,20 @@ def _step(side: Side, value: float, finer: int, turn: Callable[[float], float]) 
     return side.share(min(max(side.si(float(f"{number:.12g}")), side.variable.low), side.variable.high))
 
 
-def _rounded(side: Side, low: float, high: float) -> tuple[float, float]:
-    """Return both ends (SI) rounded inwards to a power of ten of at most a fiftieth of the width, finer where the set-point would be left out."""
-    ends, middle = sorted((side.shown(low), side.shown(high))), side.shown(side.value)
+def _rounded(side: Side, low: float, high: float, inner_low: float, inner_high: float) -> tuple[float, float]:
+    """Return both ends (SI) rounded inwards to a power of ten of at most a fiftieth of the width, finer where the inner range would be cut."""
+    ends, inner = sorted((side.shown(low), side.shown(high))), sorted((side.shown(inner_low), side.shown(inner_high)))
     width = ends[1] - ends[0]
     if not width > 0.0:
-        return side.value, side.value
+        return inner_low, inner_high
     power = math.floor(math.log10(width / 50.0))
-    found = [middle, middle]
+    found = list(inner)
     for k, (end, turn, sign) in enumerate(((ends[0], math.ceil, 1.0), (ends[1], math.floor, -1.0))):
         for finer in range(_FINER):
             step = 10.0 ** (power - finer)
             rounded = round(turn(end / step - sign * 1e-9) * step, finer - power + 1 if power - finer < 0 else 0)
-            if sign * (middle - rounded) >= 0.0:
+            if sign * (inner[k] - rounded) >= 0.0:
                 found[k] = rounded
                 break
     lower, upper = sorted(side.si(float(f"{end:.12g}")) for end in found)
-    return min(max(lower, low), side.value), max(min(upper, high), side.value)
+    return min(max(lower, low), inner_low), max(min(upper, high), inner_high)

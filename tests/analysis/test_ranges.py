@@ -1,5 +1,6 @@
 """Acceptable ranges: boxes of known largest volume, what corners miss, a set-point that fails, ends in the study's units, and draws."""
 
+from dataclasses import replace
 from functools import partial
 
 import numpy as np
@@ -10,11 +11,13 @@ import sweep
 from sweep.analysis.ranges import assess_ranges
 from sweep.analysis.ranges.box import Box, empty_boxes
 from sweep.analysis.ranges.hunt import hunt
+from sweep.analysis.ranges.search import Effort, Search
 from sweep.base.seeds import stream
 from sweep.chance import Judged
 from sweep.plan.sides import inward, sides_of
 from sweep.plant import limits, margins
 from sweep.study import read_text
+from sweep.study.model import Tolerance
 from tests.analysis.made_up_space import rows, space
 from tests.texts import SMALL
 
@@ -118,7 +121,7 @@ def test_empty_boxes_against_brute_force():
                 low = max([0.0, *between[between[:, 1] < 0.5, 1]])
                 high = min([1.0, *between[between[:, 1] > 0.5, 1]])
                 best = max(best, (b - a) * (high - low))
-        (box,) = empty_boxes(Box(np.zeros(2), np.ones(2)), centre, points, 1)
+        (box,) = empty_boxes(Box(np.zeros(2), np.ones(2)), Box(centre, centre), points, 1)
         assert not box.inside(points).any()
         assert pytest.approx(best, rel=1e-6) == box.volume
 
@@ -220,3 +223,43 @@ def test_normal_operating_range_is_kept_apart():
     table = sweep.simulate(study, corners[["dose", "start"]], workers=1)
     assert (margins(study, table) >= 0.0).all()
     assert [f"margin_{row.label}" for row in limits(study)] == [name for name in corners if name.startswith("margin_")]
+
+
+def test_box_holds_where_the_plant_holds_the_set_point():
+    """x0 >= 0.4 and x0 x1 <= 0.4 from (0.5, 0.5): without a tolerance the largest box may leave no room; with one it holds the normal range."""
+    limit = [lambda x, z: x[:, 0] - 0.4, lambda x, z: 0.35 - x[:, 0] * x[:, 1]]
+    free = found(2, *limit)
+    study = space(2, "[ranges]", limits=2)
+    held = replace(study.variables[1], tolerance=Tolerance("uniform", 0.08, False))
+    study = replace(study, variables=(study.variables[0], held))
+    block = assess_ranges(study, rows(study, *limit)).summary()
+    line = block["variables"][1]
+    assert line["acceptable"]["low"] <= line["normal"]["low"] and line["normal"]["high"] <= line["acceptable"]["high"]
+    assert pytest.approx([0.42, 0.58]) == [line["normal"]["low"], line["normal"]["high"]]
+    assert not any("less well" in caution for caution in block["cautions"])
+    assert block["share_of_space"] <= free.summary()["share_of_space"] + 1e-9
+
+
+def test_a_normal_range_that_does_not_hold_is_said():
+    study = space(1, "[ranges]")
+    study = replace(study, variables=(replace(study.variables[0], tolerance=Tolerance("uniform", 0.2, False)),))
+    block = assess_ranges(study, rows(study, lambda x, z: x[:, 0] - 0.4)).summary()
+    assert any("x0: the plant holds it less well than the acceptable range is wide" in caution for caution in block["cautions"])
+    assert pytest.approx(0.4, abs=0.02) == block["variables"][0]["acceptable"]["low"]
+
+
+def test_a_core_in_which_a_failure_turns_up_gives_way_to_the_set_point():
+    """Where the plant holds the set-point was looked through in vain; a failure found there later leaves the set-point alone to be held."""
+
+    def judge(points):
+        value = np.where(np.hypot(points[:, 0] - 0.6, points[:, 1] - 0.5) < 0.05, -1.0, 1.0)[:, None]
+        return Judged(value, value, (value[:, 0] >= 0.0).astype(float), np.zeros(len(points), dtype=np.int64))
+
+    point = np.array([0.5, 0.5])
+    search = Search(judge, point, Box(point - 0.2, point + 0.2), Effort(64, 2, 10, 100, 64), lambda box, core: box, 1)
+    search._noted(np.array([[0.9, 0.9]]))
+    assert np.array_equal(point - 0.2, search.core.low)
+    found = search.largest(np.array([[0.6, 0.5]]))
+    assert np.array_equal(point, search.core.low) and np.array_equal(point, search.core.high)
+    assert not len(found.hunt.failing) and not found.box.inside(np.array([[0.6, 0.5]]))[0]
+    assert 0.5 <= found.box.volume <= 0.6

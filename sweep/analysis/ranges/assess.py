@@ -1,5 +1,6 @@
 """Acceptable ranges of a study as one record: the box, what was searched in it, and the ranges of each variable alone beside it."""
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
@@ -15,7 +16,7 @@ from sweep.base.seeds import stream
 from sweep.chance import Assured, Judged, Memory, lower_bound
 from sweep.plan import draw
 from sweep.plan.draws import cube
-from sweep.plan.sides import Side, centre_of, inward, sides_of, table_of
+from sweep.plan.sides import Side, centre_of, inward, sides_of, stepped, table_of
 from sweep.plant import holds, margins
 from sweep.study.model import RangesSettings, Study
 
@@ -90,7 +91,7 @@ class Ranges:
         held = side.variable.tolerance
         if held is None:
             return None
-        half = held.size * (abs(side.value) if held.relative else 1.0) * (NORMAL if held.distribution == "normal" else 1.0)
+        half = half_width(side)
         shown = [f"{side.shown(end):.5g} {side.own}".strip() for end in (side.value - half, side.value + half)]
         return {"low": side.value - half, "high": side.value + half, "low_written": shown[0], "high_written": shown[1],
                 "holds": 0.95 if held.distribution == "normal" else 1.0}  # fmt: skip
@@ -178,13 +179,34 @@ def assess_ranges(study: Study, evaluate: Evaluate, memory: Memory | None = None
         return without(_why(assured, here), here)
     drawn = assured.draws is not None
     effort = _effort(len(sides), drawn, settings.points)
-    search = Search(judge, centre, effort, lambda box: Box(*inward(sides, box.low, box.high)), study.seed)
+    core = _core(judge, sides, centre, drawn, study.seed)
+    search = Search(judge, centre, core, effort, lambda box, held: Box(*inward(sides, box.low, box.high, (held.low, held.high))), study.seed)
     single = alone(judge, centre, 8 if drawn else 32)
     pool = cube("sobol", 1 << (effort.pool - 1).bit_length(), len(sides), stream(study.seed, "ranges", "pool"))
     found = search.largest(pool)
     around = hunt(judge, Box(*inward(sides, single.box.low, single.box.high)), max(16, effort.points // 4), stream(study.seed, "ranges", "alone"))
     fresh = _fresh(study, evaluate, settings, sides, found) if drawn else None
     return Ranges(study, settings, assured, sides, here, None, found, single, around, _ends(judge, found.box), fresh)
+
+
+def _core(judge: Callable[[Floats], Judged], sides: tuple[Side, ...], centre: Floats, drawn: bool, seed: int) -> Box:
+    """Return what the box has to hold: where the plant holds the set-point if all of that is acceptable, else the set-point itself. With draws,
+    which hold the control errors already, the set-point itself."""
+    half = np.array([half_width(side) for side in sides])
+    low = [stepped(s, s.value - h, 0, math.floor) if h else s.share(s.value) for s, h in zip(sides, half, strict=True)]  # round, outwards
+    high = [stepped(s, s.value + h, 0, math.ceil) if h else s.share(s.value) for s, h in zip(sides, half, strict=True)]
+    core = Box(np.maximum(low, 0.0), np.minimum(high, 1.0))
+    if drawn or not half.any() or len(hunt(judge, core, 16, stream(seed, "ranges", "core")).failing):
+        return Box(centre, centre)
+    return core
+
+
+def half_width(side: Side) -> float:
+    """Return by how much the plant misses what is set (SI): 95 % of a normal tolerance, all of a uniform one, nothing without one."""
+    held = side.variable.tolerance
+    if held is None:
+        return 0.0
+    return held.size * (abs(side.value) if held.relative else 1.0) * (NORMAL if held.distribution == "normal" else 1.0)
 
 
 def _effort(size: int, drawn: bool, points: int) -> Effort:

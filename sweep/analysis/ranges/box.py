@@ -46,9 +46,14 @@ class Box:
         """Return which points (M, D) lie within or on its faces, (M,)."""
         return np.asarray(np.all((points >= self.low) & (points <= self.high), axis=1))
 
-    def shrunk(self, centre: Floats, share: float) -> Box:
-        """Return the box drawn together to a point, to a share of its size."""
-        return Box(centre + share * (self.low - centre), centre + share * (self.high - centre))
+    def shrunk(self, core: Box, share: float) -> Box:
+        """Return the box drawn together towards a smaller one (or a point) within it, to a share of the way between."""
+        return Box(core.low + share * (self.low - core.low), core.high + share * (self.high - core.high))
+
+    @property
+    def centre(self) -> Floats:
+        """The middle of the box, (D,)."""
+        return np.asarray(0.5 * (self.low + self.high))
 
 
 def corners(dimensions: int) -> Floats:
@@ -63,13 +68,13 @@ def skeleton(dimensions: int) -> Floats:
     return np.concatenate([corners(dimensions), faces, np.full((1, dimensions), 0.5)]) if dimensions > 1 else np.array([[0.0], [1.0], [0.5]])
 
 
-def empty_boxes(whole: Box, centre: Floats, failing: Floats, wanted: int) -> list[Box]:
-    """Return up to `wanted` of the largest boxes around a centre that leave out points known to fail (B, D).
+def empty_boxes(whole: Box, core: Box, failing: Floats, wanted: int) -> list[Box]:
+    """Return up to `wanted` of the largest boxes around a core (a point, or a small box without failures) that leave out points known to fail (B, D).
 
-    A beam search: the point nearest to the centre that a box holds is cut off by each of its possible faces; the largest boxes go on. The
+    A beam search: the point nearest to the core that a box holds is cut off by each of its possible faces; the largest boxes go on. The
     largest of all is found where the beam is wide enough for it; every box that is returned leaves out every point.
     """
-    near = failing[np.argsort(np.abs(failing - centre).max(axis=1), kind="stable")] if len(failing) else failing
+    near = failing[np.argsort(np.abs(failing - core.centre).max(axis=1), kind="stable")] if len(failing) else failing
     beam, done = [whole], list[Box]()
     while beam:
         children: dict[bytes, Box] = {}
@@ -78,7 +83,7 @@ def empty_boxes(whole: Box, centre: Floats, failing: Floats, wanted: int) -> lis
             if not len(held):
                 done.append(box)
                 continue
-            for child in _cut(box, centre, held[0]):
+            for child in _cut(box, core, held[0]):
                 children.setdefault(child.low.tobytes() + child.high.tobytes(), child)
         beam = sorted(children.values(), key=lambda one: -one.size)[:WIDTH]
         done = _apart(done, wanted)
@@ -87,17 +92,17 @@ def empty_boxes(whole: Box, centre: Floats, failing: Floats, wanted: int) -> lis
     return done
 
 
-def _cut(box: Box, centre: Floats, point: Floats) -> list[Box]:
-    """Return the boxes that a point is cut off from, one for each axis in which it differs from the centre."""
+def _cut(box: Box, core: Box, point: Floats) -> list[Box]:
+    """Return the boxes that a point is cut off from, one for each axis in which it lies beyond the core."""
     found = []
     for axis in range(len(point)):
-        if point[axis] > centre[axis]:
+        if point[axis] > core.high[axis]:
             high = box.high.copy()
-            high[axis] = max(point[axis] - GAP, centre[axis])
+            high[axis] = max(point[axis] - GAP, core.high[axis])
             found.append(Box(box.low, high))
-        elif point[axis] < centre[axis]:
+        elif point[axis] < core.low[axis]:
             low = box.low.copy()
-            low[axis] = min(point[axis] + GAP, centre[axis])
+            low[axis] = min(point[axis] + GAP, core.low[axis])
             found.append(Box(low, box.high))
     return found
 

@@ -16,15 +16,15 @@ SPARE = 2e-5  # of a margin's spread, kept so that rounding does not end outside
 _SHARES = np.linspace(1.0, 0.0, 17)
 
 
-def fitted(judge: Judge, box: Box, centre: Floats, places: Floats) -> Box:
-    """Return a box drawn together to its centre until it is acceptable at all places (K, D)."""
+def fitted(judge: Judge, box: Box, core: Box, places: Floats) -> Box:
+    """Return a box drawn together to its core until it is acceptable at all places (K, D)."""
     shares = _SHARES[:-1]
-    points = np.concatenate([box.shrunk(centre, share).at(places) for share in shares])
+    points = np.concatenate([box.shrunk(core, share).at(places) for share in shares])
     good = judge(points).acceptable.reshape(len(shares), -1).all(axis=1)
-    return box.shrunk(centre, float(shares[good.argmax()]) if good.any() else 0.01)
+    return box.shrunk(core, float(shares[good.argmax()]) if good.any() else 0.01)
 
 
-def climb(judge: Judge, start: Box, whole: Box, centre: Floats, places: Floats, followed: int, rounds: int) -> Box:
+def climb(judge: Judge, start: Box, whole: Box, core: Box, places: Floats, followed: int, rounds: int) -> Box:
     """Return a box of larger volume, acceptable at places (K, D) along its sides, by sequential quadratic programming.
 
     followed: of how many places, those with the smallest margins, slopes are taken; the others have room.
@@ -33,7 +33,7 @@ def climb(judge: Judge, start: Box, whole: Box, centre: Floats, places: Floats, 
 
     minimize: Any = optimize.minimize
 
-    size = len(centre)
+    size = len(core.low)
     problem = _Problem(judge, places, followed)
 
     def negative(ends: Floats) -> float:
@@ -44,7 +44,7 @@ def climb(judge: Judge, start: Box, whole: Box, centre: Floats, places: Floats, 
         return np.concatenate([each, -each])
 
     first = np.concatenate([start.low, start.high])
-    bounds = optimize.Bounds(np.concatenate([whole.low, centre]), np.concatenate([centre, whole.high]))
+    bounds = optimize.Bounds(np.concatenate([whole.low, core.high]), np.concatenate([core.low, whole.high]))
     found = minimize(
         negative, np.clip(first, bounds.lb, bounds.ub), jac=slope, method="SLSQP", bounds=bounds, options={"maxiter": rounds, "ftol": 1e-6},
         constraints=[{"type": "ineq", "fun": problem.values, "jac": problem.slopes}],

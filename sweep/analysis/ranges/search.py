@@ -45,39 +45,50 @@ class Found:
 
 
 class Search:
-    """Knows all points that failed so far; every box that it proposes leaves them out."""
+    """Knows all points that failed so far; every box that it proposes leaves them out, and holds its core: the set-point, or where it is held."""
 
-    def __init__(self, judge: Judge, centre: Floats, effort: Effort, inward: Callable[[Box], Box], seed: int) -> None:
-        self.judge, self.centre, self.effort, self.inward, self.seed = judge, centre, effort, inward, seed
-        self.whole = Box(np.zeros(len(centre)), np.ones(len(centre)))
-        self.places = skeleton(len(centre))
-        self.failing = np.empty((0, len(centre)))
+    def __init__(self, judge: Judge, point: Floats, core: Box, effort: Effort, inward: Callable[[Box, Box], Box], seed: int) -> None:
+        """point: the set-point, which holds; inward: a box and its core -> the box with round ends."""
+        self.judge, self.point, self.core, self.effort, self._inward, self.seed = judge, point, core, effort, inward, seed
+        self.whole = Box(np.zeros(len(core.low)), np.ones(len(core.low)))
+        self.places = skeleton(len(core.low))
+        self.failing = np.empty((0, len(core.low)))
 
     def _noted(self, points: Floats) -> None:
         """Judge points and keep those that fail."""
         if len(points):
-            self.failing = np.concatenate([self.failing, points[~self.judge(points).acceptable]])
+            self._keep(points[~self.judge(points).acceptable])
+
+    def inward(self, box: Box) -> Box:
+        """Return a box with round ends that still holds the core."""
+        return self._inward(box, self.core)
+
+    def _keep(self, failing: Floats) -> None:
+        """Keep points that fail; a core in which one turns up gives way to the set-point."""
+        self.failing = np.concatenate([self.failing, failing])
+        if self.core.inside(failing).any():
+            self.core = Box(self.point, self.point)
 
     def _grown(self, box: Box) -> Box:
         """Return a box fitted and grown, then cut back from what is known to fail, and pushed out where a cut left room."""
-        fits = fitted(self.judge, box, self.centre, self.places)
-        tall = climb(self.judge, fits, self.whole, self.centre, self.places, self.effort.followed, self.effort.rounds)
-        grown = self._cut(fitted(self.judge, tall, self.centre, self.places))
+        fits = fitted(self.judge, box, self.core, self.places)
+        tall = climb(self.judge, fits, self.whole, self.core, self.places, self.effort.followed, self.effort.rounds)
+        grown = self._cut(fitted(self.judge, tall, self.core, self.places))
         return max(self._cut(fits), grown, key=lambda one: one.size)
 
     def _cut(self, box: Box) -> Box:
         held = self.failing[box.inside(self.failing)]
-        return box if not len(held) else empty_boxes(box, self.centre, held, 1)[0]
+        return box if not len(held) else empty_boxes(box, self.core, held, 1)[0]
 
     def _refitted(self) -> Box:
         """Return the largest box that leaves out all that is known to fail, drawn together until it holds at its corners and faces: where limits
         only hold or fail, what was learnt on the way makes better boxes than growth does."""
-        whole = empty_boxes(self.whole, self.centre, self.failing, 1)[0]
-        return self._cut(fitted(self.judge, whole, self.centre, self.places))
+        whole = empty_boxes(self.whole, self.core, self.failing, 1)[0]
+        return self._cut(fitted(self.judge, whole, self.core, self.places))
 
     def _pushed(self, box: Box, number: int) -> Box:
         """Return a box whose faces are moved out, one after another, as far as points on the slab beyond hold."""
-        size = len(self.centre)
+        size = len(self.core.low)
         spread = cube("sobol", 16, size, stream(self.seed, "ranges", "push", number))
         relative = np.concatenate([skeleton(size), spread])
         for face in range(2 * size):
@@ -99,15 +110,15 @@ class Search:
     def _shadows(self, found: Hunt) -> Floats:
         """Return points between the worst counter-examples and the centre, one axis at a time: how far in the failure reaches."""
         worst = found.failing[:8]
-        points = np.repeat(worst[:, None, None, :], len(self.centre), axis=1).repeat(len(SHADOWS), axis=2)
-        for axis in range(len(self.centre)):
-            points[:, axis, :, axis] = self.centre[axis] + SHADOWS * (worst[:, axis, None] - self.centre[axis])
-        return points.reshape(-1, len(self.centre))
+        points = np.repeat(worst[:, None, None, :], len(self.core.low), axis=1).repeat(len(SHADOWS), axis=2)
+        for axis in range(len(self.core.low)):
+            points[:, axis, :, axis] = self.core.centre[axis] + SHADOWS * (worst[:, axis, None] - self.core.centre[axis])
+        return points.reshape(-1, len(self.core.low))
 
     def largest(self, pool: Floats, first: Box | None = None) -> Found:
         """Return the largest box found. pool (P, D): points looked at first; first: a box to start from as well."""
         self._noted(pool)
-        starts = [*empty_boxes(self.whole, self.centre, self.failing, self.effort.starts), *([first] if first is not None else [])]
+        starts = [*empty_boxes(self.whole, self.core, self.failing, self.effort.starts), *([first] if first is not None else [])]
         boxes, kept = [self._grown(start) for start in starts], list[Found]()
         for number in range(ROUNDS):
             box = max(boxes, key=lambda one: one.size)
@@ -119,7 +130,7 @@ class Search:
                 kept.append(Found(rounded, seen, number, False))
                 boxes = [self._refitted(), self._pushed(rounded, number)]
                 continue
-            self.failing = np.concatenate([self.failing, seen.failing])
+            self._keep(seen.failing)
             self._noted(self._shadows(seen))
             self.places = np.unique(np.concatenate([self.places, rounded.relative(seen.failing[:_WORST])]), axis=0)
             boxes = [self._cut(one) for one in boxes]
@@ -132,7 +143,7 @@ class Search:
     def _drawn_in(self, box: Box) -> Found:
         """Draw a box together until a hunt through it finds nothing."""
         for number, share in enumerate(np.linspace(0.95, 0.0, 20)):
-            small = self.inward(box.shrunk(self.centre, float(share)))
+            small = self.inward(box.shrunk(self.core, float(share)))
             seen = hunt(self.judge, small, self.effort.points, stream(self.seed, "ranges", "draw in", number))
             if not len(seen.failing):
                 return Found(small, seen, ROUNDS, True)
