@@ -13,21 +13,11 @@ import llvmlite.binding as llvm
 
 from sweep.kernel import cache
 from sweep.kernel.layout import MARCH_TAKES
+from sweep.kernel.machine import ENTRY, target_machine
 
-ENTRY = "enter"  # the object file's one visible name
 _C_TYPES: dict[str, Any] = {"q": ctypes.c_int64, "d": ctypes.c_double}
 _LOADING = threading.Lock()
 _loaded: dict[str, "Code"] = {}  # for the whole life of the process: a function must not outlive its memory
-
-
-def target_machine() -> Any:
-    """Return LLVM's description of this processor, as numba makes it."""
-    llvm.initialize_native_target()
-    llvm.initialize_native_asmprinter()
-    target = llvm.Target.from_triple(llvm.get_process_triple())
-    name, features = llvm.get_host_cpu_name(), llvm.get_host_cpu_features().flatten()
-    reloc = "static" if target.name.startswith("x86") else "default"  # LLVM's loader asks for it there
-    return target.create_target_machine(cpu=name, features=features, opt=3, reloc=reloc, codemodel="jitdefault", jit=True)
 
 
 @dataclass(frozen=True)

@@ -6,7 +6,7 @@ from typing import Any
 import llvmlite.binding as llvm
 import numba
 
-from sweep.kernel.code import ENTRY, target_machine
+from sweep.kernel.machine import ENTRY, target_machine
 
 _TYPES = {"q": numba.int64, "d": numba.float64}
 _LLVM = {"q": "i64", "d": "double"}
