@@ -20,7 +20,8 @@ from sweep.chance import Memory, NoMemory, wilson
 from sweep.plan import Draws, draw, set_point
 from sweep.plan.sides import Side, sides_of
 from sweep.plant import LimitRow, limits, margins
-from sweep.study.model import MapSettings, Study
+from sweep.study.model import Study
+from sweep.study.settings import MapSettings
 
 Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
 Floats = NDArray[np.float64]

@@ -14,7 +14,8 @@ from sweep.chance import Driver, Rare, Share, drivers, rare_failure, share, uppe
 from sweep.chance.drivers import DEFINITION
 from sweep.plan import Draws, dimensions_of, draw, inputs_of, set_point
 from sweep.plant import LimitRow, holds, limits, margins, responses
-from sweep.study.model import RiskSettings, Study
+from sweep.study.model import Study
+from sweep.study.settings import RiskSettings
 
 Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
 RARE = 1e-3  # failures that are rarer are hardly seen in the draws

@@ -16,7 +16,8 @@ from sweep.chance.intervals import wilson
 from sweep.plan import Draws, draw, set_point
 from sweep.plan.draws import cube
 from sweep.plant import LimitRow, limits, margins
-from sweep.study.model import Assurance, Study
+from sweep.study.model import Study
+from sweep.study.settings import Assurance
 
 _Floats = NDArray[np.float64]
 _Integers = NDArray[np.int64]

@@ -5,8 +5,9 @@ from collections.abc import Mapping
 from itertools import product
 from typing import NamedTuple
 
-from sweep.study.model import FAILURE, Charge, Event, Feed, Limit, Objective, Reaction, Species, Target, Variable
+from sweep.study.model import FAILURE, Charge, Event, Feed, Limit, Reaction, Species, Target, Variable
 from sweep.study.reader import Reader
+from sweep.study.settings import Objective
 
 _MOST_CORNERS = 5  # variables; beyond, only the set-point is looked at
 

@@ -6,9 +6,10 @@ from collections.abc import Mapping
 from typing import Any
 
 from sweep.base.units import UnitFault, si_unit, to_si
-from sweep.study.model import Assurance, Limit, MapSettings, Objective, OptimumSettings, RangesSettings, Species, Target, Variable, WindowSettings
+from sweep.study.model import Limit, Species, Target, Variable
 from sweep.study.question import BY_SPECIES, PLAIN, response_of
 from sweep.study.reader import Reader
+from sweep.study.settings import Assurance, MapSettings, Objective, OptimumSettings, RangesSettings, WindowSettings
 from sweep.study.uncertain import confidence, whole
 
 MOST_SIDES = 8  # of a box: its corners double with each

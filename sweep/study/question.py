@@ -7,21 +7,9 @@ from typing import Any
 
 from sweep.base.units import UnitFault, kind_of, unit_of
 from sweep.study.amount import converted
-from sweep.study.model import (
-    FAILURE,
-    LATEST,
-    BatchTimeSettings,
-    FailureSettings,
-    Limit,
-    Plan,
-    Scenario,
-    Species,
-    Target,
-    Variable,
-    WindowSettings,
-    differs,
-)  # fmt: skip
+from sweep.study.model import FAILURE, LATEST, Limit, Scenario, Species, Target, Variable, differs
 from sweep.study.reader import Reader
+from sweep.study.settings import BatchTimeSettings, FailureSettings, Plan, WindowSettings
 from sweep.study.uncertain import difference_of, read_tolerance
 
 PLAIN = {

@@ -8,8 +8,9 @@ from typing import Any
 from sweep.base.units import UnitFault, kind_of, to_si, unit_of
 from sweep.study.amount import converted
 from sweep.study.drawn import read_column
-from sweep.study.model import Correlation, RiskSettings, SensitivitySettings, Tolerance, Uncertain, Variable, differs
+from sweep.study.model import Correlation, Tolerance, Uncertain, Variable, differs
 from sweep.study.reader import Reader
+from sweep.study.settings import RiskSettings, SensitivitySettings
 
 _KEYS = {  # distribution -> its own keys
     "normal": ("sd", "relative_sd"),

@@ -7,7 +7,8 @@ from sweep.plan import planned
 from sweep.plan.draws import log_sd
 from sweep.plant.told_events import cause_of, effect_of, set_of
 from sweep.plant.understood import FeedSeen, ReactionSeen, Understood, understood
-from sweep.study.model import Assurance, Correlation, Limit, Study, Tolerance, Uncertain, Variable
+from sweep.study.model import Correlation, Limit, Study, Tolerance, Uncertain, Variable
+from sweep.study.settings import Assurance
 
 _SENSE = {"at_most": "at most", "at_least": "at least"}
 

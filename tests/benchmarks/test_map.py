@@ -18,7 +18,8 @@ from sweep.plant.course import charge_plant
 from sweep.plant.values import values_of
 from sweep.runner import simulate
 from sweep.study import read_study
-from sweep.study.model import MapSettings, Study
+from sweep.study.model import Study
+from sweep.study.settings import MapSettings
 
 DEMO = Path(__file__).parents[2] / "studies" / "acylation.toml"
 PIECE, ROUNDS = 1024, 3

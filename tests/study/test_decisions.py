@@ -5,7 +5,7 @@ import pytest
 from sweep.base.errors import StudyError
 from sweep.study import read_text
 from sweep.study.enough import least_draws
-from sweep.study.model import Assurance, MapSettings, Objective
+from sweep.study.settings import Assurance, MapSettings, Objective
 from tests.texts import SMALL
 
 UNCERTAIN = '[uncertain]\nk = { of = "reactions.main.rate_constant.value", distribution = "lognormal", relative_sd = 0.2 }\n'

@@ -12,7 +12,8 @@ from numpy.typing import NDArray
 from sweep.chance import Assured, Judged
 from sweep.plan.sides import Side, table_of
 from sweep.plant import cost_of, limits, margins
-from sweep.study.model import Objective, Study
+from sweep.study.model import Study
+from sweep.study.settings import Objective
 
 Floats = NDArray[np.float64]
 Bools = NDArray[np.bool_]

@@ -15,7 +15,8 @@ from sweep.chance import Assured, Memory, lower_bound
 from sweep.plan import draw
 from sweep.plan.sides import Side, centre_of, nearby, sides_of, table_of
 from sweep.plant import holds, margins
-from sweep.study.model import OptimumSettings, Study
+from sweep.study.model import Study
+from sweep.study.settings import OptimumSettings
 
 Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
 FINER = 4  # digits that are added before the optimum is written as found

@@ -18,7 +18,8 @@ from sweep.plan import draw
 from sweep.plan.draws import cube
 from sweep.plan.sides import Side, centre_of, inward, sides_of, stepped, table_of
 from sweep.plant import holds, margins
-from sweep.study.model import RangesSettings, Study
+from sweep.study.model import Study
+from sweep.study.settings import RangesSettings
 
 Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
 NORMAL = 1.959963984540054  # standard deviations on either side that hold 95 % of batches

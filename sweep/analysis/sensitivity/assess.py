@@ -14,7 +14,8 @@ from sweep.analysis.sensitivity.spread import halved_spreads
 from sweep.base.seeds import stream
 from sweep.chance import Share
 from sweep.plant import limits
-from sweep.study.model import SensitivitySettings, Study
+from sweep.study.model import Study
+from sweep.study.settings import SensitivitySettings
 
 Evaluate = Callable[[pd.DataFrame], pd.DataFrame]
 _MANY_LOST = 0.05
