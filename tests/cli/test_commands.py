@@ -310,7 +310,7 @@ def test_wrong_call_ends_with_2():
 @pytest.mark.skipif(sys.platform == "win32", reason="signals as POSIX has them")
 @pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM])
 def test_interrupted_run_says_how_to_go_on_and_does(here, number):
-    (here / "long.toml").write_text(SMALL.replace("levels = 20", "levels = 200").replace("levels = 30", "levels = 200"))
+    (here / "long.toml").write_text(SMALL.replace("levels = 20", "levels = 400").replace("levels = 30", "levels = 400"))
     process = subprocess.Popen([sys.executable, "-m", "sweep.cli.main", "run", "long.toml", "--workers", "1"], stderr=subprocess.PIPE, text=True)
     points = here / "results" / "long" / "points"
     until = time.monotonic() + 120.0

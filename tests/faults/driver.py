@@ -27,6 +27,7 @@ per_product_S = { at_most = 0.5 }
 axes = ["dose", "time"]
 """
 SIZE, FILES = 33_600, 5
+SLOW = "slow 0.4"  # a fault: without it a worker's task takes some 0.05 s, and a run may be over before it is hurt
 LIMIT = 120.0  # s after which a run hangs
 
 

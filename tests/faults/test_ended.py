@@ -18,7 +18,7 @@ def _killed_and_resumed(study, out, seed, times, undisturbed):
     draw, hurt, seconds = random.Random(seed), 0, float((undisturbed.parent / "seconds").read_text())
     for _ in range(times):
         before = driver.reported(out)
-        process = driver.start(study, out)
+        process = driver.start(study, out, fault=driver.SLOW)
         try:
             process.communicate(timeout=draw.uniform(0.1, 0.9) * seconds)
         except subprocess.TimeoutExpired:
@@ -53,7 +53,7 @@ def test_run_killed_at_twenty_random_moments(study, undisturbed, tmp_path):
 
 
 def test_main_process_killed_alone_leaves_no_worker_behind(study, undisturbed, tmp_path):
-    process = driver.start(study, tmp_path / "out")
+    process = driver.start(study, tmp_path / "out", fault=driver.SLOW)
     driver.wait_for_files(process, tmp_path / "out")
     assert driver.workers(process.pid)
     process.kill()
@@ -66,7 +66,7 @@ def test_main_process_killed_alone_leaves_no_worker_behind(study, undisturbed, t
 
 
 def test_worker_killed_costs_nothing_but_time(study, undisturbed, tmp_path):
-    process = driver.start(study, tmp_path / "out")
+    process = driver.start(study, tmp_path / "out", fault=driver.SLOW)
     driver.wait_for_files(process, tmp_path / "out")
     os.kill(driver.workers(process.pid)[0], signal.SIGKILL)
     status, _, said = driver.finish(process)
@@ -78,7 +78,7 @@ def test_worker_killed_costs_nothing_but_time(study, undisturbed, tmp_path):
 
 @pytest.mark.long
 def test_workers_that_are_killed_again_and_again_end_the_run_in_words(study, undisturbed, tmp_path):
-    process = driver.start(study, tmp_path / "out")
+    process = driver.start(study, tmp_path / "out", fault=driver.SLOW)
     driver.wait_for_files(process, tmp_path / "out")
     until = time.monotonic() + driver.LIMIT
     while process.poll() is None and time.monotonic() < until:
@@ -98,7 +98,7 @@ def test_workers_that_are_killed_again_and_again_end_the_run_in_words(study, und
 def test_run_that_is_asked_to_end(study, undisturbed, tmp_path, number, everyone):
     """Ctrl-C reaches every process of a terminal, and impatient people press it twice; SIGTERM is for the main process."""
     out = tmp_path / "out"
-    process = driver.start(study, out)
+    process = driver.start(study, out, fault=driver.SLOW)
     driver.wait_for_files(process, out)
     if everyone:
         os.killpg(process.pid, number)

@@ -89,7 +89,7 @@ def test_folder_that_cannot_be_written(study, undisturbed, tmp_path):
 
 def test_folder_that_stops_being_writable(study, undisturbed, tmp_path):
     out = tmp_path / "out"
-    process = driver.start(study, out, before=_without_powers())
+    process = driver.start(study, out, before=_without_powers(), fault=driver.SLOW)
     driver.wait_for_files(process, out)
     (out / "points").chmod(0o555)
     status, _, said = driver.finish(process)
@@ -103,7 +103,7 @@ def test_folder_that_stops_being_writable(study, undisturbed, tmp_path):
 
 def test_second_run_in_a_folder_is_refused_and_the_first_goes_on(study, undisturbed, tmp_path):
     out = tmp_path / "out"
-    first = driver.start(study, out)
+    first = driver.start(study, out, fault=driver.SLOW)
     driver.wait_for_files(first, out)
     status, _, said = driver.run(study, out, "--fresh")
     assert (4, f"{out} is in use by process {first.pid} on {socket.gethostname()}; wait for it, or choose another --out\n") == (status, said)
