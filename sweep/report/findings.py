@@ -6,10 +6,10 @@ from typing import Any
 from sweep.report.answers import held_elsewhere, limit_scale, responses_table, why_not
 from sweep.report.blocks import Block, Cell, Section, Table, Words, figure, heads, row
 from sweep.report.display import NONE, PERCENT, conversion, decimals_for, duration, kelvins, number, reach, scale_for, share, temperature
-from sweep.report.prepare_failure import feeds, reach_name
+from sweep.report.prepare_failure import feeds
 from sweep.report.prepare_window import variable_scale
 from sweep.report.results import Results
-from sweep.report.wording import pieces, plain, sentence, several, words
+from sweep.report.wording import pieces, plain, reach_name, sentence, several, words
 
 
 def _not_assessed(why: str) -> Words:

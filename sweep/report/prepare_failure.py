@@ -10,7 +10,7 @@ from sweep.report.curves import Absent, Array, Curves, Level, Line, Moment, Pane
 from sweep.report.display import CELSIUS, HOURS, Scale, axis_times, duration, number, temperature, times, with_unit
 from sweep.report.prepare_batch import limit_levels
 from sweep.report.results import Results
-from sweep.report.wording import words
+from sweep.report.wording import reach_name
 
 DIAGRAM = ("failure_diagram", "Were cooling lost: temperatures against the time of failure")
 PATH = ("failure_path", "After the worst failure: temperature against time")
@@ -91,11 +91,6 @@ def _censored(failure: Mapping[str, Any]) -> str:
     if failure.get("tmr_ad_s") is None or not failure.get("tmr_ad_censored"):
         return ""
     return f" TMRad is {duration(failure['tmr_ad_s'], at_least=True)} at every time of failure: no maximum rate within the horizon."
-
-
-def reach_name(name: str) -> str:
-    """Return the event of the path in words: "limit max_temperature" as "limit of highest temperature"."""
-    return f"limit on {words(name.removeprefix('limit '))}" if name.startswith("limit ") else name
 
 
 def _reached(failure: Mapping[str, Any], scale: Scale, first: float) -> tuple[Moment, ...]:

@@ -86,3 +86,8 @@ def several(count: int, one: str, many: str = "") -> str:
 def listed(items: list[str]) -> str:
     """Return words in a row: a, b and c."""
     return items[0] if len(items) == 1 else f"{', '.join(items[:-1])} and {items[-1]}" if items else ""
+
+
+def reach_name(name: str) -> str:
+    """Return the event of the path in words: "limit max_temperature" as "limit on highest temperature"."""
+    return f"limit on {words(name.removeprefix('limit '))}" if name.startswith("limit ") else name

@@ -133,10 +133,13 @@ def test_the_report_shows_the_table(tmp_path):
 
     batch(STUDY, out=tmp_path, figures=False)
     found = section(read(tmp_path / "batch", whole=False))
-    table, words = found.blocks
-    assert 5 == len(table.rows)
-    assert 11 == len(table.head) == len(table.rows[0])
-    assert "flood" == table.rows[0][0].text
+    dangers, outcomes, words = found.blocks
+    for table, columns in ((dangers, 9), (outcomes, 4)):
+        assert 5 == len(table.rows)
+        assert columns == len(table.head) == len(table.rows[0])
+        assert "flood" == table.rows[0][0].text
+    assert {"yes", "no", "failed"} == {row[1].text for row in dangers.rows}
+    assert all((row[2].text == "–") == (row[1].text == "yes") for row in dangers.rows)
     assert any("wide open: from the start" in text for text in words.sentences)
 
 
