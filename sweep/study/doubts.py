@@ -3,6 +3,7 @@
 from sweep.study.checks import brought
 from sweep.study.model import HOTTEST, Charge, Event, Feed, Reaction, Species, Variable
 from sweep.study.reader import Reader
+from sweep.study.settings import OptimumSettings
 
 
 def warn_ranges(reader: Reader, reactions: tuple[Reaction, ...], variables: tuple[Variable, ...]) -> None:
@@ -77,6 +78,17 @@ def warn_recipe(reader: Reader, events: tuple[Event, ...], feeds: tuple[Feed, ..
     for event in events:
         if end and event.time is not None and event.time >= end:
             reader.warn(f"{event.path}.time", f"{event.time:g} s", f"a time before {end:g} s", "the batch is over by then")
+
+
+def warn_optimum(reader: Reader, optimum: OptimumSettings | None, variables: tuple[Variable, ...], to_target: bool) -> None:
+    """Warn where the shortest cycle is sought and nothing that is sought over can shorten it."""
+    for one in optimum.objectives if optimum is not None else ():
+        timed = {path for v in variables if optimum is not None and v.name in optimum.variables for path in v.sets}
+        if one.column == "cycle_time_s" and not to_target and not timed & {"recipe.batch_time", "recipe.turnaround"}:
+            reader.warn(
+                f"optimum.{one.sense}", "cycle_time", 'recipe.batch_time = "to target", or a variable that sets recipe.batch_time',
+                "the batch ends at a written time, so that every setting has the same cycle",
+            )  # fmt: skip
 
 
 def warn_heat_capacities(reader: Reader, species: tuple[Species, ...]) -> None:

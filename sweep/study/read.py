@@ -122,6 +122,7 @@ def _read(reader: Reader, document: dict[str, Any], text: str, name: str, folder
     doubts.warn_ranges(reader, reactions, variables)
     doubts.warn_jacket(reader, kind, reactions, charge, feeds)
     doubts.warn_recipe(reader, happens, feeds, to_target)
+    doubts.warn_optimum(reader, optimum, variables, to_target)
     doubts.warn_heat_capacities(reader, species)
     doubts.warn_rates(reader, reactions, not isothermal or "recipe.charge.temperature" in reader.swept)
     return Study(

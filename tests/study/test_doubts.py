@@ -70,3 +70,11 @@ def test_no_warning_without_reason():
 def test_an_event_in_the_time_to_the_target_is_no_warning():
     """Without an end of its own a batch may be as long as `longest`; the event comes before that."""
     assert () == read_text(TEXT.replace('batch_time = "6 h"', 'batch_time = "to target"').replace('time = "4 h"', 'time = "20 h"')).warnings
+
+
+@pytest.mark.parametrize(("more", "warned"), [("", True), ('variables = ["dosing_time"]\n', True), ("", False)])
+def test_shortest_cycle_is_doubtful_where_the_batch_ends_at_a_written_time(more, warned):
+    text = TEXT + "\n[optimum]\nminimise = \"cycle_time\"\n" + (more if warned else "")
+    if not warned:
+        text = text.replace("[variables]", '[variables]\nlong = { sets = "recipe.batch_time", from = "4 h", to = "9 h", levels = 3 }')
+    assert warned == any(w.key == "optimum.minimise" and "same cycle" in w.because for w in read_text(text).warnings)
